@@ -1,0 +1,1 @@
+"""What a person reads: text for the shell, HTML for notebooks."""

@@ -1,0 +1,1 @@
+"""Options and fixtures that more than one folder of tests uses."""
