@@ -1,0 +1,147 @@
+"""One slice at one energy: the functions x cot x and x / sin x, and the Magnus exponent."""
+
+from __future__ import annotations
+
+from typing import NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from bandwright.constants import H2M
+
+Floats = npt.NDArray[np.float64]
+
+# Coefficients of t^0, t^1, ... of x cot x and x / sin x with t = x^2 (DLMF 4.19.6, 4.19.4).
+_F = (1.0, -1 / 3, -1 / 45, -2 / 945, -1 / 4725, -2 / 93555, -1382 / 638512875)
+_G = (1.0, 1 / 6, 7 / 360, 31 / 15120, 127 / 604800, 73 / 3421440, 1414477 / 653837184000)
+_SERIES_BELOW = 0.02
+#: the two-band mass never falls below this share of the band-edge mass
+MASS_FLOOR = 0.05
+
+
+def half_wave_functions(t: Floats) -> tuple[Floats, Floats]:
+    """Return ``x cot x`` and ``x / sin x`` at t = x^2, hyperbolic for t < 0; no overflow.
+
+    Parameters
+    ----------
+    t : array
+        Squared phase of a slice [rad^2]; negative where the state decays.
+    """
+    x = np.sqrt(np.abs(t))
+    half = 0.5 * x
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        tangent = np.tan(half)
+        ratio = half / tangent
+        square = tangent * tangent
+        shrink = np.expm1(-2.0 * x)
+        f = np.where(t > 0, ratio * (1.0 - square), -x * (2.0 + shrink) / shrink)
+        g = np.where(t > 0, ratio * (1.0 + square), -2.0 * x * np.exp(-x) / shrink)
+    small = x < 1e-4
+    if small.any():
+        f = np.where(small, 1.0 - t / 3.0, f)
+        g = np.where(small, 1.0 + t / 6.0, g)
+    return f, g
+
+
+def half_wave_slopes(t: Floats, f: Floats, g: Floats) -> tuple[Floats, Floats]:
+    """Return the derivatives of `half_wave_functions` with respect to t."""
+    small = np.abs(t) < _SERIES_BELOW
+    safe = np.where(small, 1.0, t)
+    df = (f - g * g) / (2.0 * safe)
+    dg = g * (1.0 - f) / (2.0 * safe)
+    if small.any():
+        df = np.where(small, _series_slope(_F, t), df)
+        dg = np.where(small, _series_slope(_G, t), dg)
+    return df, dg
+
+
+def _series_slope(coefficients: tuple[float, ...], t: Floats) -> Floats:
+    slope = np.zeros_like(t)
+    for power in range(len(coefficients) - 1, 0, -1):
+        slope = slope * t + power * coefficients[power]
+    return slope
+
+
+def local_mass(
+    energy: Floats, edge: Floats, mass: Floats, inverse_gap: Floats
+) -> tuple[Floats, Floats]:
+    """Return m(E) and dm/dE of the two-band model, floored far below the edge.
+
+    Kane's m(E) = m [1 + (E - V)/Eg], its bracket never below `MASS_FLOOR`, with dm/dE = 0
+    where the floor holds, so that counts stay right.
+    """
+    bracket = 1.0 + (energy - edge) * inverse_gap
+    free = bracket > MASS_FLOOR
+    return mass * np.where(free, bracket, MASS_FLOOR), mass * np.where(free, inverse_gap, 0.0)
+
+
+class Exponent(NamedTuple):
+    """A traceless 2x2 matrix [[x, a], [c, -x]]: the exponent of a slice's propagator."""
+
+    x: Floats
+    a: Floats
+    c: Floats
+
+
+def _bracket(p: Exponent, q: Exponent) -> Exponent:
+    """Commutator of two traceless 2x2 matrices."""
+    return Exponent(
+        p.a * q.c - q.a * p.c, 2.0 * (p.x * q.a - p.a * q.x), 2.0 * (p.c * q.x - p.x * q.c)
+    )
+
+
+def _mix(*terms: tuple[float, Exponent]) -> Exponent:
+    return Exponent(
+        sum(w * e.x for w, e in terms),  # type: ignore[arg-type]
+        sum(w * e.a for w, e in terms),  # type: ignore[arg-type]
+        sum(w * e.c for w, e in terms),  # type: ignore[arg-type]
+    )
+
+
+def magnus(
+    thickness: Floats, energy: Floats, edge: Floats, mass: Floats, slope: Floats
+) -> tuple[Exponent, Exponent]:
+    """Return the 6th-order Magnus exponent of slices and its derivative by E.
+
+    Blanes, Casas, Oteo & Ros, Phys. Rep. 470, 151 (2009), three Gauss points a slice.
+
+    Parameters
+    ----------
+    thickness : array (n_slices, 1)
+        Slice thicknesses [nm].
+    energy : array (n_energies,)
+        Energies [eV].
+    edge : array (3, n_slices, 1)
+        Edge at the Gauss points [eV].
+    mass, slope : array (3, n_slices, n_energies)
+        m(E) and dm/dE at the Gauss points.
+    """
+    a = thickness * mass
+    c = -(thickness / H2M) * (energy - edge)
+    da = thickness * slope
+    dc = np.broadcast_to(-thickness / H2M, a.shape[1:])
+    zero = np.zeros(a.shape[1:])
+    fifteen = np.sqrt(15.0) / 3.0
+
+    one = Exponent(zero, a[1], c[1])
+    two = Exponent(zero, fifteen * (a[2] - a[0]), fifteen * (c[2] - c[0]))
+    three = Exponent(zero, (10 / 3) * (a[2] - 2 * a[1] + a[0]), (10 / 3) * (c[2] - 2 * c[1] + c[0]))
+    d_one = Exponent(zero, da[1], dc)
+    d_two = Exponent(zero, fifteen * (da[2] - da[0]), zero)
+    d_three = Exponent(zero, (10 / 3) * (da[2] - 2 * da[1] + da[0]), zero)
+
+    first = _bracket(one, two)
+    d_first = _mix((1, _bracket(d_one, two)), (1, _bracket(one, d_two)))
+    inner, d_inner = _mix((2, three), (1, first)), _mix((2, d_three), (1, d_first))
+    second = _bracket(one, inner)
+    d_second = _mix((1, _bracket(d_one, inner)), (1, _bracket(one, d_inner)))
+    p, d_p = (
+        _mix((-20, one), (-1, three), (1, first)),
+        _mix((-20, d_one), (-1, d_three), (1, d_first)),
+    )
+    q, d_q = _mix((1, two), (-1 / 60, second)), _mix((1, d_two), (-1 / 60, d_second))
+    omega = _mix((1, one), (1 / 12, three), (1 / 240, _bracket(p, q)))
+    d_omega = _mix(
+        (1, d_one), (1 / 12, d_three), (1 / 240, _bracket(d_p, q)), (1 / 240, _bracket(p, d_q))
+    )
+    return omega, d_omega

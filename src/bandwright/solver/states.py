@@ -1,0 +1,234 @@
+"""States of found levels anywhere: values, probabilities and matrix elements of z.
+
+A point inside a slice cuts it in two; u there follows from u at the slice's faces and the two
+parts' elements, which is exact for a constant slice and as good as the slice for others.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from bandwright.constants import H2M
+from bandwright.solver.matrix import Elements
+from bandwright.solver.propagation import local_mass
+from bandwright.solver.slices import slice_at
+from bandwright.solver.system import System
+
+Floats = npt.NDArray[np.float64]
+
+_ORDER = 10
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(_ORDER)
+#: largest phase or decay exponent of a quadrature cell
+_CELL = 1.5
+
+
+class _Quadrature(NamedTuple):
+    z: Floats
+    weight: Floats
+    section: npt.NDArray[np.int64]
+    u: Floats
+    p: Floats  # sqrt(h2m b) psi'/m: the valence-like partner of the two-band product
+    clamped: npt.NDArray[np.bool_]
+
+
+class _Tail(NamedTuple):
+    position: float
+    outward: float
+    decay: Floats
+    u: Floats
+    p: Floats
+
+
+@dataclass(frozen=True)
+class States:
+    """Normalised states: energies [eV] (n_levels,), ``u`` at all slice faces (n_faces, n_levels).
+
+    Norm and matrix elements use the product <i|j> = int u_i u_j + h2m b p_i p_j dz of the
+    two-band model (b = dm/dE; the ordinary product where b = 0).
+    """
+
+    system: System
+    energies: Floats
+    u: Floats
+
+    def sample(self, z: Floats) -> tuple[Floats, Floats]:
+        """Return u [nm^-1/2] and p = u'/m [nm^-3/2] at positions z [nm], (n_levels, n_points)."""
+        z = np.atleast_1d(np.asarray(z, dtype=float))
+        faces = self.system.slices.faces
+        order = np.argsort(z, kind="stable")
+        inside = np.clip(z[order], faces[0], faces[-1])
+        index = np.clip(np.searchsorted(faces, inside, side="right") - 1, 0, len(faces) - 2)
+        u, p = self._inside(inside, index)
+        for tail in self._tails:
+            depth = tail.outward * (z[order] - tail.position)
+            out = depth > 0
+            if out.any():
+                shrink = np.exp(-tail.decay[:, None] * depth[out])
+                u[:, out] = tail.u[:, None] * shrink
+                p[:, out] = tail.p[:, None] * shrink
+        outside = (z[order] < faces[0]) | (z[order] > faces[-1])
+        for end, out in zip(self.system.ends, (z[order] < faces[0], z[order] > faces[-1]),
+                            strict=True):  # fmt: skip
+            if end == "wall":
+                u[:, out & outside] = p[:, out & outside] = 0.0
+        back = np.empty_like(order)
+        back[order] = np.arange(len(order))
+        return u[:, back], p[:, back]
+
+    def _inside(self, z: Floats, index: npt.NDArray[np.int64]) -> tuple[Floats, Floats]:
+        """U and p at sorted positions z in slices ``index``, from u at the slices' faces."""
+        slices = self.system.slices
+        whole = slices.thickness[index]
+        depth = np.clip(z - slices.faces[index], 1e-9 * whole, (1 - 1e-9) * whole)
+        section, start = slices.section[index], slices.start[index]
+        before = slice_at(slices.profile, slices.counts, section, start, depth)
+        after = slice_at(slices.profile, slices.counts, section, start + depth, whole - depth)
+        one = before.elements(self.energies)
+        two = after.elements(self.energies)
+        left, right = self.u[index], self.u[index + 1]
+        u = (one.off * left + two.off * right) / (one.right + two.left)
+        p = _choose(2 * depth > whole, one, two, u, left, right)
+        return np.ascontiguousarray(u.T), np.ascontiguousarray(p.T)
+
+    @cached_property
+    def _tails(self) -> tuple[_Tail, ...]:
+        """What each open end's outside holds."""
+        tails = []
+        faces = self.system.slices.faces
+        for outside, row, position, sign in zip(
+            self.system.outside(self.energies), (0, -1), (faces[0], faces[-1]), (-1.0, 1.0),
+            strict=True,
+        ):  # fmt: skip
+            if outside is not None:
+                over, _, kappa = outside
+                u = self.u[row]
+                tails.append(_Tail(float(position), sign, np.maximum(kappa, 1e-9), u,
+                                   -sign * over * u))  # fmt: skip
+        return tuple(tails)
+
+    @cached_property
+    def _quadrature(self) -> _Quadrature:
+        """Gauss points on cells in which no state turns or decays by more than `_CELL`."""
+        slices = self.system.slices
+        top, bottom = float(self.energies.max()), float(self.energies.min())
+        edge, mass, gap = (np.abs(a) for a in (slices.edge, slices.mass, slices.inverse_gap))
+        edge = slices.edge
+        heavy = mass * (1.0 + np.maximum(0.0, (top - edge) * gap))
+        reach = np.maximum(np.abs(top - edge), np.abs(edge - bottom))
+        rate = np.sqrt(np.max(heavy * reach, axis=0) / H2M)
+        cells = np.maximum(1, np.ceil(slices.thickness * rate / _CELL)).astype(np.int64)
+        width = np.repeat(slices.thickness / cells, cells)
+        within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)
+        begin = np.repeat(slices.faces[:-1], cells) + within * width
+        z = (begin[:, None] + 0.5 * width[:, None] * (1.0 + _NODES)).reshape(-1)
+        weight = (0.5 * width[:, None] * _WEIGHTS).reshape(-1)
+        index = np.repeat(np.repeat(np.arange(len(cells)), cells), _ORDER)
+        u, p = self._inside(z, index)
+        section = slices.section[index]
+        sampled = slice_at(
+            slices.profile, slices.counts, section, z - slices.profile.faces[section],
+            np.zeros_like(z),
+        )  # fmt: skip
+        _, b = local_mass(
+            self.energies[:, None], sampled.edge[1], sampled.mass[1], sampled.inverse_gap[1]
+        )
+        clamped = (b == 0.0) & (sampled.inverse_gap[1] > 0.0)
+        return _Quadrature(z, weight, section, u, np.sqrt(H2M * b) * p, clamped)
+
+    def _tail_partner(self, tail: _Tail, row: int) -> Floats:
+        section = self.system.slices.profile.sections[row]
+        depth = np.array([0.0 if row == 0 else section.thickness])
+        edge, mass, gap = (c.at(depth)[0] for c in (section.edge, section.mass,
+                                                    section.inverse_gap))  # fmt: skip
+        _, b = local_mass(self.energies, edge, mass, gap)
+        return np.asarray(np.sqrt(H2M * b) * tail.p)
+
+    @cached_property
+    def _moments(self) -> tuple[Floats, Floats, Floats]:
+        """Matrices <i|1|j>, <i|z|j>, <i|z^2|j>, tails beyond open ends included."""
+        q = self._quadrature
+        centre = self.system.slices.faces[-1] / 2.0
+        z = q.z - centre
+        moments = []
+        for power in (0, 1, 2):
+            w = q.weight * z**power
+            moments.append((q.u * w) @ q.u.T + (q.p * w) @ q.p.T)
+        for tail in self._tails:
+            row = 0 if tail.outward < 0 else -1
+            partner = self._tail_partner(tail, row)
+            size = np.outer(tail.u, tail.u) + np.outer(partner, partner)
+            k = tail.decay[:, None] + tail.decay
+            start, sign = tail.position - centre, tail.outward
+            moments[0] += size / k
+            moments[1] += size * (start / k + sign / k**2)
+            moments[2] += size * (start**2 / k + 2 * sign * start / k**2 + 2 / k**3)
+        one, first, second = moments
+        return one, first + centre * one, second + 2 * centre * first + centre**2 * one
+
+    @property
+    def overlaps(self) -> Floats:
+        """<i|j> by quadrature, (n_levels, n_levels); the unit matrix for exact states."""
+        return self._moments[0]
+
+    @property
+    def dipoles(self) -> Floats:
+        """Matrix elements of z [nm], (n_levels, n_levels); positions on the diagonal."""
+        return self._moments[1]
+
+    @property
+    def spreads(self) -> Floats:
+        """Standard deviation of the position [nm], (n_levels,)."""
+        mean = np.diag(self._moments[1])
+        return np.asarray(np.sqrt(np.maximum(np.diag(self._moments[2]) - mean**2, 0.0)))
+
+    @cached_property
+    def probabilities(self) -> Floats:
+        """Probability in each section, outer sections with their tails, (n_levels, n_sections)."""
+        q = self._quadrature
+        sections = len(self.system.slices.profile.sections)
+        density = (q.u**2 + q.p**2) * q.weight
+        starts = np.searchsorted(q.section, np.arange(sections))
+        result = np.add.reduceat(density, starts, axis=1)
+        for tail in self._tails:
+            row = 0 if tail.outward < 0 else -1
+            partner = self._tail_partner(tail, row)
+            result[:, row] += (tail.u**2 + partner**2) / (2.0 * tail.decay)
+        return np.asarray(result)
+
+    @property
+    def clamped(self) -> Floats:
+        """Probability where the two-band mass stands at its floor, (n_levels,)."""
+        q = self._quadrature
+        return np.asarray(np.sum((q.u**2) * q.weight * q.clamped, axis=1))
+
+    @property
+    def wall_shifts(self) -> Floats:
+        """dE/dwall = -h2m m(E) p_wall^2 / <i|i> [eV/nm], (n_levels,), of the more sensitive wall."""
+        shift = np.zeros(len(self.energies))
+        slices = self.system.slices
+        elements = slices.elements(self.energies)
+        for end, row, inner in zip(self.system.ends, (0, -1), (1, -2), strict=True):
+            if end == "wall":
+                p = elements.off[row] * self.u[inner]
+                section = slices.profile.sections[row]
+                depth = np.array([0.0 if row == 0 else section.thickness])
+                edge, mass, gap = (c.at(depth)[0] for c in (section.edge, section.mass,
+                                                            section.inverse_gap))  # fmt: skip
+                local, _ = local_mass(self.energies, edge, mass, gap)
+                shift = np.minimum(shift, -H2M * local * p**2)
+        return shift
+
+
+def _choose(
+    use_before: npt.NDArray[np.bool_], one: Elements, two: Elements, u: Floats,
+    left: Floats, right: Floats,
+) -> Floats:  # fmt: skip
+    """P at a point, from the longer of the two parts of its slice."""
+    from_before = one.right * u - one.off * left
+    from_after = two.off * right - two.left * u
+    return np.where(use_before[:, None], from_before, from_after)
