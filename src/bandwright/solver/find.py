@@ -10,6 +10,7 @@ from scipy.linalg import eigh
 
 from bandwright.constants import H2M
 from bandwright.errors import SolveError
+from bandwright.solver.matrix import Matrix
 from bandwright.solver.system import System, apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
@@ -159,9 +160,9 @@ def _signed(z: Floats) -> Floats:
 
 
 def _clusters(energies: Floats, width: float) -> Indices:
-    """Number of the first member of each level's cluster: neighbours closer than ``width``."""
+    """Return the first member's number of each level's cluster, neighbours within ``width``."""
     starts = np.concatenate(([True], np.diff(energies) > width))
-    return np.flatnonzero(starts)[np.cumsum(starts) - 1]
+    return np.asarray(np.flatnonzero(starts)[np.cumsum(starts) - 1], dtype=np.int64)
 
 
 def _ritz(system: System, energies: Floats) -> tuple[Floats, Floats]:
@@ -193,11 +194,13 @@ def _ritz(system: System, energies: Floats) -> tuple[Floats, Floats]:
     return np.asarray(found), _signed(z / np.sqrt(H2M))
 
 
-def _repeat(matrix, size):  # type: ignore[no-untyped-def]
-    return type(matrix)(
-        np.repeat(matrix.diagonal, size, axis=1), np.repeat(matrix.off, size, axis=1),
-        matrix.clamped,
-    )  # fmt: skip
+def _repeat(matrix: Matrix, size: int) -> Matrix:
+    """Return one energy's matrix once for each vector."""
+    return Matrix(
+        np.repeat(matrix.diagonal, size, axis=1),
+        np.repeat(matrix.off, size, axis=1),
+        np.repeat(matrix.clamped, size),
+    )
 
 
 def _orthonormal(z: Floats, mz: Floats) -> Floats:

@@ -91,11 +91,12 @@ def _bracket(p: Exponent, q: Exponent) -> Exponent:
 
 
 def _mix(*terms: tuple[float, Exponent]) -> Exponent:
-    return Exponent(
-        sum(w * e.x for w, e in terms),  # type: ignore[arg-type]
-        sum(w * e.a for w, e in terms),  # type: ignore[arg-type]
-        sum(w * e.c for w, e in terms),  # type: ignore[arg-type]
-    )
+    """Return the weighted sum of exponents."""
+    weight, term = terms[0]
+    x, a, c = weight * term.x, weight * term.a, weight * term.c
+    for weight, term in terms[1:]:
+        x, a, c = x + weight * term.x, a + weight * term.a, c + weight * term.c
+    return Exponent(x, a, c)
 
 
 def magnus(

@@ -67,7 +67,7 @@ class Slices:
     @property
     def faces(self) -> Floats:
         """Positions of all slice faces [nm], shape (n_slices + 1,)."""
-        return self.profile.faces[0] + np.concatenate(([0.0], np.cumsum(self.thickness)))
+        return np.asarray(np.concatenate(([0.0], np.cumsum(self.thickness))))
 
     def halved(self) -> Slices:
         """Return the same profile with every slice cut in two."""
@@ -84,22 +84,26 @@ class Slices:
     def _elements(self, energies: Floats, slopes: bool) -> tuple[Elements, Elements]:
         energies = np.asarray(energies, dtype=float)
         shape = (len(self.thickness), len(energies))
-        value = Elements(*(np.empty(shape) for _ in range(3)), np.zeros(shape, dtype=np.int64))
-        slope = Elements(*(np.empty(shape) for _ in range(3)), value.clamped)
+        value, slope = _blank(shape), _blank(shape)
         for which, part in ((self.constant, _constant), (self.varying, _varying)):
             if len(which):
-                values, derivatives = part(self, which, energies, slopes)
-                for target, source in zip(value, values, strict=True):
-                    target[which] = source
-                if derivatives is not None:
-                    for target, source in zip(slope[:3], derivatives, strict=True):
-                        target[which] = source
+                for target, source in zip(
+                    (value, slope), part(self, which, energies, slopes), strict=False
+                ):
+                    for column, numbers in zip(target, source, strict=True):
+                        column[which] = numbers
         return value, slope
+
+
+def _blank(shape: tuple[int, int]) -> Elements:
+    return Elements(
+        np.empty(shape), np.empty(shape), np.empty(shape), np.zeros(shape, dtype=np.int64)
+    )
 
 
 def _constant(
     slices: Slices, which: Indices, energies: Floats, slopes: bool
-) -> tuple[tuple[Floats, ...], tuple[Floats, ...] | None]:
+) -> tuple[Elements, ...]:
     edge = slices.edge[1, which, None]
     h = slices.thickness[which, None]
     mass, b = local_mass(
@@ -110,19 +114,19 @@ def _constant(
     f, g = half_wave_functions(t)
     a = h * mass
     side, off = f / a, g / a
-    clamped = _half_waves(t)
+    value = Elements(side, side, off, _half_waves(t))
     if not slopes:
-        return (side, side, off, clamped), None
+        return (value,)
     df, dg = half_wave_slopes(t, f, g)
     dt = (h * h / H2M) * (b * above + mass)
     da = h * b
     d_side = (df * dt - side * da) / a
-    return (side, side, off, clamped), (d_side, d_side, (dg * dt - off * da) / a)
+    return value, Elements(d_side, d_side, (dg * dt - off * da) / a, value.clamped)
 
 
 def _varying(
     slices: Slices, which: Indices, energies: Floats, slopes: bool
-) -> tuple[tuple[Floats, ...], tuple[Floats, ...] | None]:
+) -> tuple[Elements, ...]:
     edge = slices.edge[:, which, None]
     mass, b = local_mass(
         energies, edge, slices.mass[:, which, None], slices.inverse_gap[:, which, None]
@@ -132,18 +136,14 @@ def _varying(
     t = -(x * x + a * c)
     f, g = half_wave_functions(t)
     left, right, off = (f + x) / a, (f - x) / a, g / a
-    clamped = _half_waves(t)
+    value = Elements(left, right, off, _half_waves(t))
     if not slopes:
-        return (left, right, off, clamped), None
+        return (value,)
     dx, da, dc = d_omega
     df, dg = half_wave_slopes(t, f, g)
     dt = -(2.0 * x * dx + a * dc + da * c)
-    derivative = (
-        (df * dt + dx - left * da) / a,
-        (df * dt - dx - right * da) / a,
-        (dg * dt - off * da) / a,
-    )
-    return (left, right, off, clamped), derivative
+    d_left, d_right = (df * dt + dx - left * da) / a, (df * dt - dx - right * da) / a
+    return value, Elements(d_left, d_right, (dg * dt - off * da) / a, value.clamped)
 
 
 def _half_waves(t: Floats) -> Indices:
@@ -207,10 +207,11 @@ def needed(profile: Profile, high: float, tolerance: float) -> Indices:
 
 def _section_need(section: Section, high: float, share: float) -> int:
     if section.flat:
-        edge, mass = _first(section.edge), _first(section.mass)
-        local = float(local_mass(np.array(high), np.array(edge), np.array(mass),
-                                 np.array(_first(section.inverse_gap)))[0])  # fmt: skip
-        phase = section.thickness * np.sqrt(max(local * (high - edge), 0.0) / H2M)
+        edge, mass, inverse_gap = (
+            np.array(_first(c)) for c in (section.edge, section.mass, section.inverse_gap)
+        )
+        local, _ = local_mass(np.array(high), edge, mass, inverse_gap)
+        phase = section.thickness * np.sqrt(np.maximum(local * (high - edge), 0.0) / H2M)
         return max(1, int(np.ceil(phase / PHASE_LIMIT)))
     points = np.linspace(0.0, section.thickness, 33)
     step = points[1]

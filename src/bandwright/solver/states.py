@@ -208,7 +208,7 @@ class States:
 
     @property
     def wall_shifts(self) -> Floats:
-        """dE/dwall = -h2m m(E) p_wall^2 / <i|i> [eV/nm], (n_levels,), of the more sensitive wall."""
+        """dE/dwall = -h2m m(E) p_wall^2 / <i|i> [eV/nm] of the more sensitive wall, (n_levels,)."""
         shift = np.zeros(len(self.energies))
         slices = self.system.slices
         elements = slices.elements(self.energies)
