@@ -9,8 +9,6 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Any
-
 import numpy as np
 import numpy.typing as npt
 
@@ -76,7 +74,7 @@ class Section:
 
     ``edge`` holds everything: the material, internal fields and the stack's field.
     ``inverse_gap`` is identically zero in the one-band model. ``layer`` counts grown layers
-    from 0; ``bare_edge`` is the edge without the stack's field.
+    from 0.
     """
 
     thickness: float
@@ -96,6 +94,43 @@ class Section:
         return self.edge.degree <= 1 and self.mass.degree == 0 and self.inverse_gap.degree == 0
 
 
+@dataclass(frozen=True, slots=True)
+class LayerFacts:
+    """What a written layer turned out to be, once its material was looked up.
+
+    Attributes
+    ----------
+    name : str
+        Label, or number and formula.
+    thickness : float
+        [nm], monolayers resolved.
+    own : bool
+        Whether the layer brings its own numbers instead of a material.
+    material : str
+        Formula as written; empty for own numbers.
+    monolayer : float
+        Thickness of one monolayer of the strained film [nm]; nan for own numbers.
+    lattice : float
+        Relaxed lattice constant [nm]; nan for own numbers. The face farthest off for a grade.
+    mismatch : float
+        In-plane strain exx on the substrate, the face farthest off; 0 without a substrate.
+    direct : bool
+        Whether the lowest conduction edge is the zone centre's all along the layer.
+    cautions : tuple of str
+        What the material data say about their own use here.
+    """
+
+    name: str
+    thickness: float
+    own: bool = True
+    material: str = ""
+    monolayer: float = float("nan")
+    lattice: float = float("nan")
+    mismatch: float = 0.0
+    direct: bool = True
+    cautions: tuple[str, ...] = ()
+
+
 @dataclass(frozen=True)
 class Profile:
     """Sections in growth order, the ends, and how a reader names the layers.
@@ -106,22 +141,66 @@ class Profile:
     ends : tuple of str
         ``"open"``, ``"wall"`` or ``"periodic"`` at the first-grown and the last-grown face.
     field : float
-        The stack's electric field along growth [V/nm]; already part of each section's edge.
-    names : tuple of str
-        One name a grown layer.
+        The stack's electric field along growth [V/nm], an electron's energy slope [eV/nm];
+        already part of each section's edge.
     bands : str
         ``"one-band"`` or ``"two-band"``.
+    zero : str
+        What energies count from, in words.
+    facts : tuple of LayerFacts
+        One a written layer.
+    written : tuple of int
+        Index into ``facts`` of each grown layer.
     """
 
     sections: tuple[Section, ...]
     ends: tuple[str, str] = ("open", "open")
     field: float = 0.0
-    names: tuple[str, ...] = ()
     bands: str = "one-band"
-    zero: str = "zero"
-    details: Any = None
+    zero: str = "the edges' own zero"
+    facts: tuple[LayerFacts, ...] = ()
+    written: tuple[int, ...] = ()
 
     @property
     def faces(self) -> Floats:
         """Positions of all section faces [nm], shape (n_sections + 1,), the first is 0."""
         return np.concatenate(([0.0], np.cumsum([s.thickness for s in self.sections])))
+
+    @property
+    def thickness(self) -> float:
+        """Total thickness [nm]."""
+        return float(self.faces[-1])
+
+    def name(self, section: int) -> str:
+        """Return the name of the layer a section lies in."""
+        if not self.written:
+            return f"section {section + 1}"
+        return self.facts[self.written[self.sections[section].layer]].name
+
+    def sample(self, points: int = 400) -> dict[str, Floats]:
+        """Return arrays along growth for tables and plots, both sides of every face included.
+
+        Parameters
+        ----------
+        points : int
+            About how many points; every section has at least two.
+
+        Returns
+        -------
+        dict
+            ``position_nm``, ``edge_eV``, ``mass`` [m0], ``gap_eV`` (inf in the one-band model),
+            each of shape (n_points,).
+        """
+        parts: list[tuple[Floats, Floats, Floats, Floats]] = []
+        for start, section in zip(self.faces, self.sections, strict=False):
+            share = 2 if section.tilted else max(
+                9, int(points * section.thickness / self.thickness)
+            )
+            depth = np.linspace(0.0, section.thickness, share)
+            inverse = section.inverse_gap.at(depth)
+            with np.errstate(divide="ignore"):
+                gap = np.where(inverse > 0.0, 1.0 / inverse, np.inf)
+            parts.append((start + depth, section.edge.at(depth), section.mass.at(depth), gap))
+        names = ("position_nm", "edge_eV", "mass", "gap_eV")
+        columns = zip(*parts, strict=True)
+        return {n: np.concatenate(c) for n, c in zip(names, columns, strict=True)}
