@@ -1,1 +1,84 @@
-"""bandwright."""
+"""Levels and wavelengths of quantum-well layer stacks, each with its evidence.
+
+The public names below are loaded from their rooms on first use, so that ``import bandwright``
+costs nothing.
+
+Examples
+--------
+>>> import bandwright as bw
+>>> bw.Layer("62 Å", "GaAs") == bw.Layer("6.2 nm", "GaAs")
+True
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from .comparison import compare as compare
+    from .errors import BandwrightError as BandwrightError
+    from .errors import BandwrightWarning as BandwrightWarning
+    from .errors import MaterialError as MaterialError
+    from .errors import QuantityError as QuantityError
+    from .errors import SolveError as SolveError
+    from .errors import StackError as StackError
+    from .errors import StackFileError as StackFileError
+    from .errors import UnknownName as UnknownName
+    from .levels import Levels as Levels
+    from .levels import solve as solve
+    from .lines import Lines as Lines
+    from .materials import Library as Library
+    from .shapes import Points as Points
+    from .stack import Layer as Layer
+    from .stack import Repeat as Repeat
+    from .stack import Stack as Stack
+    from .stackfile import read_stack as read_stack
+    from .stackfile import write_stack as write_stack
+    from .stackframe import frame_from_stack as frame_from_stack
+    from .stackframe import stack_from_frame as stack_from_frame
+    from .stackline import parse_line as parse_line
+
+    __version__: str
+
+_ROOMS = {
+    "errors": (
+        "BandwrightError",
+        "BandwrightWarning",
+        "MaterialError",
+        "QuantityError",
+        "SolveError",
+        "StackError",
+        "StackFileError",
+        "UnknownName",
+    ),
+    "shapes": ("Points",),
+    "stack": ("Layer", "Repeat", "Stack"),
+    "stackfile": ("read_stack", "write_stack"),
+    "stackline": ("parse_line",),
+    "stackframe": ("frame_from_stack", "stack_from_frame"),
+    "materials": ("Library",),
+    "levels": ("Levels", "solve"),
+    "lines": ("Lines",),
+    "comparison": ("compare",),
+}
+_ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
+
+__all__ = ["__version__", *sorted(_ROOM_OF)]
+
+
+def __getattr__(name: str) -> Any:
+    if name == "__version__":
+        from importlib.metadata import version
+
+        value: Any = version("bandwright")
+    elif name in _ROOM_OF:
+        value = getattr(import_module(f".{_ROOM_OF[name]}", __name__), name)
+    else:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *__all__})
