@@ -125,6 +125,22 @@ def letters(formula: str) -> tuple[str, ...]:
     return tuple(sorted({name for part in _parts(formula) for name in part.letters}))
 
 
+def elements(formula: str) -> tuple[str, ...]:
+    """Return the elements a formula or a bare name like ``AlGaAs`` holds, in the order written.
+
+    Raises
+    ------
+    MaterialError
+        If the text is no formula.
+
+    Examples
+    --------
+    >>> elements("AlxGa1-xAs")
+    ('Al', 'Ga', 'As')
+    """
+    return tuple(part.element for part in _parts(formula))
+
+
 def parse(formula: str, **fractions: Value) -> Composition:
     """Read a chemical formula, with a value for each letter in it.
 
@@ -155,7 +171,7 @@ def parse(formula: str, **fractions: Value) -> Composition:
     parts = _parts(formula)
     _check_letters(formula, parts, fractions)
     values = [(part.element, part.value(fractions)) for part in parts]
-    sites = _sites(formula, [part.element for part in parts])
+    sites = _sites(formula, elements(formula))
     sublattices = [tuple(v for v in values if v[0] in site) for site in sites]
     for site in sublattices:
         _check_sum(formula, site, parts)
@@ -262,16 +278,16 @@ def _check_letters(formula: str, parts: tuple[_Part, ...], given: dict[str, Valu
         )
 
 
-def _sites(formula: str, elements: list[str]) -> tuple[tuple[str, ...], tuple[str, ...]]:
+def _sites(formula: str, named: tuple[str, ...]) -> tuple[tuple[str, ...], tuple[str, ...]]:
     """Return the group of sites that holds every element, with both sites taken."""
     for cations, anions in SITES.values():
-        if all(element in cations + anions for element in elements):
+        if all(element in cations + anions for element in named):
             for site, name, like in ((cations, "cation", "Ga"), (anions, "anion", "As")):
-                if not any(element in site for element in elements):
+                if not any(element in site for element in named):
                     raise MaterialError(f"{formula!r} has no {name} (an element like {like})")
             return cations, anions
-    first = next(g for g, s in SITES.items() if elements[0] in s[0] + s[1])
-    stranger = next(e for e in elements if e not in SITES[first][0] + SITES[first][1])
+    first = next(g for g, s in SITES.items() if named[0] in s[0] + s[1])
+    stranger = next(e for e in named if e not in SITES[first][0] + SITES[first][1])
     raise MaterialError(f"{formula!r}: {stranger} has no site in a {first} compound")
 
 

@@ -6,12 +6,10 @@ relative change of volume, negative for a layer pressed together by its substrat
 
 from __future__ import annotations
 
-from typing import TypeVar
-
 import numpy as np
 import numpy.typing as npt
 
-Value = TypeVar("Value", float, npt.NDArray[np.float64])
+Value = float | npt.NDArray[np.float64]
 
 
 def in_plane(lattice: Value, substrate: float) -> Value:
