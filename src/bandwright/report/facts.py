@@ -1,0 +1,80 @@
+"""What was solved: the facts that stand at the head of every output."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from ..errors import BandwrightError
+from ..quantities import energy_text, temperature_text
+from ..stackline import line_text
+
+if TYPE_CHECKING:
+    from ..levels import Levels
+    from ..stack import Stack
+
+Fact = tuple[str, str]
+
+SAFETY = (
+    "Infrared emission is invisible and can injure eyes; defer to the site's rules, its "
+    "laser-safety officer, IEC 60825-1 and local codes."
+)
+
+
+def grown(stack: Stack) -> str:
+    """Return the layers in growth order, materials as formulas.
+
+    Examples
+    --------
+    >>> from bandwright.stackline import parse_line
+    >>> grown(parse_line("30 nm Al0.28Ga0.72As, 6.2 nm GaAs, 30 nm Al0.28Ga0.72As"))
+    '30 nm Al0.28Ga0.72As, 6.2 nm GaAs, 30 nm Al0.28Ga0.72As'
+    """
+    try:
+        return line_text(stack)
+    except BandwrightError:
+        return ", ".join(
+            f"{layer.thickness.value:g} {layer.thickness.unit} {layer.material or 'own numbers'}"
+            for layer, _ in stack.grown()
+        )
+
+
+def strain(stack: Stack) -> str:
+    """Return what the layers are strained to."""
+    return f"strained to {stack.substrate}" if stack.substrate else "unstrained, no substrate named"
+
+
+def ends(first: str, last: str) -> str:
+    """Return how the stack ends, first-grown side first.
+
+    Examples
+    --------
+    >>> ends("open", "open"), ends("wall", "open")
+    ('open at both faces', 'wall at the substrate side, open at the surface side')
+    """
+    if first == last:
+        return "periodic" if first == "periodic" else f"{first} at both faces"
+    return f"{first} at the substrate side, {last} at the surface side"
+
+
+def completeness(levels: Levels) -> str:
+    """Return how many levels there are, between which bounds, and whether any may be missing."""
+    low, high = (energy_text(bound) for bound in levels.bounds)
+    count = len(levels.energies)
+    noun = "level" if count == 1 else "levels"
+    proof = "none missing by count" if levels.complete else "the counts do not prove it complete"
+    return f"{count} {noun} between {low} and {high}, {proof}"
+
+
+def facts(levels: Levels) -> list[Fact]:
+    """Return (label, text) pairs in the order they are read."""
+    stack, profile = levels.stack, levels.profile
+    return [
+        ("electrons", levels.direction),
+        ("stack", stack.name or "without a name"),
+        ("grown", grown(stack)),
+        ("held at", f"{temperature_text(stack.temperature)}, {strain(stack)}"),
+        ("model", profile.bands),
+        ("energies", f"from {profile.zero}"),
+        ("ends", ends(*profile.ends)),
+        ("found", completeness(levels)),
+    ]

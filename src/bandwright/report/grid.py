@@ -1,0 +1,131 @@
+"""A table as fixed-width text: stacked headings, a line of units, sensible digits.
+
+Headings come from the column names, unit suffix and all, so what is read in the text is called
+the same in CSV and JSON.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from textwrap import wrap
+from typing import Any
+
+# Suffix of a column name -> unit as printed; the longest that fits counts.
+UNITS = {
+    "_meV_per_nm": "meV/nm",
+    "_per_eV": "1/eV",
+    "_per_cm": "cm-1",
+    "_kV_per_cm": "kV/cm",
+    "_meV": "meV",
+    "_eV": "eV",
+    "_nm": "nm",
+    "_um": "um",
+    "_THz": "THz",
+    "_ps": "ps",
+    "_fs": "fs",
+    "_K": "K",
+    "_m0": "m0",
+    "_percent": "%",
+}
+
+NARROW = 11  # no heading is wrapped to less
+
+# Digits after the point, or a format; anything else prints with six significant digits.
+DIGITS = {
+    "energy_meV": ".3f",
+    "phase_integral_meV": ".3f",
+    "difference_meV": ".2g",
+    "wall_shift_meV_per_nm": ".2g",
+    "probability": ".3f",
+    "mean_position_nm": ".2f",
+    "spread_nm": ".2f",
+    "wavelength_um": ".4f",
+    "wavenumber_per_cm": ".2f",
+    "frequency_THz": ".3f",
+    "dipole_nm": ".4f",
+    "oscillator_strength": ".4f",
+    "thickness_nm": ".3f",
+    "gap_eV": ".4f",
+    "edge_eV": ".4f",
+    "x_edge_eV": ".4f",
+    "l_edge_eV": ".4f",
+    "mass_m0": ".5f",
+    "lattice_nm": ".6f",
+    "monolayer_nm": ".6f",
+    "strain_percent": ".3f",
+}
+
+
+def unit_of(name: str) -> tuple[str, str]:
+    """Return the words of a column name and the unit it carries.
+
+    Examples
+    --------
+    >>> unit_of("wall_shift_meV_per_nm")
+    ('wall shift', 'meV/nm')
+    >>> unit_of("main_layer")
+    ('main layer', '')
+    """
+    for suffix in sorted(UNITS, key=len, reverse=True):
+        if name.endswith(suffix):
+            return name.removesuffix(suffix).replace("_", " "), UNITS[suffix]
+    return name.replace("_", " "), ""
+
+
+def cell(name: str, value: Any, digits: Mapping[str, str] = DIGITS) -> str:
+    """Return one value as a reader wants it.
+
+    Examples
+    --------
+    >>> cell("energy_meV", 61.23456), cell("of_box", False), cell("dipole_nm", float("nan"))
+    ('61.235', 'no', '-')
+    """
+    if value is None:
+        return "-"
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    if isinstance(value, int | str):
+        return str(value)
+    number = float(value)
+    if math.isnan(number):
+        return "-"
+    text = format(number, digits.get(name, ".6g"))
+    return text.removeprefix("-") if float(text) == 0.0 else text
+
+
+def grid(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGITS) -> list[str]:
+    r"""Return the lines of a table: headings from the column names, then the rows.
+
+    Words are set flush left, numbers flush right.
+
+    Parameters
+    ----------
+    columns : mapping of str to sequence
+        Column name -> its values.
+    digits : mapping of str to str
+        Column name -> format of its floats.
+
+    Examples
+    --------
+    >>> print("\n".join(grid({"level": [1, 2], "energy_meV": [61.2346, 140.1]})))
+    level   energy
+               meV
+        1   61.235
+        2  140.100
+    """
+    blocks = []
+    for name, values in columns.items():
+        cells = [cell(name, value, digits) for value in values]
+        words, unit = unit_of(name)
+        longest = max((len(c) for c in cells), default=0)
+        title = wrap(words, max(longest, NARROW)) or [""]
+        width = max(longest, len(unit), *(len(line) for line in title))
+        words_only = all(isinstance(value, str | None) for value in values)
+        fit = str.ljust if words_only else str.rjust
+        blocks.append([fit(text, width) for text in [*title, unit, *cells]])
+    height = max(len(block) for block in blocks)
+    for block in blocks:
+        block[:0] = [" " * len(block[0])] * (height - len(block))
+    lines = ["  ".join(row).rstrip() for row in zip(*blocks, strict=True)]
+    return [line for line in lines if line]

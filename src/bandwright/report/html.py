@@ -1,0 +1,68 @@
+"""Results as HTML, for the ``_repr_html_`` of notebooks: the same facts, digits and cautions."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from html import escape
+from typing import TYPE_CHECKING, Any
+
+from .data import columns_of
+from .facts import SAFETY, Fact, facts
+from .grid import DIGITS, cell, unit_of
+from .text import level_columns, level_notes
+
+if TYPE_CHECKING:
+    from ..levels import Levels
+    from ..lines import Lines
+
+
+def html_table(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGITS) -> str:
+    """Return columns as a table, the unit below each heading, numbers flush right.
+
+    Examples
+    --------
+    >>> html_table({"energy_meV": [61.2346]})  # doctest: +ELLIPSIS
+    '<table><thead><tr><th>energy<br><small>meV</small></th></tr></thead>...>61.235</td></tr>...'
+    """
+    heads = []
+    for name in columns:
+        words, unit = unit_of(name)
+        small = f"<br><small>{escape(unit)}</small>" if unit else ""
+        heads.append(f"<th>{escape(words)}{small}</th>")
+    body = []
+    for row in zip(*columns.values(), strict=True):
+        tds = []
+        for name, value in zip(columns, row, strict=True):
+            side = "left" if isinstance(value, str) else "right"
+            text = escape(cell(name, value, digits))
+            tds.append(f'<td style="text-align:{side}">{text}</td>')
+        body.append(f"<tr>{''.join(tds)}</tr>")
+    return (
+        f"<table><thead><tr>{''.join(heads)}</tr></thead>"
+        f"<tbody>{''.join(body)}</tbody></table>"
+    )
+
+
+def html_facts(labelled: Iterable[Fact]) -> str:
+    """Return labelled sentences, one a line.
+
+    Examples
+    --------
+    >>> html_facts([("model", "one-band")])
+    '<div><b>model</b> one-band</div>'
+    """
+    return "".join(
+        f"<div><b>{escape(label)}</b> {escape(text)}</div>" for label, text in labelled
+    )
+
+
+def levels_html(levels: Levels) -> str:
+    """Return levels as HTML: what was solved, the table, the cautions."""
+    columns, digits = level_columns(levels)
+    return html_facts(facts(levels)) + html_table(columns, digits) + html_facts(level_notes(levels))
+
+
+def lines_html(lines: Lines) -> str:
+    """Return lines as HTML: the table, the cautions, the safety line."""
+    said = [("caution", text) for text in lines.cautions] + [("safety", SAFETY)]
+    return html_table(columns_of(lines.table)) + html_facts(said)

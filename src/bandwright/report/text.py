@@ -1,0 +1,125 @@
+"""Results as text: what was solved, the table, what it rests on, what to beware of."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+from textwrap import wrap
+from typing import TYPE_CHECKING
+
+from .data import Columns, columns_of
+from .facts import SAFETY, Fact, facts, grown
+from .grid import DIGITS, grid
+
+if TYPE_CHECKING:
+    from ..levels import Levels
+    from ..lines import Lines
+    from ..stack import Stack
+
+WIDTH = 96  # of prose; a table is as wide as it must be
+LABEL = 11
+
+ONE_MATRIX = (
+    "exact here: on this stack phase integral and shooting are one and the same matrix, so that "
+    "their agreement is no evidence; the count is."
+)
+
+
+def paragraph(label: str, text: str) -> list[str]:
+    """Return text wrapped behind a label, in the two columns that all heads have.
+
+    Examples
+    --------
+    >>> paragraph("model", "one-band")
+    ['model      one-band']
+    """
+    lines = wrap(text, WIDTH - LABEL, break_long_words=False, break_on_hyphens=False) or [""]
+    return [f"{'' if i else label:<{LABEL}}{line}" for i, line in enumerate(lines)]
+
+
+def sheet(labelled: Iterable[Fact]) -> list[str]:
+    """Return one paragraph a fact."""
+    return [line for label, text in labelled for line in paragraph(label, text)]
+
+
+def page(*blocks: Sequence[str]) -> str:
+    r"""Return blocks of lines as text, an empty line between those that hold something.
+
+    Examples
+    --------
+    >>> page(["a", "b"], [], ["c"])
+    'a\nb\n\nc\n'
+    """
+    return "\n\n".join("\n".join(block) for block in blocks if block) + "\n"
+
+
+def cautions_text(cautions: Sequence[str]) -> list[str]:
+    """Return one paragraph a caution."""
+    return sheet(("caution", text) for text in cautions)
+
+
+def finer(tolerance: float) -> dict[str, str]:
+    """Return the digits that energies good to a tolerance [eV] deserve.
+
+    Examples
+    --------
+    >>> finer(1e-6)["energy_meV"], finer(1e-9)["energy_meV"]
+    ('.3f', '.6f')
+    """
+    places = min(max(3, math.ceil(-3 - math.log10(tolerance) - 1e-9)), 9)
+    return {**DIGITS, "energy_meV": f".{places}f", "phase_integral_meV": f".{places}f"}
+
+
+def level_columns(levels: Levels) -> tuple[Columns, dict[str, str]]:
+    """Return the columns that say something about these levels, and the digits they deserve."""
+    columns = columns_of(levels.table)
+    idle = {"copies": 1, "wall_shift_meV_per_nm": None, "of_box": False}
+    for name, empty in idle.items():
+        if all(value == empty for value in columns.get(name, ())):
+            columns.pop(name, None)
+    if levels.phase_exact and "difference_meV" in columns:
+        columns["difference_meV"] = ["exact here"] * len(levels.table)
+    return columns, finer(levels.tolerance)
+
+
+def level_notes(levels: Levels) -> list[Fact]:
+    """Return what must be read with the levels: where there is no evidence, and the cautions."""
+    note = [("note", ONE_MATRIX)] if levels.phase_exact and len(levels.table) else []
+    return note + [("caution", text) for text in levels.cautions]
+
+
+def levels_text(levels: Levels) -> str:
+    """Return the levels with what was solved above and the cautions below."""
+    table = grid(*level_columns(levels)) if len(levels.table) else []
+    return page(sheet(facts(levels)), table, sheet(level_notes(levels)))
+
+
+def budget_text(lines: Lines) -> list[str]:
+    """Return the error budget of the strongest line, with its name above."""
+    if not len(lines.table):
+        return []
+    upper, lower = lines.strongest
+    head = f"what moves the strongest line, {upper} to {lower}:"
+    return [head, "", *grid(columns_of(lines.error_budget()))]
+
+
+def lines_text(levels: Levels, lines: Lines) -> str:
+    """Return the lines, beside the strongest its error budget, cautions and the safety line."""
+    table = grid(columns_of(lines.table)) if len(lines.table) else ["no line"]
+    return page(sheet(facts(levels)), table, budget_text(lines), lines_notes(lines))
+
+
+def lines_notes(lines: Lines) -> list[str]:
+    """Return the cautions of lines and the safety line."""
+    return cautions_text(lines.cautions) + sheet([("safety", SAFETY)])
+
+
+def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
+    """Return designs side by side, what each is above."""
+    legend = sheet((stack.name or f"stack {n}", grown(stack)) for n, stack in enumerate(stacks, 1))
+    return page(legend, grid(columns))
+
+
+def materials_text(columns: Columns, cautions: Sequence[str]) -> str:
+    """Return materials, one row each."""
+    return page(grid(columns), cautions_text(cautions))
