@@ -1,0 +1,191 @@
+"""What the solution looks like at a face: modulus and phase on an Airy or a parabolic model.
+
+In the variable y = integral of m dz the equation is u'' = -Q u with Q = (E - V) / (h2m m). Two
+solutions a (dying out towards the high side) and b (growing) are written
+
+    allowed:    a = M sin(Theta),  b = M cos(Theta),  Theta' = -1 / M^2
+    forbidden:  a = N exp(-S),     b = N exp(S),      S' = 1 / (2 N^2)
+
+with a b' - a' b = 1. Far from a turning point M^2 = Q^-1/2 (amplitude sqrt(m/k)) and Theta is
+the action from the turning point plus pi/4. Near one, the local slope of Q gives M and the
+rest of Theta by Airy functions (Langer, Phys. Rev. 51, 669, 1937); at the bottom of a well or
+the top of a barrier its curvature does, by parabolic cylinder functions (DLMF 12.2, 12.14;
+Miller & Good, Phys. Rev. 91, 174, 1953).
+"""
+
+from __future__ import annotations
+
+from typing import NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+from scipy.special import airy, airye, gammaln, loggamma
+
+Floats = npt.NDArray[np.float64]
+Mask = npt.NDArray[np.bool_]
+
+_FAR = 12.0  # beyond it the asymptotic series below are good to 1e-13
+_NONE = 1e12  # a scaled distance that stands for "no turning point anywhere near"
+
+
+class Face(NamedTuple):
+    """One face of every piece at every energy, shape (n_pieces, n_energies) each.
+
+    ``square`` is M^2 where ``allowed``, else 2 N^2 [nm]; ``slope`` is (ln M)' or (ln N)' along
+    y towards the high side [1/nm]; ``shift`` is what Theta or S has beyond the action.
+    """
+
+    allowed: Mask
+    square: Floats
+    slope: Floats
+    shift: Floats
+
+
+def allowed_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return Airy's modulus and phase at -distance, as corrections to the plain amplitude.
+
+    Parameters
+    ----------
+    distance : array
+        Scaled distance x >= 0 from the turning point.
+
+    Returns
+    -------
+    factor, logarithmic, phase : arrays
+        pi sqrt(x) (Ai^2 + Bi^2) [DLMF 9.8.20]; half the logarithmic derivative of Ai^2 + Bi^2
+        with respect to x; the phase beyond (2/3) x^(3/2) + pi/4 [DLMF 9.8.22].
+    """
+    near = distance < _FAR
+    x = np.where(near, distance, 0.0)
+    ai, aip, bi, bip = airy(-x)
+    square = ai * ai + bi * bi
+    logarithmic = -(ai * aip + bi * bip) / square
+    phase = np.arctan2(ai, bi) - 2.0 / 3.0 * x**1.5 - np.pi / 4
+    phase = phase - 2 * np.pi * np.round(phase / (2 * np.pi))
+    far = np.where(near, _FAR, np.minimum(distance, _NONE))
+    c = far**-3.0
+    series = 1 - c * (5 / 32 - c * (1155 / 2048 - c * (425425 / 65536)))
+    derivative = c * (15 / 32 - c * (3465 / 1024 - c * (3828825 / 65536)))
+    tail = c * (-5 / 32 + c * (1105 / 6144 - c * (82825 / 65536 - c * (1282031525 / 58720256))))
+    return (
+        np.where(near, np.pi * np.sqrt(x) * square, series),
+        np.where(near, logarithmic, (-0.5 + derivative / series) / (2 * far)),
+        np.where(near, phase, 2.0 / 3.0 * far**1.5 * tail),
+    )
+
+
+def forbidden_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return the same on the forbidden side, from sqrt(Ai Bi) and half ln(Bi / Ai).
+
+    Returns
+    -------
+    factor, logarithmic, exponent : arrays
+        2 pi sqrt(x) Ai Bi; half the logarithmic derivative of Ai Bi with respect to x; the
+        exponent beyond (2/3) x^(3/2) + (ln 2) / 2 (DLMF 9.7).
+    """
+    near = distance < _FAR
+    x = np.where(near, distance, 0.0)
+    ai, aip, bi, bip = airye(x)
+    logarithmic = 0.5 * (aip / ai + bip / bi)
+    exponent = 0.5 * np.log(bi / ai) - 0.5 * np.log(2.0)
+    far = np.where(near, _FAR, np.minimum(distance, _NONE))
+    c = far**-3.0
+    series = 1 + c * (5 / 32 + c * (1155 / 2048 + c * (425425 / 65536)))
+    derivative = -c * (15 / 32 + c * (3465 / 1024 + c * (3828825 / 65536)))
+    tail = c * (5 / 32 + c * (1105 / 6144 + c * (82825 / 65536 + c * (1282031525 / 58720256))))
+    return (
+        np.where(near, 2 * np.pi * np.sqrt(x) * ai * bi, series),
+        np.where(near, logarithmic, (-0.5 + derivative / series) / (2 * far)),
+        np.where(near, exponent, 2.0 / 3.0 * far**1.5 * tail),
+    )
+
+
+def airy_face(q: Floats, slope: Floats, plain: Mask) -> Face:
+    """Return a face where Q = ``q`` and Q' = ``slope``, by the Airy functions of that slope.
+
+    For a linear Q this is exact. ``plain`` marks pieces whose phase beyond the action counts
+    only within one scaled distance of the turning point, so that the condition between hard
+    walls is the plain one, action = n pi.
+    """
+    steep = np.maximum(np.abs(slope), 1e-300)
+    with np.errstate(over="ignore"):
+        x = np.minimum(np.abs(q) * steep ** (-2.0 / 3.0), _NONE)
+    sign = np.sign(slope)
+    allowed = q > 0
+    scale = steep ** (1.0 / 3.0)
+    m_factor, m_log, phase = allowed_modulus(np.where(allowed, x, _NONE))
+    n_factor, n_log, exponent = forbidden_modulus(np.where(allowed, _NONE, x))
+    fade = np.clip((x - 0.3) / 0.7, 0.0, 1.0)
+    weight = np.where(plain, 1 - fade * fade * (3 - 2 * fade), 1.0)
+    root = np.sqrt(np.maximum(np.abs(q), 1e-300))
+    tiny = x < 1e-8  # at the turning point: Ai, Bi at zero instead of 0 / 0
+    ai, _, bi, _ = airy(0.0)
+    square = np.where(
+        allowed,
+        np.where(tiny, np.pi * (ai * ai + bi * bi) / scale, m_factor / root),
+        np.where(tiny, 2 * np.pi * ai * bi / scale, n_factor / root),
+    )
+    return Face(
+        allowed,
+        square,
+        np.where(allowed, m_log * sign * scale, -n_log * sign * scale),
+        np.where(allowed, -sign * phase * weight, -sign * exponent),
+    )
+
+
+def gamma_ratio(height: Floats) -> Floats:
+    """Return Gamma(1/4 + h/2) / Gamma(3/4 + h/2) for h >= 0."""
+    h = np.minimum(height, 1e8)
+    ratio: Floats = np.exp(gammaln(0.25 + h / 2) - gammaln(0.75 + h / 2))
+    return np.where(height > 1e6, np.sqrt(2 / np.maximum(height, 1.0)), ratio)
+
+
+def bottom_face(q: Floats, scale: Floats) -> Face:
+    """Return a face at the bottom of a parabolic well, ``scale`` = (2 |Q''|)^(-1/4) [nm].
+
+    From U(a, 0) and U'(a, 0), DLMF 12.2.6 and 12.2.7.
+    """
+    allowed = q > 0
+    square = scale * gamma_ratio(np.abs(q) * scale * scale) / np.sqrt(2.0)
+    return Face(allowed, square, np.zeros_like(q), np.zeros_like(q))
+
+
+def top_face(q: Floats, scale: Floats) -> Face:
+    """Return a face at the top of a parabolic barrier; it counts as forbidden at any energy.
+
+    From W(a, 0), DLMF 12.14.2.
+    """
+    a = np.minimum(np.abs(q) * scale * scale, 1e8)
+    ratio = np.exp((loggamma(0.25 + 0.5j * a) - loggamma(0.75 + 0.5j * a)).real)
+    none = np.zeros(q.shape, dtype=bool)
+    return Face(none, scale * ratio / np.sqrt(2.0), np.zeros_like(q), np.zeros_like(q))
+
+
+def bottom_exponent(height: Floats) -> Floats:
+    """Return half the logarithm of sqrt(2 pi) (h/e)^h / Gamma(h + 1/2), the bottom's amplitude.
+
+    The factor by which the state of a parabolic well is larger outside than the plain
+    amplitude says (Furry, Phys. Rev. 71, 360, 1947).
+    """
+    h = np.maximum(np.minimum(height, 1e8), 1e-300)
+    exact = 0.5 * (0.5 * np.log(2 * np.pi) + h * (np.log(h) - 1) - gammaln(h + 0.5))
+    return np.where(height > 1e4, 1 / (48 * h), exact)
+
+
+def top_phase(height: Floats) -> Floats:
+    """Return half of arg Gamma(1/2 + i a) - a ln|a| + a, the phase a barrier's top adds.
+
+    Positive ``height`` a is below the top (DLMF 12.14.17; Ford, Hill, Wakano, Wheeler,
+    Ann. Phys. 7, 239, 1959).
+    """
+    a = np.where(height == 0, 1e-300, height)
+    large = np.abs(a) > 1e4
+    safe = np.where(large, 1.0, a)
+    exact = 0.5 * (loggamma(0.5 + 1j * safe).imag - safe * np.log(np.abs(safe)) + safe)
+    return np.where(large, 1 / (48 * a), exact)
+
+
+def top_exponent(theta: Floats) -> Floats:
+    """Return half of arsinh(exp(2 theta)): theta + (ln 2)/2 deep below the top, 0 far above."""
+    capped = np.minimum(theta, 300.0)
+    return np.where(theta > 17.0, theta + 0.5 * np.log(2.0), 0.5 * np.arcsinh(np.exp(2 * capped)))
