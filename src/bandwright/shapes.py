@@ -12,31 +12,50 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from decimal import Decimal
 from itertools import pairwise
-from typing import Any, Literal
+from typing import Any, Literal, Self
 
 import numpy as np
 import numpy.typing as npt
 
-from .errors import BandwrightError, QuantityError, StackError
+from .errors import StackError
 from .quantities import as_length, number_text, show
 
 Floats = npt.NDArray[np.float64]
 Face = Literal["first", "last"]
 
 
+class _Shape:
+    """What shapes have in common; one without kinks that knows only its faces."""
+
+    __slots__ = ()
+
+    @property
+    def samples(self) -> tuple[float, ...]:
+        """The values that were given: none of a callable."""
+        return ()
+
+    @property
+    def constant(self) -> bool:
+        """Whether the value is known to be the same all along."""
+        return len(set(self.samples)) == 1
+
+    def breaks(self, thickness_nm: float) -> tuple[float, ...]:
+        """Return the interior depths [nm] where the slope jumps."""
+        return ()
+
+    def stretched(self, factor: float) -> Self:
+        """Return the shape of a layer ``factor`` times as thick."""
+        return self
+
+
 @dataclass(frozen=True, slots=True)
-class Flat:
+class Flat(_Shape):
     """One value all along."""
 
     value: float
 
     def __post_init__(self) -> None:
         _store(self, "value", _finite(self.value, "value"))
-
-    @property
-    def constant(self) -> bool:
-        """Whether the value is the same all along."""
-        return True
 
     @property
     def samples(self) -> tuple[float, ...]:
@@ -47,10 +66,6 @@ class Flat:
         """Return the value at each depth [nm], in the shape of ``depth_nm``."""
         return np.full(np.shape(depth_nm), self.value)
 
-    def breaks(self, thickness_nm: float) -> tuple[float, ...]:
-        """Return the interior depths [nm] where the slope jumps."""
-        return ()
-
     def mapped(self, function: Callable[[float], float]) -> Flat:
         """Return this shape with ``function`` done to its value."""
         return Flat(function(self.value))
@@ -59,14 +74,10 @@ class Flat:
         """Return the shape seen from the other face."""
         return self
 
-    def stretched(self, factor: float) -> Flat:
-        """Return the shape of a layer ``factor`` times as thick."""
-        return self
-
 
 @dataclass(frozen=True, slots=True)
-class Linear:
-    """Straight from the first-grown to the last-grown face."""
+class _Pair(_Shape):
+    """From a value at the first-grown face to one at the last-grown face."""
 
     first: float
     last: float
@@ -76,57 +87,32 @@ class Linear:
         _store(self, "last", _finite(self.last, "last value"))
 
     @property
-    def constant(self) -> bool:
-        """Whether the value is the same all along."""
-        return self.first == self.last
-
-    @property
     def samples(self) -> tuple[float, ...]:
         """The values that were given."""
         return (self.first, self.last)
+
+    def mapped(self, function: Callable[[float], float]) -> Self:
+        """Return this shape with an affine ``function`` done to its values."""
+        return type(self)(function(self.first), function(self.last))
+
+    def reversed(self, thickness_nm: float | None) -> Self:
+        """Return the shape seen from the other face."""
+        return type(self)(self.last, self.first)
+
+
+@dataclass(frozen=True, slots=True)
+class Linear(_Pair):
+    """Straight from the first-grown to the last-grown face."""
 
     def at(self, depth_nm: npt.ArrayLike, thickness_nm: float, flat_at: Face = "first") -> Floats:
         """Return the value at each depth [nm], in the shape of ``depth_nm``."""
         part = np.asarray(depth_nm, dtype=float) / thickness_nm
         return np.asarray(self.first * (1.0 - part) + self.last * part)
 
-    def breaks(self, thickness_nm: float) -> tuple[float, ...]:
-        """Return the interior depths [nm] where the slope jumps."""
-        return ()
-
-    def mapped(self, function: Callable[[float], float]) -> Linear:
-        """Return this shape with an affine ``function`` done to its values."""
-        return Linear(function(self.first), function(self.last))
-
-    def reversed(self, thickness_nm: float | None) -> Linear:
-        """Return the shape seen from the other face."""
-        return Linear(self.last, self.first)
-
-    def stretched(self, factor: float) -> Linear:
-        """Return the shape of a layer ``factor`` times as thick."""
-        return self
-
 
 @dataclass(frozen=True, slots=True)
-class Quadratic:
+class Quadratic(_Pair):
     """A parabola between the faces, without slope at the face where the band edge is lower."""
-
-    first: float
-    last: float
-
-    def __post_init__(self) -> None:
-        _store(self, "first", _finite(self.first, "first value"))
-        _store(self, "last", _finite(self.last, "last value"))
-
-    @property
-    def constant(self) -> bool:
-        """Whether the value is the same all along."""
-        return self.first == self.last
-
-    @property
-    def samples(self) -> tuple[float, ...]:
-        """The values that were given."""
-        return (self.first, self.last)
 
     def at(self, depth_nm: npt.ArrayLike, thickness_nm: float, flat_at: Face = "first") -> Floats:
         """Return the value at each depth [nm]; ``flat_at`` is the face without slope."""
@@ -135,25 +121,9 @@ class Quadratic:
             return np.asarray(self.first + (self.last - self.first) * part**2)
         return np.asarray(self.last + (self.first - self.last) * (1.0 - part) ** 2)
 
-    def breaks(self, thickness_nm: float) -> tuple[float, ...]:
-        """Return the interior depths [nm] where the slope jumps."""
-        return ()
-
-    def mapped(self, function: Callable[[float], float]) -> Quadratic:
-        """Return this shape with an affine ``function`` done to its values."""
-        return Quadratic(function(self.first), function(self.last))
-
-    def reversed(self, thickness_nm: float | None) -> Quadratic:
-        """Return the shape seen from the other face."""
-        return Quadratic(self.last, self.first)
-
-    def stretched(self, factor: float) -> Quadratic:
-        """Return the shape of a layer ``factor`` times as thick."""
-        return self
-
 
 @dataclass(frozen=True, slots=True)
-class Points:
+class Points(_Shape):
     """A table of points, straight in between; the first depth is 0, the last the thickness.
 
     Parameters
@@ -185,17 +155,10 @@ class Points:
             )
         for before, after in pairwise(depths):
             if after <= before:
-                raise StackError(
-                    f"depth {number_text(after)} nm follows {number_text(before)} nm; depths must"
-                    " increase (for a jump, write two layers)"
-                )
+                found = f"depth {number_text(after)} nm follows {number_text(before)} nm"
+                raise StackError(f"{found}; depths must increase (for a jump, write two layers)")
         _store(self, "depths_nm", depths)
         _store(self, "values", values)
-
-    @property
-    def constant(self) -> bool:
-        """Whether the value is the same all along."""
-        return len(set(self.values)) == 1
 
     @property
     def samples(self) -> tuple[float, ...]:
@@ -246,11 +209,12 @@ class Points:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Function:
+class Function(_Shape):
     """A callable of the depth: a float array [nm] in, floats in core units out.
 
     The callable is asked at ``offset + scale * depth``, so that a layer can be turned over or
-    stretched. Two are equal when the callable is the same object.
+    stretched. Two are equal when the callable is the same object. A lambda or a local function
+    does not pickle, so it can't go to a worker process; a function of a module can.
     """
 
     function: Callable[[Floats], Any]
@@ -272,16 +236,6 @@ class Function:
 
     def __hash__(self) -> int:
         return hash((id(self.function), self.scale, self.offset))
-
-    @property
-    def constant(self) -> bool:
-        """Whether the value is known to be the same all along: never."""
-        return False
-
-    @property
-    def samples(self) -> tuple[float, ...]:
-        """The values that were given: none."""
-        return ()
 
     def at(self, depth_nm: npt.ArrayLike, thickness_nm: float, flat_at: Face = "first") -> Floats:
         """Return the value at each depth [nm], in the shape of ``depth_nm``.
@@ -305,10 +259,6 @@ class Function:
             bad = float(depth[~np.isfinite(value)].flat[0]) if depth.ndim else float(depth)
             raise StackError(f"the callable is not finite at {number_text(bad)} nm")
         return value
-
-    def breaks(self, thickness_nm: float) -> tuple[float, ...]:
-        """Return the interior depths [nm] where the slope jumps: none are known."""
-        return ()
 
     def mapped(self, function: Callable[[float], float]) -> Function:
         """Return this shape with ``function`` done to its values (arrays of them)."""
@@ -395,10 +345,13 @@ def as_shape(
             f"got {show(value)}; give one value, a pair (first face, last face), or a table of"
             " (depth, value) points"
         )
-    except QuantityError:
-        raise
-    except BandwrightError as error:
-        raise error.at(name) from None
+    except StackError as error:
+        raise named(error, name) from None
+
+
+def named(error: StackError, name: str) -> StackError:
+    """Return the error with the key it is about before its text."""
+    return StackError(f"{name}: {error.message}", error.where)
 
 
 def _points(items: Sequence[Any], convert: Callable[[object, str], float], name: str) -> Points:

@@ -1,0 +1,11 @@
+"""Layer, Repeat, Stack: what is grown, immutable, hashable, in growth order.
+
+Everything is checked here that needs no material. Values are stored in core units: thickness
+in nm or ML as written, energies in eV, fields in V/nm, temperature in K.
+"""
+
+from .groups import MOST_LAYERS, Repeat, Written
+from .layer import Layer, layer_name, numbered_layer
+from .whole import Stack
+
+__all__ = ["MOST_LAYERS", "Layer", "Repeat", "Stack", "Written", "layer_name", "numbered_layer"]
