@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+
 import numpy as np
 import numpy.typing as npt
 
@@ -193,8 +194,8 @@ class Profile:
         """
         parts: list[tuple[Floats, Floats, Floats, Floats]] = []
         for start, section in zip(self.faces, self.sections, strict=False):
-            share = 2 if section.tilted else max(
-                9, int(points * section.thickness / self.thickness)
+            share = (
+                2 if section.tilted else max(9, int(points * section.thickness / self.thickness))
             )
             depth = np.linspace(0.0, section.thickness, share)
             inverse = section.inverse_gap.at(depth)

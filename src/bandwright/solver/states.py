@@ -113,27 +113,23 @@ class States:
 
     @cached_property
     def _quadrature(self) -> _Quadrature:
-        """Gauss points on cells in which no state turns or decays by more than `_CELL`."""
+        low, high = float(self.energies.min()), float(self.energies.max())
+        return self._on(*_cells(self.system, low, high))
+
+    def _on(self, z: Floats, weight: Floats) -> _Quadrature:
+        """States at sorted points inside the structure."""
         slices = self.system.slices
-        top, bottom = float(self.energies.max()), float(self.energies.min())
-        edge, mass, gap = (np.abs(a) for a in (slices.edge, slices.mass, slices.inverse_gap))
-        edge = slices.edge
-        heavy = mass * (1.0 + np.maximum(0.0, (top - edge) * gap))
-        reach = np.maximum(np.abs(top - edge), np.abs(edge - bottom))
-        rate = np.sqrt(np.max(heavy * reach, axis=0) / H2M)
-        cells = np.maximum(1, np.ceil(slices.thickness * rate / _CELL)).astype(np.int64)
-        width = np.repeat(slices.thickness / cells, cells)
-        within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)
-        begin = np.repeat(slices.faces[:-1], cells) + within * width
-        z = (begin[:, None] + 0.5 * width[:, None] * (1.0 + _NODES)).reshape(-1)
-        weight = (0.5 * width[:, None] * _WEIGHTS).reshape(-1)
-        index = np.repeat(np.repeat(np.arange(len(cells)), cells), _ORDER)
+        index = np.searchsorted(slices.faces, z, side="right") - 1
+        index = np.clip(index, 0, len(slices.thickness) - 1)
         u, p = self._inside(z, index)
         section = slices.section[index]
         sampled = slice_at(
-            slices.profile, slices.counts, section, z - slices.profile.faces[section],
+            slices.profile,
+            slices.counts,
+            section,
+            z - slices.profile.faces[section],
             np.zeros_like(z),
-        )  # fmt: skip
+        )
         _, b = local_mass(
             self.energies[:, None], sampled.edge[1], sampled.mass[1], sampled.inverse_gap[1]
         )
@@ -179,6 +175,16 @@ class States:
     def dipoles(self) -> Floats:
         """Matrix elements of z [nm], (n_levels, n_levels); positions on the diagonal."""
         return self._moments[1]
+
+    @property
+    def positions(self) -> Floats:
+        """Mean position of each level [nm], (n_levels,)."""
+        return np.diag(self._moments[1]).copy()
+
+    @property
+    def squares(self) -> Floats:
+        """Mean square of the position of each level [nm^2], (n_levels,)."""
+        return np.diag(self._moments[2]).copy()
 
     @property
     def spreads(self) -> Floats:
@@ -232,3 +238,33 @@ def _choose(
     from_before = one.right * u - one.off * left
     from_after = two.off * right - two.left * u
     return np.where(use_before[:, None], from_before, from_after)
+
+
+def _cells(system: System, low: float, high: float) -> tuple[Floats, Floats]:
+    """Return Gauss points and weights on cells in which no state turns or decays much."""
+    slices = system.slices
+    edge = slices.edge
+    heavy = slices.mass * (1.0 + np.maximum(0.0, (high - edge) * slices.inverse_gap))
+    reach = np.maximum(np.abs(high - edge), np.abs(edge - low))
+    rate = np.sqrt(np.max(heavy * reach, axis=0) / H2M)
+    cells = np.maximum(1, np.ceil(slices.thickness * rate / _CELL)).astype(np.int64)
+    width = np.repeat(slices.thickness / cells, cells)
+    within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)
+    begin = np.repeat(slices.faces[:-1], cells) + within * width
+    z = (begin[:, None] + 0.5 * width[:, None] * (1.0 + _NODES)).reshape(-1)
+    return z, (0.5 * width[:, None] * _WEIGHTS).reshape(-1)
+
+
+def cross_moment(bound: States, boxed: States) -> Floats:
+    """Return matrix elements of z between states of two sets of ends [nm], inside the structure.
+
+    They are taken about the mean of both states' positions, (n_bound, n_boxed).
+    """
+    energies = np.concatenate((bound.energies, boxed.energies))
+    points = _cells(boxed.system, float(energies.min()), float(energies.max()))
+    one, two = bound._on(*points), boxed._on(*points)
+    weighted = one.weight * one.z
+    first = (one.u * weighted) @ two.u.T + (one.p * weighted) @ two.p.T
+    overlap = (one.u * one.weight) @ two.u.T + (one.p * one.weight) @ two.p.T
+    middle = 0.5 * (bound.positions[:, None] + boxed.positions)
+    return np.asarray(first - middle * overlap)

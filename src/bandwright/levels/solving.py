@@ -1,0 +1,143 @@
+"""solve(): a stack in, its levels out."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from .. import phase
+from ..errors import SolveError, close_matches
+from ..profile import Profile
+from ..profile.build import build_profile
+from ..quantities import as_energy
+from ..solver import lowest_edge, solve_profile
+from ..stack import Stack
+from .ranges import Range, ranges
+from .result import Levels, Part
+
+METHODS = ("shooting", "phase-integral")
+
+
+def solve(
+    stack: Stack,
+    *,
+    below: object = None,
+    at_most: int | None = None,
+    tolerance: object = "1e-6 eV",
+    group: object = "0.01 meV",
+    method: str = "shooting",
+    phase_order: int = 1,
+    bands: str | None = None,
+) -> Levels:
+    """Return the levels of a stack, each with its evidence.
+
+    Parameters
+    ----------
+    stack : Stack
+    below : energy, optional
+        Highest energy asked, from the stack's zero. Without it, a flat stack stops at its bound
+        levels, and a stack in a field at the highest edge it has without the field, carried
+        along by the field.
+    at_most : int, optional
+        Most levels returned, from the lowest.
+    tolerance : energy
+        Largest error of an energy; 1e-10 eV is within reach.
+    group : energy
+        Levels closer than this to the first of them are one row; "0 meV" lists every one.
+    method : str
+        ``"shooting"``, exact; or ``"phase-integral"``, which stands alone and shoots nothing.
+    phase_order : int
+        1, or 2 for the next phase-integral correction in smooth sections.
+    bands : str, optional
+        ``"one-band"`` or ``"two-band"`` instead of the stack's own choice.
+
+    Returns
+    -------
+    Levels
+
+    Raises
+    ------
+    StackError, MaterialError
+        If the stack can't be solved as written; the text names the layer.
+    QuantityError
+        If an argument is no energy.
+    SolveError
+        If the tolerance is not reached, or nothing bounds the energies asked.
+
+    Examples
+    --------
+    >>> import bandwright as bw
+    >>> stack = bw.parse_line("20 nm {edge 250 meV, mass 0.092}, 10 nm {edge 0 meV, mass 0.067},"
+    ...                       " 20 nm {edge 250 meV, mass 0.092}")
+    >>> [round(float(energy) * 1e3, 3) for energy in bw.solve(stack).energies]
+    [30.539, 120.015, 243.967]
+    """
+    tolerance_eV = _positive(as_energy(tolerance, "tolerance"), "tolerance")
+    group_eV = as_energy(group, "group")
+    if group_eV < 0.0:
+        raise SolveError("group: got a negative energy; '0 meV' lists every level")
+    limit = None if below is None else as_energy(below, "below")
+    _check_choice("method", method, METHODS)
+    if at_most is not None and (not isinstance(at_most, int) or at_most < 1):
+        raise SolveError(f"at_most: got {at_most!r}; a whole number from 1 is due")
+    if phase_order not in (1, 2):
+        raise SolveError(f"phase_order: got {phase_order!r}; 1 or 2 is due")
+    if bands is not None:
+        _check_choice("bands", bands, ("one-band", "two-band"))
+    profile = build_profile(stack, bands)
+    spans = ranges(profile, limit, at_most)
+    if method == "shooting":
+        parts = _shoot(profile, spans, at_most, tolerance_eV)
+    else:
+        parts = _phase_only(profile, spans, at_most, phase_order)
+    return Levels(stack, profile, parts, tolerance_eV, group_eV, method, phase_order)
+
+
+def _check_choice(name: str, given: str, known: tuple[str, ...]) -> None:
+    if given not in known:
+        raise SolveError(f"{name}: got {given!r}{close_matches(str(given), known)}")
+
+
+def _positive(value: float, name: str) -> float:
+    if value <= 0.0:
+        raise SolveError(
+            f"{name}: got {value:g} eV; an energy above zero is due, such as '1e-6 eV'"
+        )
+    return value
+
+
+def _shoot(
+    profile: Profile, spans: Sequence[Range], at_most: int | None, tolerance: float
+) -> tuple[Part, ...]:
+    parts: list[Part] = []
+    found = 0
+    for span in spans:
+        left = None if at_most is None else at_most - found
+        if left == 0:
+            break
+        solution = solve_profile(
+            profile, high=span.high, at_most=left, tolerance=tolerance, ends=span.ends, skip=found
+        )
+        parts.append(Part(span, solution.numbers, solution.energies, solution))
+        found += len(solution.energies)
+    return tuple(parts)
+
+
+def _phase_only(
+    profile: Profile, spans: Sequence[Range], at_most: int | None, order: int
+) -> tuple[Part, ...]:
+    parts: list[Part] = []
+    found = 0
+    for span in spans:
+        left = None if at_most is None else at_most - found
+        if left == 0:
+            break
+        low = lowest_edge(profile)
+        high = max(span.high, low)
+        first, last = phase.count(profile, [low, high], span.ends, order)
+        numbers = np.arange(max(found, int(first)), int(last))[:left]
+        energies = phase.levels(profile, low, high, numbers, span.ends, order)
+        parts.append(Part(span, numbers, energies, None))
+        found += len(energies)
+    return tuple(parts)

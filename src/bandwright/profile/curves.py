@@ -1,0 +1,77 @@
+"""Curves along a section from functions of the depth, exact where they can be."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.polynomial import chebyshev, polynomial
+from scipy.optimize import minimize_scalar
+
+from bandwright.profile.sections import Curve, Floats, Polynomial, Sampled
+
+_DEGREE = 24
+_NODES = np.cos(np.pi * (np.arange(_DEGREE + 1) + 0.5) / (_DEGREE + 1))
+_NEGLIGIBLE = 2e-15
+
+
+@dataclass(frozen=True, slots=True)
+class Series:
+    """A Chebyshev series on a section of given thickness [nm]; picklable, quick to evaluate."""
+
+    coefficients: tuple[float, ...]
+    thickness: float
+
+    def __call__(self, depth: Floats) -> Floats:
+        """Return the value at each depth [nm]."""
+        return np.asarray(
+            chebyshev.chebval(2.0 * depth / self.thickness - 1.0, np.array(self.coefficients))
+        )
+
+
+def straight(first: float, last: float, thickness: float) -> Polynomial:
+    """Return the line through the values at both faces."""
+    if first == last:
+        return Polynomial((first,))
+    return Polynomial((first, (last - first) / thickness))
+
+
+def fitted(function: Callable[[Floats], Floats], thickness: float) -> Curve:
+    """Return a smooth function of the depth as a polynomial, a Chebyshev series, or itself.
+
+    Degree two and less become polynomials; a function that a series of degree 24 does not hold
+    to rounding stays as it is.
+    """
+    values = np.asarray(function(0.5 * thickness * (1.0 + _NODES)), dtype=float)
+    series = chebyshev.chebfit(_NODES, values, _DEGREE)
+    size = float(np.max(np.abs(values))) or 1.0
+    large = np.flatnonzero(np.abs(series) > _NEGLIGIBLE * size)
+    degree = int(large[-1]) if len(large) else 0
+    if degree > _DEGREE - 4:
+        return Sampled(function)
+    series = series[: degree + 1]
+    if degree > 2:
+        return Sampled(Series(tuple(map(float, series)), thickness))
+    powers = chebyshev.cheb2poly(series)
+    shifted: Floats = np.zeros(1)
+    for power, coefficient in enumerate(powers):
+        term = coefficient * polynomial.polypow([-1.0, 2.0 / thickness], power)
+        shifted = np.asarray(polynomial.polyadd(shifted, term), dtype=float)
+    return Polynomial(tuple(map(float, shifted)))
+
+
+def least(curve: Curve, thickness: float) -> float:
+    """Return the true minimum of a curve on its section, between sampled places by a search."""
+    ends = curve.at(np.array([0.0, thickness]))
+    if curve.degree <= 1:
+        return float(ends.min())
+    places = np.linspace(0.0, thickness, 257)
+    values = curve.at(places)
+    best = int(np.argmin(values))
+    low, high = places[max(best - 1, 0)], places[min(best + 1, 256)]
+    found = minimize_scalar(
+        lambda s: float(curve.at(np.array([s]))[0]),
+        bounds=(low, high), method="bounded", options={"xatol": 1e-9 * thickness},
+    )  # fmt: skip
+    return float(min(values[best], found.fun))
