@@ -251,7 +251,7 @@ def run_lines(args: argparse.Namespace) -> Answer:
 
 def run_compare(args: argparse.Namespace) -> Answer:
     """Solve several stacks and return one row for each."""
-    from .compare import compare
+    from .comparison import compare
     from .report import data, text
 
     stacks = [_stack(each, args) for each in args.stacks]

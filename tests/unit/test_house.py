@@ -32,7 +32,7 @@ HOUSE = [
     "cautions",
     "lines",
     "budget",
-    "compare",
+    "comparison",
     "report",
     "cli",
 ]

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from ..errors import BandwrightError
-from ..quantities import energy_text, temperature_text
+from ..quantities import temperature_text
 from ..stackline import line_text
 
 if TYPE_CHECKING:
@@ -56,9 +56,15 @@ def ends(first: str, last: str) -> str:
     return f"{first} at the substrate side, {last} at the surface side"
 
 
+def direction(levels: Levels) -> str:
+    """Return which way electrons run."""
+    way = levels.direction
+    return f"run {way}" if way.startswith("to ") else way
+
+
 def completeness(levels: Levels) -> str:
     """Return how many levels there are, between which bounds, and whether any may be missing."""
-    low, high = (energy_text(bound) for bound in levels.bounds)
+    low, high = (f"{1e3 * bound:.1f} meV" for bound in levels.bounds)
     count = len(levels.energies)
     noun = "level" if count == 1 else "levels"
     proof = "none missing by count" if levels.complete else "the counts do not prove it complete"
@@ -69,7 +75,7 @@ def facts(levels: Levels) -> list[Fact]:
     """Return (label, text) pairs in the order they are read."""
     stack, profile = levels.stack, levels.profile
     return [
-        ("electrons", levels.direction),
+        ("electrons", direction(levels)),
         ("stack", stack.name or "without a name"),
         ("grown", grown(stack)),
         ("held at", f"{temperature_text(stack.temperature)}, {strain(stack)}"),
