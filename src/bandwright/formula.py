@@ -227,7 +227,7 @@ def _parts(formula: str) -> tuple[_Part, ...]:
             )
         part = _part(found["element"], found["amount"])
         if part.element not in _ELEMENTS:
-            near = close_matches(part.element, _ELEMENTS)
+            near = _recased(compact) or close_matches(part.element, _ELEMENTS)
             raise MaterialError(
                 f"{formula!r}: {part.element!r} sits on no sublattice of a compound{near}"
             )
@@ -239,16 +239,19 @@ def _parts(formula: str) -> tuple[_Part, ...]:
 
 
 def _readable(formula: str) -> str:
-    """Return a hint for a formula that is one but for its capitals or its commas."""
+    """Return a hint for a text that is no formula."""
+    return _recased(formula) or "; write a formula like 'Al0.28Ga0.72As' or 'AlxGa1-xAs'"
+
+
+def _recased(formula: str) -> str:
+    """Return a hint for a formula that is one but for its capitals or its commas, else ""."""
     dotted = formula.replace(",", ".")
     place = 0
     mended = ""
     while found := _ANY_CASE.match(dotted, place):
         mended += found["element"].capitalize() + (found["amount"] or "").lower()
         place = found.end()
-    if mended and place == len(dotted):
-        return f"; did you mean {mended!r}?"
-    return "; write a formula like 'Al0.28Ga0.72As' or 'AlxGa1-xAs'"
+    return f"; did you mean {mended!r}?" if mended and place == len(dotted) else ""
 
 
 def _part(element: str, amount: str | None) -> _Part:

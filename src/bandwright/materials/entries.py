@@ -92,12 +92,17 @@ class Mixed:
 
 @dataclass(frozen=True)
 class Alloy:
-    """Two binaries that share an element, and how their quantities mix."""
+    """Two binaries that share an element, and how their quantities mix.
+
+    ``bowings`` serve every alloy that holds the pair; ``laws``, polynomials of the value itself,
+    and ``route`` serve the ternary alone, where they go before the bowings.
+    """
 
     pattern: str
     first: str
     second: str
-    mixed: Mapping[str, Mixed]
+    bowings: Mapping[str, Mixed]
+    laws: Mapping[str, Mixed]
     route: Route | None = None
     follows_gap: bool | None = None
     direct: Mixed | None = None
@@ -106,7 +111,8 @@ class Alloy:
         """Return the older entry with what this one says put in its place."""
         return replace(
             self,
-            mixed={**older.mixed, **self.mixed},
+            bowings={**older.bowings, **self.bowings},
+            laws={q: law for q, law in older.laws.items() if q not in self.bowings} | {**self.laws},
             route=self.route or older.route,
             follows_gap=older.follows_gap if self.follows_gap is None else self.follows_gap,
             direct=self.direct or older.direct,
@@ -234,7 +240,14 @@ def read_alloy(reader: Reader, pattern: str, found: Any) -> Alloy:
         valid = reader.range(f"{place}.range", inner.get("range"), RATIO)
         direct = Mixed(first, (), False, source, reader.origin, valid=valid)
     return Alloy(
-        pattern, first, second, mixed, _route(reader, key, table), _flag(reader, key, table), direct
+        pattern,
+        first,
+        second,
+        {quantity: law for quantity, law in mixed.items() if law.bowing},
+        {quantity: law for quantity, law in mixed.items() if not law.bowing},
+        _route(reader, key, table),
+        _flag(reader, key, table),
+        direct,
     )
 
 
@@ -243,17 +256,20 @@ def _mixed(reader: Reader, key: str, first: str, quantity: str, entry: Any) -> M
     sign = 1.0
     if quantity == "a_v":
         sign, entry = _sign_of_a_v(reader, key, entry)
-    table = reader.table(key, entry, ("bowing", "polynomial", "at", "valid", "source"))
-    if ("bowing" in table) == ("polynomial" in table):
+    table = reader.table(key, entry, ("bowing", "polynomial", "value", "at", "valid", "source"))
+    ways = [way for way in ("bowing", "polynomial", "value") if way in table]
+    if len(ways) != 1:
         raise reader.error(
-            key, "give either bowing = C for mean - C x (1 - x), or polynomial = [p0, p1, ...]"
+            key,
+            "give one of bowing = C for mean - C x (1 - x), polynomial = [p0, p1, ...] "
+            "for p0 + p1 x + ..., value = one number for every x",
         )
-    bowing = "bowing" in table
+    bowing = ways == ["bowing"]
     if bowing and quantity in ("share", "step"):
-        raise reader.error(key, f"{quantity!r} has no bowing; write polynomial = [p0, p1, ...]")
+        raise reader.error(key, f"a {quantity} has no bowing; write value or polynomial")
     kind = QUANTITIES[quantity]
     loose = Kind(kind.name, kind.units, kind.example, -1e3, 1e3)
-    found = table["bowing" if bowing else "polynomial"]
+    found = table[ways[0]]
     items = found if isinstance(found, list) else [found]
     if not items:
         raise reader.error(key, "the polynomial is empty")

@@ -15,6 +15,7 @@ from bandwright.errors import BandwrightError, MaterialError, UnknownName, close
 from bandwright.formula import Composition, Value
 from bandwright.materials.entries import Route
 from bandwright.materials.files import Catalogue, Entries, read_file
+from bandwright.materials.listing import Row, Shown, direct_text, facts, route_text
 from bandwright.materials.mixing import Mix
 
 #: a composition with gaps closer than this at Gamma and at X or L is called direct [eV]
@@ -160,6 +161,54 @@ class Library:
             self._points[key] = self._point(composition, temperature_K, substrate)
         return self._points[key]
 
+    def listing(self) -> tuple[Row, ...]:
+        """Return one row for each binary and each alloy, numbers at 300 K without strain."""
+        binaries, alloys = self.catalogue.names()
+        rows = [self._row(name, "binary", {}) for name in binaries]
+        x = np.linspace(0.0, 1.0, 201)
+        return (*rows, *(self._row(pattern, "alloy", {"x": x}) for pattern in alloys))
+
+    def _row(self, name: str, kind: str, fractions: dict[str, Value]) -> Row:
+        origin = self.origin(name)
+        try:
+            point = self.properties(formula.parse(name, **fractions), 300.0)
+        except BandwrightError as error:
+            return Row(name, kind, None, None, None, "", origin, str(error))
+        if kind == "alloy":
+            direct = direct_text(np.asarray(fractions["x"]), point.direct)
+            return Row(name, kind, None, None, None, direct, origin, "")
+        gap, mass, lattice = float(point.gap), float(point.mass), float(point.lattice)
+        return Row(name, kind, gap, mass, lattice, "yes" if point.direct else "no", origin, "")
+
+    def show(self, composition: str, temperature_K: float, substrate: str | None = None) -> Shown:
+        """Return one formula's numbers, and every number of the files they rest on.
+
+        Parameters
+        ----------
+        composition : str
+            A formula without letters.
+        temperature_K : float
+            Temperature [K].
+        substrate : str, optional
+            Formula of the substrate.
+
+        Raises
+        ------
+        MaterialError, UnknownName
+            As `properties`.
+
+        Examples
+        --------
+        >>> shown = Library.shipped().show("Al0.3Ga0.7As", 77.0, "GaAs")
+        >>> shown.facts[0].name, shown.facts[0].quantity, shown.facts[0].value
+        ('AlAs', 'lattice', '0.56611 nm at 300 K')
+        """
+        parsed = formula.parse(composition)
+        point = self.properties(parsed, temperature_K, substrate)
+        mix = Mix(parsed, self.catalogue)
+        route = route_text(self._route(mix))
+        return Shown(composition, temperature_K, substrate, point, route, tuple(facts(mix)))
+
     def _mix(self, composition: str | Composition) -> Mix:
         if isinstance(composition, str):
             composition = formula.parse(composition)
@@ -284,9 +333,10 @@ def _direct(
     deepest = np.asarray(edge) - lowest
     index = int(np.argmax(deepest))
     which = min(sides, key=lambda s: float(np.broadcast_to(s[1], deepest.shape).flat[index]))[0]
+    up_to = "up to " if np.ndim(deepest) else ""
     bare = " (X and L are not shifted by strain)" if strained else ""
     return _plain(direct), (
-        f"{mix.name}: indirect gap; the edge at {which} lies up to "
+        f"{mix.name}: indirect gap; the edge at {which} lies {up_to}"
         f"{1000.0 * float(deepest.flat[index]):.0f} meV below the one at Gamma used here{bare}",
     )
 

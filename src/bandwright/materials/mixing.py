@@ -106,8 +106,7 @@ class Mix:
 
     def _law(self, quantity: str) -> Mixed | None:
         """Return the polynomial of a ternary, where its file gives one."""
-        law = self.ternary.alloy.mixed.get(quantity) if self.ternary else None
-        return law if law is not None and not law.bowing else None
+        return self.ternary.alloy.laws.get(quantity) if self.ternary else None
 
     def _of(self, binary: Binary, quantity: str, temperature_K: float | None) -> float:
         number = binary.numbers.get(quantity)
@@ -132,13 +131,13 @@ class Mix:
         """Return what the bowings of all pairs take off the mean."""
         total: Value = 0.0
         for pair in self.pairs:
-            law = pair.alloy.mixed.get(quantity)
-            if law is not None and law.bowing:
+            law = pair.alloy.bowings.get(quantity)
+            if law is not None:
                 total = total + pair.weight * _horner(law.coefficients, pair.x(law.first))
-            elif law is None and quantity == "gap":
+            elif quantity == "gap":
                 raise MaterialError(
-                    f"{self.name}: the file of {pair.alloy.pattern} has no 'gap'; "
-                    'give its bowing, or bowing = "0 eV" with the source that says so'
+                    f"{self.name}: the file of {pair.alloy.pattern} has no bowing of the gap; "
+                    'give it, or bowing = "0 eV" with the source that says so'
                 )
         return total
 
@@ -193,12 +192,19 @@ class Mix:
                         f"used at {temperature_K:g} K"
                     )
         for pair in self.pairs:
-            for quantity, law in pair.alloy.mixed.items():
+            alloy = pair.alloy
+            if self.ternary is None and (alloy.laws or (alloy.route and alloy.route.partner)):
+                yield (
+                    f"{self.name}: own polynomials and edge of {alloy.pattern} serve the ternary "
+                    "alone; here its bowings are used"
+                )
+            laws = {**alloy.bowings, **(alloy.laws if self.ternary else {})}
+            for quantity, law in laws.items():
                 x = np.asarray(pair.x(law.first))
                 low, high = law.valid
                 if np.any(x < low) or np.any(x > high):
                     yield (
-                        f"{self.name}: {quantity} of {pair.alloy.pattern} holds for a share of "
+                        f"{self.name}: {quantity} of {alloy.pattern} holds for a share of "
                         f"{law.first} from {low:g} to {high:g}"
                     )
 
