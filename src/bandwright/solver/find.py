@@ -17,7 +17,8 @@ Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
 #: levels closer than this [eV] are refined together, as one subspace
-CLUSTER = 1e-7
+CLUSTER = 1e-10
+_RITZ_STEPS = 60
 _NEWTON_STEPS = 8
 _ROUNDS = 6
 
@@ -79,7 +80,8 @@ def find(system: System, numbers: Indices, low: float, high: float) -> Found:
     for first in np.unique(cluster):
         members = np.flatnonzero(cluster == first)
         if len(members) > 1 or not done[members[0]]:
-            energies[members], nodes[:, members] = _ritz(system, energies[members])
+            room = _room(energies, int(members[0]), int(members[-1]))
+            energies[members], nodes[:, members] = _ritz(system, energies[members], room)
     return Found(energies, system.full(nodes), cluster)
 
 
@@ -165,33 +167,42 @@ def _clusters(energies: Floats, width: float) -> Indices:
     return np.asarray(np.flatnonzero(starts)[np.cumsum(starts) - 1], dtype=np.int64)
 
 
-def _ritz(system: System, energies: Floats) -> tuple[Floats, Floats]:
-    """Refine a cluster: block inverse iterations with -K' as mass, then a small eigenproblem."""
+def _room(energies: Floats, first: int, last: int) -> float:
+    """Return how far the nearest level outside first..last is; at least `CLUSTER`."""
+    below = energies[first] - energies[first - 1] if first else 1e-6
+    above = energies[last + 1] - energies[last] if last + 1 < len(energies) else 1e-6
+    return float(max(CLUSTER, min(below, above)))
+
+
+def _ritz(system: System, energies: Floats, room: float) -> tuple[Floats, Floats]:
+    """Refine a cluster: block inverse iterations with -K' as mass, then a small eigenproblem.
+
+    ``room`` is the distance to the nearest level outside the cluster [eV]. The shift stands just
+    below the cluster, so that K is linear in E across it and the members grow alike.
+    """
     size = len(energies)
-    rng = np.random.default_rng(11)
-    centre = float(np.mean(energies))
     spread = float(energies[-1] - energies[0])
-    z = None
-    for offset in (3.0 * spread + 1e-6, 3.0 * spread + 1e-9):
-        shift = np.array([centre - offset])
-        matrix, slope = (_repeat(m, size) for m in system.matrix_and_slope(shift))
-        if z is None:
-            z = rng.uniform(-1.0, 1.0, (len(matrix.diagonal), size))
-        for _ in range(3):
-            z = solve_shifted(matrix, -apply(slope, z))
-            z = _orthonormal(z, -apply(slope, z))
+    shift = float(energies[0]) - 0.5 * spread - min(1e-10, 0.1 * room)
+    matrix, slope = (_repeat(m, size) for m in system.matrix_and_slope(np.array([shift])))
+    z = np.random.default_rng(11).uniform(-1.0, 1.0, (len(matrix.diagonal), size))
+    before = np.full(size, np.inf)
+    mu = np.zeros(size)
+    for _ in range(_RITZ_STEPS):
+        z = solve_shifted(matrix, -apply(slope, z))
+        z = _orthonormal(z, -apply(slope, z))
         small = z.T @ apply(matrix, z)
         mass = -(z.T @ apply(slope, z))
         mu, mix = eigh(0.5 * (small + small.T), 0.5 * (mass + mass.T))
         z = z @ mix
-        found = shift[0] + mu
-        centre, spread = float(np.mean(found)), float(found[-1] - found[0])
-    assert z is not None
-    if abs(centre - float(np.mean(energies))) > 1e-6:
+        if np.max(np.abs(mu - before)) < 1e-16 + 1e-3 * spread:
+            break
+        before = mu
+    if np.max(np.abs(shift + mu - energies)) > 1e-11:
         raise SolveError(
-            f"{size} levels near {centre:.9f} eV could not be told apart; ask for a finer tolerance"
+            f"{size} levels near {energies[0]:.9f} eV could not be told apart from each other and"
+            " from their neighbours"
         )
-    return np.asarray(found), _signed(z / np.sqrt(H2M))
+    return np.asarray(shift + mu), _signed(z / np.sqrt(H2M))
 
 
 def _repeat(matrix: Matrix, size: int) -> Matrix:
