@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from bisect import bisect_left
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence, Set
 from dataclasses import dataclass
 from decimal import Decimal
 from itertools import pairwise
@@ -367,7 +367,7 @@ def _points(items: Sequence[Any], convert: Callable[[object, str], float], name:
 
 def _items(value: object) -> list[Any] | None:
     """Return the items of a sequence that is no text, quantity or scalar."""
-    if isinstance(value, str) or hasattr(value, "m_as"):
+    if isinstance(value, str | Mapping | Set) or hasattr(value, "m_as"):
         return None
     if isinstance(value, np.ndarray):
         return list(value.tolist()) if value.ndim else None

@@ -23,11 +23,12 @@ from .reading import (
     Wrong,
     bare,
     cleaned,
+    garbled,
     photon,
     read_text,
     rounded,
 )
-from .texts import Density, Length, show
+from .texts import Density, Length, number_text, show
 
 _DIGITS = 15  # every decimal of this many digits survives float and back
 
@@ -244,7 +245,7 @@ def _read(value: object, name: str, kind: Kind) -> tuple[float, str]:
             return _read_quantity(value, kind)
         if not _is_number(value):
             raise Wrong(f"write {kind.noun} as text such as '{kind.example}'")
-        raise Wrong(bare(_scalar(value, kind.noun), kind))
+        raise Wrong(bare(number_text(_scalar(value, kind.noun)), kind))
     except Wrong as wrong:
         raise QuantityError(f"{name}: got {show(value)}; {wrong}") from None
 
@@ -289,8 +290,6 @@ def _scalar(value: Any, noun: str) -> float:
 
 def _long(magnitude: object) -> bool:
     """Whether a magnitude uses more digits than survive a rounding to `_DIGITS`."""
-    if isinstance(magnitude, int):
-        return abs(magnitude) >= 1e15
     if isinstance(magnitude, SupportsFloat):
         number = float(magnitude)
         return bool(float(f"{number:.{_DIGITS}g}") != number)
@@ -303,7 +302,7 @@ def _plain(value: object, name: str, example: str, factors: Mapping[str, str]) -
         if isinstance(value, str):
             match = TEXT.fullmatch(cleaned(str(value)))
             if match is None or match[2] not in factors:
-                raise Wrong(f"write a number such as {example}")
+                raise Wrong(garbled(cleaned(str(value)), example, "a number such as " + example))
             number = Fraction(Decimal(match[1]))
             return rounded(number * Fraction(factors[match[2]]))
         if hasattr(value, "m_as"):

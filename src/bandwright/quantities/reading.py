@@ -11,7 +11,6 @@ from functools import lru_cache
 from typing import NamedTuple
 
 from ..errors import close_matches
-from .texts import number_text
 
 
 class Kind(NamedTuple):
@@ -87,8 +86,10 @@ _FREEZING = Fraction("273.15")
 _NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,4})?"
 TEXT = re.compile(rf"({_NUMBER})\s*(.*)", re.DOTALL)
 _TERM = re.compile(r"([A-Za-zÅμ°åö]+)(?:(?:\^|\*\*)?([+-]?[1-9]))?")
-_COMMA = re.compile(r"([+-]?[0-9]+),([0-9]+)\s*(\D.*)?", re.DOTALL)
-_UNDERSCORES = re.compile(r"([+-]?[0-9]+(?:_[0-9]+)+(?:\.[0-9]*)?)\s*(\D.*)?", re.DOTALL)
+_COMMA = re.compile(r"(?P<number>[+-]?[0-9]+,[0-9]+)\s*(?P<unit>\D.*)?", re.DOTALL)
+_UNDERSCORES = re.compile(
+    r"(?P<number>[+-]?[0-9]+(?:_[0-9]+)+(?:\.[0-9]*)?)\s*(?P<unit>\D.*)?", re.DOTALL
+)
 
 
 class Wrong(Exception):
@@ -101,10 +102,10 @@ def read_text(text: str, kind: Kind) -> tuple[float, str]:
     clean = cleaned(text)
     match = TEXT.fullmatch(clean)
     if match is None or not _is_unit_like(match[2]):
-        raise Wrong(_garbled(clean, kind))
+        raise Wrong(garbled(clean, kind.example, _due(kind)))
     number = Fraction(Decimal(match[1]))
     if not match[2]:
-        raise Wrong(bare(float(number), kind, match[1]))
+        raise Wrong(bare(match[1], kind))
     dimension, factor = _unit(match[2], kind)
     if dimension == "celsius" and kind is TEMPERATURE:
         return rounded(number + _FREEZING), "temperature"
@@ -134,10 +135,10 @@ def _unit(text: str, kind: Kind) -> tuple[str, Fraction]:
         part = part.strip()
         if part == "1" and sign == 1:
             continue
-        for term in re.split(r"\s*[*·]\s*(?!\*)|\s+", part) if part else ():
+        for term in re.split(r"\s*(?<!\*)[*·](?!\*)\s*|\s+", part) if part else ():
             match = _TERM.fullmatch(term)
             if match is None:
-                raise Wrong(_garbled(text, kind))
+                raise Wrong(f"write {_due(kind)}")
             if match[1] not in _UNITS:
                 raise Wrong(f"unit '{match[1]}' is not known{_similar(match[1], kind)}")
             dimension, size = _UNITS[match[1]]
@@ -154,7 +155,9 @@ def _similar(symbol: str, kind: Kind) -> str:
     bases = {base for dimension in kind.dimensions for base in re.findall("[a-z]+", dimension)}
     names = [name for name, (dimension, _) in _FACTORS.items() if dimension in bases]
     same = [name for name in names if name.lower() == symbol.lower()]
-    return close_matches(symbol, same or names)
+    if same:
+        return f"; did you mean {' or '.join(map(repr, same))}?"
+    return close_matches(symbol, names)
 
 
 def _power(dimension: str, power: int) -> str:
@@ -196,23 +199,28 @@ def _noun(dimension: str) -> str:
     return other.get(dimension, f"a quantity of kind {dimension}")
 
 
-def bare(number: float, kind: Kind, written: str | None = None) -> str:
+def bare(number: str, kind: Kind) -> str:
     """Return how to mend a number without a unit."""
-    unit = kind.example.split(" ", 1)[1]
-    return f"write '{written or number_text(number)} {unit}'"
+    return f"write '{number} {kind.example.partition(' ')[2]}'"
 
 
-def _garbled(text: str, kind: Kind) -> str:
-    """Return how to mend a text that is not one number and one unit."""
+def _due(kind: Kind) -> str:
+    return f"one number and one unit such as '{kind.example}'"
+
+
+def garbled(text: str, example: str, due: str) -> str:
+    """Return how to mend a text that is not one number and one unit; ``due`` is what is."""
     comma, underscores = _COMMA.fullmatch(text), _UNDERSCORES.fullmatch(text)
-    if comma and len(comma[2]) == 3:
-        unit = (comma[3] or kind.example.split(" ", 1)[1]).strip()
-        point, none = f"'{comma[1]}.{comma[2]} {unit}'", f"'{comma[1]}{comma[2]} {unit}'"
-        return f"a comma may mean two things: write {point} or {none}"
-    if comma:
-        unit = (comma[3] or kind.example.split(" ", 1)[1]).strip()
-        return f"use a decimal point, no comma: write '{comma[1]}.{comma[2]} {unit}'"
+    match = comma or underscores
+    if match is None:
+        return f"write {due}"
+    unit = match["unit"] or example.partition(" ")[2]
+
+    def fix(between: str) -> str:
+        return "'" + f"{re.sub('[,_]', between, match['number'])} {unit}".strip() + "'"
+
     if underscores:
-        unit = (underscores[2] or kind.example.split(" ", 1)[1]).strip()
-        return f"write '{underscores[1].replace('_', '')} {unit}'"
-    return f"write one number and one unit such as '{kind.example}'"
+        return f"write {fix('')}"
+    if len(match["number"].partition(",")[2]) == 3:
+        return f"a comma may mean two things: write {fix('.')} or {fix('')}"
+    return f"use a decimal point, no comma: write {fix('.')}"
