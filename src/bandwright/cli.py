@@ -149,11 +149,12 @@ def build() -> tuple[Parser, dict[str, Parser]]:
         "--window", nargs=2, metavar=("FROM", "TO"), help="of wavelengths, '8 um' '12 um'"
     )
     group.add_argument("--strength", metavar="F", type=float, help="least oscillator strength")
+    group.add_argument("--of-box", action="store_true", help="those of the closed box as well")
     known = command(
         "materials", "[FORMULA ...]", "List the materials, or show formulas.", run_materials
     )
     known.add_argument("formulas", metavar="FORMULA", nargs="*", help="such as Al0.28Ga0.72As")
-    known.add_argument("--temperature", metavar="T", default="300 K", help="300 K if not given")
+    known.add_argument("--temperature", metavar="T", help="300 K if not given")
     known.add_argument("--substrate", metavar="FORMULA", help="what they are strained to")
     known.add_argument(
         "--materials", metavar="FILE", action="append", help="own material file; may be repeated"
@@ -239,14 +240,13 @@ def run_lines(args: argparse.Namespace) -> Answer:
     """Solve a stack and return its lines."""
     from .report import data, text
 
-    levels = _levels(args)
-    lines = levels.lines(window=args.window, strength=args.strength)
+    lines = _levels(args).lines(window=args.window, strength=args.strength, of_box=args.of_box)
     if args.format == "text":
-        return Answer(text.lines_text(levels, lines))
+        return Answer(text.lines_text(lines))
     beside = text.page(text.budget_text(lines), text.lines_notes(lines)).splitlines()
     if args.format == "csv":
         return Answer(data.csv_text(data.columns_of(lines.table)), beside)
-    return Answer(data.json_text(data.lines_object(levels, lines)), beside)
+    return Answer(data.json_text(data.lines_object(lines)), beside)
 
 
 def run_compare(args: argparse.Namespace) -> Answer:
@@ -267,16 +267,18 @@ def run_materials(args: argparse.Namespace) -> Answer:
     """List the materials, or show what is known about some formulas."""
     from .report import data, known, text
 
-    columns, cautions = known.known(
-        args.formulas, args.temperature, args.substrate, args.materials or ()
-    )
+    found = known.known(args.formulas, args.temperature, args.substrate, args.materials or ())
     if args.format == "text":
-        return Answer(text.materials_text(columns, cautions))
-    beside = text.cautions_text(cautions)
+        return Answer(text.materials_text(found))
+    beside = text.cautions_text(found.cautions)
     if args.format == "csv":
-        return Answer(data.csv_text(columns), beside)
-    found = {"materials": data.rows_of(columns), "cautions": list(cautions)}
-    return Answer(data.json_text(found), beside)
+        return Answer(data.csv_text(found.columns), beside)
+    whole = {
+        "materials": data.rows_of(found.columns),
+        "facts": data.rows_of(found.facts),
+        "cautions": list(found.cautions),
+    }
+    return Answer(data.json_text(whole), beside)
 
 
 # -- the way out ----------------------------------------------------------------------------

@@ -95,13 +95,15 @@ def levels_object(levels: Levels) -> dict[str, Any]:
     }
 
 
-def lines_object(levels: Levels, lines: Lines) -> dict[str, Any]:
-    """Return lines, the error budget of the strongest and the safety line as one JSON object."""
-    budget = columns_of(lines.error_budget()) if len(lines.table) else {}
+def lines_object(lines: Lines) -> dict[str, Any]:
+    """Return lines, the error budget of the main one and the safety line as one JSON object."""
+    line = lines.main
+    budget = {} if line is None else columns_of(lines.error_budget(line))
     return {
-        **solved_object(levels),
+        **solved_object(lines.levels),
         "lines": rows_of(columns_of(lines.table)),
         "error_budget": rows_of(budget),
+        "error_budget_of": None if line is None else line.name,
         "cautions": list(lines.cautions),
         "safety": SAFETY,
     }

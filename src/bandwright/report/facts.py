@@ -38,9 +38,16 @@ def grown(stack: Stack) -> str:
         )
 
 
-def strain(stack: Stack) -> str:
-    """Return what the layers are strained to."""
-    return f"strained to {stack.substrate}" if stack.substrate else "unstrained, no substrate named"
+def held_at(temperature: float, substrate: str | None) -> str:
+    """Return the temperature [K] and what the layers are strained to.
+
+    Examples
+    --------
+    >>> held_at(77.0, "GaAs"), held_at(300.0, None)
+    ('77 K, strained to GaAs', '300 K, unstrained (no substrate named)')
+    """
+    state = f"strained to {substrate}" if substrate else "unstrained (no substrate named)"
+    return f"{temperature_text(temperature)}, {state}"
 
 
 def ends(first: str, last: str) -> str:
@@ -78,7 +85,7 @@ def facts(levels: Levels) -> list[Fact]:
         ("electrons", direction(levels)),
         ("stack", stack.name or "without a name"),
         ("grown", grown(stack)),
-        ("held at", f"{temperature_text(stack.temperature)}, {strain(stack)}"),
+        ("held at", held_at(stack.temperature, stack.substrate)),
         ("model", profile.bands),
         ("energies", f"from {profile.zero}"),
         ("ends", ends(*profile.ends)),

@@ -8,8 +8,9 @@ from textwrap import wrap
 from typing import TYPE_CHECKING
 
 from .data import Columns, columns_of
-from .facts import SAFETY, Fact, facts, grown
+from .facts import SAFETY, Fact, facts, grown, held_at
 from .grid import DIGITS, grid
+from .known import COMMON_SCALE, Known
 
 if TYPE_CHECKING:
     from ..levels import Levels
@@ -95,18 +96,18 @@ def levels_text(levels: Levels) -> str:
 
 
 def budget_text(lines: Lines) -> list[str]:
-    """Return the error budget of the strongest line, with its name above."""
-    if not len(lines.table):
+    """Return the error budget of the main line, with its name above."""
+    line = lines.main
+    if line is None:
         return []
-    upper, lower = lines.strongest
-    head = f"what moves the strongest line, {upper} to {lower}:"
-    return [head, "", *grid(columns_of(lines.error_budget()))]
+    head = f"what moves {line.name}, {line.wavelength_um:.4f} um:"
+    return [head, *grid(columns_of(lines.error_budget(line)))]
 
 
-def lines_text(levels: Levels, lines: Lines) -> str:
-    """Return the lines, beside the strongest its error budget, cautions and the safety line."""
+def lines_text(lines: Lines) -> str:
+    """Return the lines, beside the main one its error budget, cautions and the safety line."""
     table = grid(columns_of(lines.table)) if len(lines.table) else ["no line"]
-    return page(sheet(facts(levels)), table, budget_text(lines), lines_notes(lines))
+    return page(sheet(facts(lines.levels)), table, budget_text(lines), lines_notes(lines))
 
 
 def lines_notes(lines: Lines) -> list[str]:
@@ -120,6 +121,16 @@ def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
     return page(legend, grid(columns))
 
 
-def materials_text(columns: Columns, cautions: Sequence[str]) -> str:
-    """Return materials, one row each."""
-    return page(grid(columns), cautions_text(cautions))
+def materials_text(found: Known) -> str:
+    """Return materials, one row each, and below them what their numbers rest on."""
+    columns = dict(found.columns)
+    if not found.facts:
+        return page(grid(columns), cautions_text(found.cautions))
+    kelvin, substrate = columns.pop("temperature_K")[0], columns.pop("substrate")[0]
+    head = sheet([("held at", held_at(kelvin, substrate))])
+    behind = dict(found.facts)
+    sources = list(dict.fromkeys(behind.pop("source")))
+    behind["source"] = [f"[{sources.index(text) + 1}]" for text in found.facts["source"]]
+    listed = sheet((f"[{n}]", text) for n, text in enumerate(sources, 1))
+    notes = sheet([("note", COMMON_SCALE)]) + cautions_text(found.cautions)
+    return page(head, grid(columns), notes, ["what this rests on:", *grid(behind)], listed)
