@@ -1,0 +1,73 @@
+"""What a reader of levels should know: one sentence each, naming the layer or level and a mend.
+
+`collect` gathers them for `Levels.cautions`; `warn` gives those that cost nothing to know as
+`BandwrightWarning`. Limits that cite nothing are common practice.
+"""
+
+from __future__ import annotations
+
+import warnings
+
+from ..errors import BandwrightWarning
+from ..levels import Levels
+from .layers import charges, directions, materials, thicknesses
+from .states import boxes, clusters, counts, phases, tops, two_band
+from .strained import critical_thickness, strains
+
+__all__ = ["at_once", "collect", "critical_thickness", "warn"]
+
+
+def at_once(levels: Levels) -> tuple[str, ...]:
+    """Return the cautions that need no state and no phase integral, the gravest first.
+
+    Parameters
+    ----------
+    levels : Levels
+    """
+    return (
+        *counts(levels),
+        *thicknesses(levels),
+        *materials(levels),
+        *strains(levels),
+        *charges(levels),
+        *directions(levels),
+    )
+
+
+def collect(levels: Levels) -> tuple[str, ...]:
+    """Return every caution about these levels.
+
+    Parameters
+    ----------
+    levels : Levels
+
+    Examples
+    --------
+    >>> import bandwright as bw
+    >>> levels = bw.solve(bw.parse_line(
+    ...     "20 nm {edge 250 meV, mass 0.092}, 1200 nm {edge 0 meV, mass 0.067},"
+    ...     " 20 nm {edge 250 meV, mass 0.092}"), at_most=2)
+    >>> print(collect(levels)[0])
+    layer 2 is 1200 nm thick, over 1 um: is the unit right? 120 nm would be as many Angstrom
+    """
+    return (
+        *at_once(levels),
+        *boxes(levels),
+        *clusters(levels),
+        *tops(levels),
+        *phases(levels),
+        *two_band(levels),
+    )
+
+
+def warn(levels: Levels, stacklevel: int = 2) -> None:
+    """Give the cautions of `at_once` as Python warnings.
+
+    Parameters
+    ----------
+    levels : Levels
+    stacklevel : int
+        As for `warnings.warn`; 2 is the caller's line.
+    """
+    for text in at_once(levels):
+        warnings.warn(text, BandwrightWarning, stacklevel=stacklevel + 1)

@@ -1,0 +1,68 @@
+"""Cautions about single layers: thickness, material data, doping; and the field's direction."""
+
+from __future__ import annotations
+
+from ..levels import Levels
+from ..quantities import number_text
+from .words import listed
+
+#: thinner [nm] or thicker [nm] layers look like a slip of the unit
+THIN, THICK = 0.1, 1000.0
+
+
+def thicknesses(levels: Levels) -> list[str]:
+    """Return layers whose thickness looks like a slip."""
+    texts = []
+    for fact in levels.profile.facts:
+        length = f"{number_text(round(fact.thickness, 6))} nm"
+        if fact.thickness > THICK:
+            texts.append(
+                f"{fact.name} is {length} thick, over 1 um: is the unit right?"
+                f" {number_text(round(fact.thickness / 10, 6))} nm would be as many Angstrom"
+            )
+        elif fact.thickness < THIN:
+            texts.append(
+                f"{fact.name} is {length} thick, thinner than any layer of atoms: is the unit"
+                " right?"
+            )
+        elif fact.thickness < fact.monolayer * (1.0 - 1e-6):
+            texts.append(
+                f"{fact.name} is {length} thick, less than one monolayer"
+                f" ({fact.monolayer:.4f} nm): it can't be a layer of its own; write it in ML, or as"
+                " an alloy"
+            )
+    return texts
+
+
+def materials(levels: Levels) -> list[str]:
+    """Return what the material data say about their use here, layers named."""
+    said: dict[str, list[str]] = {}
+    for fact in levels.profile.facts:
+        for text in fact.cautions:
+            said.setdefault(text, []).append(fact.name)
+    return [f"{listed(names)}: {text}" for text, names in said.items()]
+
+
+def charges(levels: Levels) -> list[str]:
+    """Return that doping has no effect yet."""
+    written = levels.stack.written()
+    doped = [w.name for w in written if w.layer.donors or w.layer.acceptors]
+    if not doped:
+        return []
+    return [
+        f"charge not included: the doping of {listed(doped)} is kept and bends no band; dope"
+        " lightly, or expect shifts of some meV from 1e11 / cm^2 on"
+    ]
+
+
+def directions(levels: Levels) -> list[str]:
+    """Return which way electrons run where only a sign says it."""
+    stack, field = levels.stack, levels.profile.field
+    if field == 0.0 or stack.electrons_run is not None:
+        return []
+    given = "field" if stack.bias is None else "bias"
+    way, other = ("substrate", "surface") if field > 0.0 else ("surface", "substrate")
+    return [
+        f"the sign of the {given} makes electrons run to the {way}; write electrons_run ="
+        f" 'to {way}' to say so, or 'to {other}' if it is the other way round"
+    ]
