@@ -386,6 +386,7 @@ def test_quantities_out():
         (q.length_text(q.Length(22.0, "ML")), "22 ML"),
         (q.length_text(1e-7), "1e-7 nm"),
         (q.length_text(12_300_000.0), "1.23e7 nm"),
+        (q.length_text(123_456_789.0), "123456789 nm"),
         (q.energy_text(0.235), "235 meV"),
         (q.energy_text(-0.02), "-20 meV"),
         (q.energy_text(1.79), "1.79 eV"),

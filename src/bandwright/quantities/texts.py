@@ -117,13 +117,15 @@ def number_text(value: float, power: int = 0) -> str:
     number = Decimal(repr(float(value) + 0.0)).scaleb(power).normalize()
     if number.is_zero():
         return "0"
-    if -5 <= number.adjusted() < 7:
-        return f"{number:f}"
     _sign, digits, exponent = number.as_tuple()
     assert isinstance(exponent, int)
     text = "".join(map(str, digits))
     mantissa = text if len(text) == 1 else f"{text[0]}.{text[1:]}"
-    return f"{'-' if number < 0 else ''}{mantissa}e{exponent + len(text) - 1}"
+    short = f"{'-' if number < 0 else ''}{mantissa}e{exponent + len(text) - 1}"
+    if -5 <= number.adjusted() < 7:
+        return f"{number:f}"
+    plain = f"{number:f}" if abs(number.adjusted()) < 20 else ""
+    return plain if 0 < len(plain) <= len(short) else short
 
 
 def quantity(value: Any, unit: str) -> pint.Quantity[Any]:
