@@ -168,6 +168,15 @@ def parse(formula: str, **fractions: Value) -> Composition:
     >>> parse("AlxGa1-xAs", x=0.9).cations
     (('Al', 0.9), ('Ga', 0.1))
     """
+    return _composition(formula, fractions) if fractions else _literal(formula)
+
+
+@lru_cache(maxsize=4096)
+def _literal(formula: str) -> Composition:
+    return _composition(formula, {})
+
+
+def _composition(formula: str, fractions: dict[str, Value]) -> Composition:
     parts = _parts(formula)
     _check_letters(formula, parts, fractions)
     values = [(part.element, part.value(fractions)) for part in parts]
@@ -296,7 +305,8 @@ def _sites(formula: str, named: tuple[str, ...]) -> tuple[tuple[str, ...], tuple
 
 def _check_sum(formula: str, site: Sublattice, parts: tuple[_Part, ...]) -> None:
     """Refuse fractions that do not add up to 1, and say what would."""
-    total = sum((np.asarray(f, dtype=float) for _, f in site), np.asarray(0.0))
+    with np.errstate(invalid="ignore"):  # infinite fractions are refused below
+        total = sum((np.asarray(f, dtype=float) for _, f in site), np.asarray(0.0))
     wrong = np.abs(total - 1.0)
     if np.all(wrong <= _ROUNDING):
         return
@@ -312,7 +322,7 @@ def _check_sum(formula: str, site: Sublattice, parts: tuple[_Part, ...]) -> None
 def _would_be_right(formula: str, values: dict[str, float], parts: tuple[_Part, ...]) -> str:
     """Return formulas near the one written whose fractions on one sublattice add up to 1."""
     names = list(values)
-    if any(np.isnan(v) for v in values.values()):
+    if not all(np.isfinite(v) for v in values.values()):
         return "a fraction must be a number between 0 and 1"
     if len(values) == 1:
         return f"{names[0]} is alone on its sites: write it without a number"

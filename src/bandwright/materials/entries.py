@@ -202,6 +202,8 @@ def read_binary(reader: Reader, name: str, found: Any) -> Binary:
             numbers[quantity] = replace(number, value=sign * number.value)
         else:
             numbers[quantity] = reader.number(place, entry, QUANTITIES[quantity])
+    if "c11" in numbers and "c12" in numbers and numbers["c12"].value >= numbers["c11"].value:
+        raise reader.error(f"{key}.c12", "c12 is not below c11; are the two swapped?")
     if "mass" in numbers and numbers["mass"].at is None:
         raise reader.error(f"{key}.mass", 'needs the temperature it holds at, like at = "0 K"')
     return Binary(name, numbers, _route(reader, key, table), _flag(reader, key, table))

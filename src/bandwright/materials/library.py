@@ -76,6 +76,7 @@ class Library:
     def __init__(self, own: Iterable[Entries] = ()) -> None:
         self.catalogue = Catalogue(own)
         self._points: dict[object, BandPoint] = {}
+        self._lattices: dict[str, float] = {}
 
     @staticmethod
     def shipped() -> Library:
@@ -215,10 +216,12 @@ class Library:
         return Mix(composition, self.catalogue)
 
     def _substrate_lattice(self, substrate: str) -> float:
-        try:
-            return self.lattice(substrate)
-        except BandwrightError as error:
-            raise error.at("substrate") from None
+        if substrate not in self._lattices:
+            try:
+                self._lattices[substrate] = self.lattice(substrate)
+            except BandwrightError as error:
+                raise error.at("substrate") from None
+        return self._lattices[substrate]
 
     def _point(self, composition: Composition, t: float, substrate: str | None) -> BandPoint:
         if not (math.isfinite(t) and t >= 0.0):
@@ -252,7 +255,8 @@ class Library:
             mix.value(q, t) + (unstrained - gap) if mix.has(q) else None for q in ("gap_x", "gap_l")
         )
         sides = [(n, e) for n, e in (("X", x_edge), ("L", l_edge)) if e is not None]
-        direct, cautions = _direct(mix, unstrained, sides, bool(np.any(np.abs(exx) > 1e-6)))
+        strained = bool(np.any(np.abs(exx) > 1e-6))
+        direct, cautions = _direct(mix, unstrained, sides, strained)
         return BandPoint(
             unstrained + shift,
             mass,
@@ -264,7 +268,7 @@ class Library:
             direct,
             x_edge,
             l_edge,
-            (*cautions, *mix.out_of_range(t)),
+            (*cautions, *mix.cautions(t, strained)),
         )
 
     def _unstrained_edge(self, mix: Mix, t: float, seen: tuple[str, ...] = ()) -> Value:

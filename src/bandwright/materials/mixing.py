@@ -180,9 +180,15 @@ class Mix:
             )
         return answers.pop()
 
-    def out_of_range(self, temperature_K: float) -> Iterator[str]:
-        """Yield a caution for each law used outside the range its source gives."""
+    def cautions(self, temperature_K: float, strained: bool) -> Iterator[str]:
+        """Yield a caution for each law used outside the range its source gives, and the like."""
         for binary, _ in self.parts:
+            a_v = binary.numbers.get("a_v")
+            if strained and a_v is not None and a_v.value > 0.0:
+                yield (
+                    f"{binary.name}: a_v is {a_v.value:+g} eV in the convention (a_c + a_v) Tr, "
+                    "where nearly every compound is negative; look at its gap_shift"
+                )
             gap = binary.numbers.get("gap")
             if isinstance(gap, Fit) and gap.valid is not None:
                 low, high = gap.valid
