@@ -9,6 +9,8 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -132,6 +134,36 @@ class LayerFacts:
     cautions: tuple[str, ...] = ()
 
 
+def _value_and_slope(curve: Curve) -> tuple[float, float]:
+    if isinstance(curve, Polynomial):
+        c = curve.coefficients
+        return c[0], c[1] if len(c) > 1 else 0.0
+    return _first(curve), 0.0
+
+
+def _first(curve: Curve) -> float:
+    if isinstance(curve, Polynomial):
+        return curve.coefficients[0]
+    return float(curve.at(np.zeros(1))[0])
+
+
+class SectionNumbers(NamedTuple):
+    """All sections as arrays (n_sections,): what solvers need without asking each section.
+
+    ``edge`` (n_sections, 2) holds value and slope of flat and linear edges; ``mass`` and
+    ``inverse_gap`` are the first face's; ``lowest`` is the lowest edge; ``flat`` says constant,
+    ``curved`` neither constant nor linear.
+    """
+
+    thickness: Floats
+    edge: Floats
+    mass: Floats
+    inverse_gap: Floats
+    lowest: Floats
+    flat: npt.NDArray[np.bool_]
+    curved: npt.NDArray[np.bool_]
+
+
 @dataclass(frozen=True)
 class Profile:
     """Sections in growth order, the ends, and how a reader names the layers.
@@ -162,7 +194,26 @@ class Profile:
     facts: tuple[LayerFacts, ...] = ()
     written: tuple[int, ...] = ()
 
-    @property
+    @cached_property
+    def numbers(self) -> SectionNumbers:
+        """The sections as arrays."""
+        thickness, edge, mass, gap, curved = [], [], [], [], []
+        for section in self.sections:
+            thickness.append(section.thickness)
+            curved.append(not section.tilted)
+            edge.append(_value_and_slope(section.edge))
+            mass.append(_first(section.mass))
+            gap.append(_first(section.inverse_gap))
+        h, values = np.array(thickness), np.array(edge)
+        lowest = values[:, 0] + np.minimum(values[:, 1], 0.0) * h
+        bent = np.array(curved)
+        for index in np.flatnonzero(bent):
+            section = self.sections[index]
+            lowest[index] = section.edge.at(np.linspace(0.0, section.thickness, 65)).min()
+        flat = (values[:, 1] == 0.0) & ~bent
+        return SectionNumbers(h, values, np.array(mass), np.array(gap), lowest, flat, bent)
+
+    @cached_property
     def faces(self) -> Floats:
         """Positions of all section faces [nm], shape (n_sections + 1,), the first is 0."""
         return np.concatenate(([0.0], np.cumsum([s.thickness for s in self.sections])))

@@ -1,4 +1,9 @@
-"""One slice at one energy: the functions x cot x and x / sin x, and the Magnus exponent."""
+"""One slice at one energy: x cot x and x / sin x, the mass, and the Magnus exponent.
+
+A slice's propagator is the exponential of a traceless matrix [[x, a], [c, -x]], whose square is
+-t times the unit matrix. With f = sqrt(t) cot sqrt(t) and g = sqrt(t) / sin sqrt(t), its
+elements of K are A/B = (f + x)/a, D/B = (f - x)/a and 1/B = g/a; x = 0 in a constant slice.
+"""
 
 from __future__ import annotations
 
@@ -19,39 +24,47 @@ _SERIES_BELOW = 0.02
 MASS_FLOOR = 0.05
 
 
+class Exponent(NamedTuple):
+    """A traceless 2x2 matrix [[x, a], [c, -x]]: the exponent of a slice's propagator."""
+
+    x: Floats
+    a: Floats
+    c: Floats
+
+
 def half_wave_functions(t: Floats) -> tuple[Floats, Floats]:
     """Return ``x cot x`` and ``x / sin x`` at t = x^2, hyperbolic for t < 0; no overflow.
+
+    With y = sqrt|t|/2 and T = tan y or tanh y: (y/T)(1 - s T^2) and (y/T)(1 + s T^2), s = sign t.
 
     Parameters
     ----------
     t : array
         Squared phase of a slice [rad^2]; negative where the state decays.
     """
-    x = np.sqrt(np.abs(t))
-    half = 0.5 * x
-    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        tangent = np.tan(half)
-        ratio = half / tangent
-        square = tangent * tangent
-        shrink = np.expm1(-2.0 * x)
-        f = np.where(t > 0, ratio * (1.0 - square), -x * (2.0 + shrink) / shrink)
-        g = np.where(t > 0, ratio * (1.0 + square), -2.0 * x * np.exp(-x) / shrink)
-    small = x < 1e-4
-    if small.any():
-        f = np.where(small, 1.0 - t / 3.0, f)
-        g = np.where(small, 1.0 + t / 6.0, g)
-    return f, g
+    half = np.sqrt(np.abs(t))
+    half *= 0.5
+    np.maximum(half, 1e-9, out=half)
+    decays = t < 0.0
+    tangent = np.tanh(half, where=decays, out=np.empty_like(half))
+    np.tan(half, where=~decays, out=tangent)
+    ratio = half / tangent
+    square = np.where(decays, -tangent, tangent)
+    square *= tangent
+    square *= ratio
+    return ratio - square, ratio + square
 
 
 def half_wave_slopes(t: Floats, f: Floats, g: Floats) -> tuple[Floats, Floats]:
     """Return the derivatives of `half_wave_functions` with respect to t."""
     small = np.abs(t) < _SERIES_BELOW
-    safe = np.where(small, 1.0, t)
-    df = (f - g * g) / (2.0 * safe)
-    dg = g * (1.0 - f) / (2.0 * safe)
-    if small.any():
-        df = np.where(small, _series_slope(_F, t), df)
-        dg = np.where(small, _series_slope(_G, t), dg)
+    some = small.any()
+    twice = 2.0 * (np.where(small, 1.0, t) if some else t)
+    df = (f - g * g) / twice
+    dg = g * (1.0 - f) / twice
+    if some:
+        df[small] = _series_slope(_F, t[small])
+        dg[small] = _series_slope(_G, t[small])
     return df, dg
 
 
@@ -72,31 +85,37 @@ def local_mass(
     """
     bracket = 1.0 + (energy - edge) * inverse_gap
     free = bracket > MASS_FLOOR
+    if free.all():
+        return mass * bracket, np.broadcast_to(mass * inverse_gap, bracket.shape)
     return mass * np.where(free, bracket, MASS_FLOOR), mass * np.where(free, inverse_gap, 0.0)
 
 
-class Exponent(NamedTuple):
-    """A traceless 2x2 matrix [[x, a], [c, -x]]: the exponent of a slice's propagator."""
+def tilted(
+    thickness: Floats, above: Floats, drop: Floats, mass: Floats, inverse_gap: Floats
+) -> tuple[Exponent, Exponent]:
+    """Return the 6th-order Magnus exponent of linear slices and its derivative by E.
 
-    x: Floats
-    a: Floats
-    c: Floats
+    In closed form: with constant band-edge mass and gap everything is linear in z and in E, and the commutator
+    [A1, A2] is a constant: `magnus` in a few products. Only where the mass is off its floor.
 
-
-def _bracket(p: Exponent, q: Exponent) -> Exponent:
-    """Commutator of two traceless 2x2 matrices."""
-    return Exponent(
-        p.a * q.c - q.a * p.c, 2.0 * (p.x * q.a - p.a * q.x), 2.0 * (p.c * q.x - p.x * q.c)
-    )
-
-
-def _mix(*terms: tuple[float, Exponent]) -> Exponent:
-    """Return the weighted sum of exponents."""
-    weight, term = terms[0]
-    x, a, c = weight * term.x, weight * term.a, weight * term.c
-    for weight, term in terms[1:]:
-        x, a, c = x + weight * term.x, a + weight * term.a, c + weight * term.c
-    return Exponent(x, a, c)
+    Parameters
+    ----------
+    thickness, drop, mass, inverse_gap : array (n_slices, 1)
+        Thickness [nm], rise of the edge across the slice [eV], band-edge mass, 1/gap [1/eV].
+    above : array (n_slices, n_energies)
+        E - V at the slice's middle [eV].
+    """
+    da = thickness * mass * inverse_gap
+    a = thickness * mass + da * above
+    dc = -thickness / H2M
+    c = dc * above
+    twist = -dc * drop * thickness * mass
+    fall_a, fall_c = -da * drop, -dc * drop
+    x = (twist / -12.0) * (1.0 - a * c / 15.0)
+    small = twist / 120.0
+    bent = 1.0 + twist * twist / 3600.0
+    value = Exponent(x, bent * a + small * fall_a, bent * c - small * fall_c)
+    return value, Exponent((twist / 180.0) * (da * c + a * dc), bent * da, bent * dc)
 
 
 def magnus(
@@ -136,13 +155,26 @@ def magnus(
     inner, d_inner = _mix((2, three), (1, first)), _mix((2, d_three), (1, d_first))
     second = _bracket(one, inner)
     d_second = _mix((1, _bracket(d_one, inner)), (1, _bracket(one, d_inner)))
-    p, d_p = (
-        _mix((-20, one), (-1, three), (1, first)),
-        _mix((-20, d_one), (-1, d_three), (1, d_first)),
-    )
-    q, d_q = _mix((1, two), (-1 / 60, second)), _mix((1, d_two), (-1 / 60, d_second))
+    p = _mix((-20, one), (-1, three), (1, first))
+    d_p = _mix((-20, d_one), (-1, d_three), (1, d_first))
+    q = _mix((1, two), (-1 / 60, second))
+    d_q = _mix((1, d_two), (-1 / 60, d_second))
     omega = _mix((1, one), (1 / 12, three), (1 / 240, _bracket(p, q)))
-    d_omega = _mix(
-        (1, d_one), (1 / 12, d_three), (1 / 240, _bracket(d_p, q)), (1 / 240, _bracket(p, d_q))
+    turn = _mix((1, _bracket(d_p, q)), (1, _bracket(p, d_q)))
+    return omega, _mix((1, d_one), (1 / 12, d_three), (1 / 240, turn))
+
+
+def _bracket(p: Exponent, q: Exponent) -> Exponent:
+    """Return the commutator of two traceless 2x2 matrices."""
+    return Exponent(
+        p.a * q.c - q.a * p.c, 2.0 * (p.x * q.a - p.a * q.x), 2.0 * (p.c * q.x - p.x * q.c)
     )
-    return omega, d_omega
+
+
+def _mix(*terms: tuple[float, Exponent]) -> Exponent:
+    """Return the weighted sum of exponents."""
+    weight, term = terms[0]
+    x, a, c = weight * term.x, weight * term.a, weight * term.c
+    for weight, term in terms[1:]:
+        x, a, c = x + weight * term.x, a + weight * term.a, c + weight * term.c
+    return Exponent(x, a, c)

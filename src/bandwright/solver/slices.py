@@ -7,50 +7,63 @@ for the 6th-order Magnus exponent.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from functools import cached_property
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
 from bandwright.constants import H2M
-from bandwright.profile import Profile, Section
+from bandwright.profile import Profile
 from bandwright.solver.matrix import Elements
 from bandwright.solver.propagation import (
+    MASS_FLOOR,
+    Exponent,
     half_wave_functions,
     half_wave_slopes,
     local_mass,
     magnus,
+    tilted,
 )
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
-_GAUSS = 0.5 + 0.5 * np.sqrt(0.6) * np.array([-1.0, 0.0, 1.0])
-#: largest phase of a slice [rad], at the highest energy; a pole would stand at pi
-PHASE_LIMIT = 2.0
-#: most slices one profile may take
-MOST_SLICES = 2_000_000
+_GAUSS = 0.5 * np.sqrt(0.6) * np.array([[-1.0], [0.0], [1.0]])
+#: repeated slices are evaluated once from this many slices on
+_MANY = 24
+
+
+class _Numbers(NamedTuple):
+    """Slices of one kind as columns: values at the middle, the edge's rise across each."""
+
+    thickness: Floats
+    edge: Floats
+    mass: Floats
+    inverse_gap: Floats
+    drop: Floats
 
 
 @dataclass(frozen=True)
 class Slices:
-    """Slices in growth order.
+    """Slices in growth order; all arrays (n_slices,) unless said otherwise.
 
     Attributes
     ----------
-    thickness : array (n_slices,)
-        [nm]
-    section : array (n_slices,)
-        Index of each slice's section.
-    start : array (n_slices,)
-        Depth of the slice's first face in its section [nm].
-    edge, mass, inverse_gap : array (3, n_slices)
-        Values at the three Gauss points.
-    varying : array of int
-        Which slices vary along z; the others are constant.
     counts : array (n_sections,)
         Slices a section.
+    section, start : array
+        Index of each slice's section, and the depth of its first face there [nm].
+    thickness : array
+        [nm]
+    edge, mass, inverse_gap : array
+        Values at the middle [eV, m0, 1/eV].
+    drop : array
+        Rise of the edge across the slice [eV].
+    flat, curved : bool or array of bool
+        Whether a slice is constant, or neither constant nor linear.
     """
 
     profile: Profile
@@ -61,10 +74,14 @@ class Slices:
     edge: Floats
     mass: Floats
     inverse_gap: Floats
-    varying: Indices
-    constant: Indices
+    drop: Floats
+    flat: npt.NDArray[np.bool_]
+    curved: npt.NDArray[np.bool_]
 
-    @property
+    def __len__(self) -> int:
+        return len(self.thickness)
+
+    @cached_property
     def faces(self) -> Floats:
         """Positions of all slice faces [nm], shape (n_slices + 1,)."""
         return np.asarray(np.concatenate(([0.0], np.cumsum(self.thickness))))
@@ -79,59 +96,166 @@ class Slices:
 
     def elements_and_slopes(self, energies: Floats) -> tuple[Elements, Elements]:
         """Return the elements and their exact derivatives by E."""
-        return self._elements(energies, slopes=True)
-
-    def _elements(self, energies: Floats, slopes: bool) -> tuple[Elements, Elements]:
-        energies = np.asarray(energies, dtype=float)
-        shape = (len(self.thickness), len(energies))
-        value, slope = _blank(shape), _blank(shape)
-        for which, part in ((self.constant, _constant), (self.varying, _varying)):
-            if len(which):
-                for target, source in zip(
-                    (value, slope), part(self, which, energies, slopes), strict=False
-                ):
-                    for column, numbers in zip(target, source, strict=True):
-                        column[which] = numbers
+        value, slope = self._elements(energies, slopes=True)
         return value, slope
 
+    def _elements(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+        energies = np.asarray(energies, dtype=float)
+        parts = [(rows, kind(energies, slopes)) for rows, kind in self._kinds]
+        if len(parts) == 1:
+            rows, found = parts[0]
+            if rows is None:
+                return found
+            return tuple(Elements(*(column[rows] for column in one)) for one in found)
+        shape = (len(self), len(energies))
+        joined = tuple(
+            Elements(*(np.empty(shape, dtype=column.dtype) for column in one))
+            for one in parts[0][1]
+        )
+        for rows, found in parts:
+            for target, source in zip(joined, found, strict=True):
+                for column, numbers in zip(target, source, strict=True):
+                    column[rows] = numbers
+        return joined
 
-def _blank(shape: tuple[int, int]) -> Elements:
-    return Elements(
-        np.empty(shape), np.empty(shape), np.empty(shape), np.zeros(shape, dtype=np.int64)
-    )
+    @cached_property
+    def _kinds(self) -> tuple[tuple[Indices | None, _Constant | _Tilted | _Curved], ...]:
+        """Evaluators of constant, linear and curved slices with their rows; None is every row."""
+        straight = ~self.curved & ~self.flat
+        if self.flat.all():
+            first, back = self._distinct()
+            return ((back, _Constant(self._columns(first))),)
+        kinds: list[tuple[Indices | None, _Constant | _Tilted | _Curved]] = []
+        for mask, kind in ((self.flat, _Constant), (straight, _Tilted)):
+            if mask.any():
+                rows = np.flatnonzero(mask)
+                kinds.append((rows, kind(self._columns(rows))))
+        if self.curved.any():
+            rows = np.flatnonzero(self.curved)
+            kinds.append((rows, _Curved(self.thickness[rows, None], *self._gauss(rows))))
+        return tuple(kinds)
+
+    def _columns(self, rows: Indices | slice) -> _Numbers:
+        return _Numbers(
+            *(v[rows, None] for v in (self.thickness, self.edge, self.mass, self.inverse_gap,
+                                      self.drop))
+        )  # fmt: skip
+
+    def _distinct(self) -> tuple[Indices | slice, Indices | None]:
+        """Return one row of each kind of equal flat slices, and where every slice finds its own."""
+        if len(self) < _MANY:
+            return slice(None), None
+        seen: dict[tuple[float, ...], int] = {}
+        keys = zip(
+            self.thickness.tolist(), self.edge.tolist(), self.mass.tolist(),
+            self.inverse_gap.tolist(), strict=True,
+        )  # fmt: skip
+        back = np.array([seen.setdefault(key, len(seen)) for key in keys])
+        if 2 * len(seen) > len(self):
+            return slice(None), None
+        first = np.empty(len(seen), dtype=np.int64)
+        first[back[::-1]] = np.arange(len(self))[::-1]
+        return first, back
+
+    def _gauss(self, rows: Indices) -> tuple[Floats, Floats, Floats]:
+        """Edge, mass and inverse gap at the three Gauss points, each (3, n_rows, 1)."""
+        shape = (3, len(rows))
+        found = (np.empty(shape), np.empty(shape), np.empty(shape))
+        thickness = self.thickness[rows]
+        depth = self.start[rows] + 0.5 * thickness + _GAUSS * thickness
+        for index, here in _runs(self.section[rows]):
+            section = self.profile.sections[index]
+            for target, curve in zip(
+                found, (section.edge, section.mass, section.inverse_gap), strict=True
+            ):
+                target[:, here] = curve.at(depth[:, here])
+        edge, mass, inverse_gap = (values[:, :, None] for values in found)
+        return edge, mass, inverse_gap
 
 
-def _constant(
-    slices: Slices, which: Indices, energies: Floats, slopes: bool
-) -> tuple[Elements, ...]:
-    edge = slices.edge[1, which, None]
-    h = slices.thickness[which, None]
-    mass, b = local_mass(
-        energies, edge, slices.mass[1, which, None], slices.inverse_gap[1, which, None]
-    )
-    above = energies - edge
-    t = (h * h / H2M) * mass * above
-    f, g = half_wave_functions(t)
-    a = h * mass
-    side, off = f / a, g / a
-    value = Elements(side, side, off, _half_waves(t))
-    if not slopes:
-        return (value,)
-    df, dg = half_wave_slopes(t, f, g)
-    dt = (h * h / H2M) * (b * above + mass)
-    da = h * b
-    d_side = (df * dt - side * da) / a
-    return value, Elements(d_side, d_side, (dg * dt - off * da) / a, value.clamped)
+class _Constant:
+    """Elements of constant slices."""
+
+    def __init__(self, numbers: _Numbers) -> None:
+        self.numbers = numbers
+        h, _, mass, inverse_gap, _ = numbers
+        self.two_band = bool(inverse_gap.any())
+        self.square = h * h / H2M
+        self.one_band_rate = self.square * mass
+        self.one_band_a = h * mass
+
+    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+        h, edge, mass, inverse_gap, _ = self.numbers
+        above = energies - edge
+        if self.two_band:
+            local, b = local_mass(energies, edge, mass, inverse_gap)
+            a, da = h * local, h * b
+            t = (self.square * local) * above
+            dt = self.square * (b * above + local) if slopes else t
+        else:
+            a, da, dt = self.one_band_a, None, self.one_band_rate
+            t = dt * above
+        f, g = half_wave_functions(t)
+        side, off = f / a, g / a
+        value = Elements(side, side, off, _half_waves(t))
+        if not slopes:
+            return (value,)
+        df, dg = half_wave_slopes(t, f, g)
+        d_side, d_off = df * dt, dg * dt
+        if da is not None:
+            d_side -= side * da
+            d_off -= off * da
+        d_side /= a
+        return value, Elements(d_side, d_side, d_off / a, value.clamped)
 
 
-def _varying(
-    slices: Slices, which: Indices, energies: Floats, slopes: bool
-) -> tuple[Elements, ...]:
-    edge = slices.edge[:, which, None]
-    mass, b = local_mass(
-        energies, edge, slices.mass[:, which, None], slices.inverse_gap[:, which, None]
-    )
-    omega, d_omega = magnus(slices.thickness[which, None], energies, edge, mass, b)
+class _Tilted:
+    """Elements of slices with a linear edge, constant mass and gap."""
+
+    def __init__(self, numbers: _Numbers) -> None:
+        self.numbers = numbers
+
+    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+        h, edge, mass, inverse_gap, drop = self.numbers
+        above = energies - edge
+        omega, d_omega = tilted(h, above, drop, mass, inverse_gap)
+        bracket = 1.0 + (above - 0.5 * np.abs(drop)) * inverse_gap
+        if bracket.min() < MASS_FLOOR:
+            rows = np.flatnonzero(bracket.min(axis=1) < MASS_FLOOR)
+            omega, d_omega = self._floored(rows, energies, omega, d_omega)
+        return _exponential(omega, d_omega, slopes)
+
+    def _floored(
+        self, rows: Indices, energies: Floats, omega: Exponent, d_omega: Exponent
+    ) -> tuple[Exponent, Exponent]:
+        """Take the exponents of rows whose mass reaches its floor from their Gauss points."""
+        h, edge, mass, inverse_gap, drop = (column[rows] for column in self.numbers)
+        at = edge + _GAUSS[:, :, None] * drop
+        local, b = local_mass(energies, at, mass, inverse_gap)
+        shape = (len(omega.a), len(energies))
+        whole = [
+            Exponent(*(np.array(np.broadcast_to(column, shape)) for column in one))
+            for one in (omega, d_omega)
+        ]
+        for target, source in zip(whole, magnus(h, energies, at, local, b), strict=True):
+            for column, numbers in zip(target, source, strict=True):
+                column[rows] = numbers
+        return whole[0], whole[1]
+
+
+class _Curved:
+    """Elements of slices on which edge, mass or gap vary in any smooth way."""
+
+    def __init__(self, thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats) -> None:
+        self.thickness, self.edge, self.mass, self.inverse_gap = thickness, edge, mass, inverse_gap
+
+    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+        local, b = local_mass(energies, self.edge, self.mass, self.inverse_gap)
+        return _exponential(*magnus(self.thickness, energies, self.edge, local, b), slopes)
+
+
+def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> tuple[Elements, ...]:
+    """Return the elements of the propagators exp(omega), and their derivatives."""
     x, a, c = omega
     t = -(x * x + a * c)
     f, g = half_wave_functions(t)
@@ -142,90 +266,62 @@ def _varying(
     dx, da, dc = d_omega
     df, dg = half_wave_slopes(t, f, g)
     dt = -(2.0 * x * dx + a * dc + da * c)
-    d_left, d_right = (df * dt + dx - left * da) / a, (df * dt - dx - right * da) / a
-    return value, Elements(d_left, d_right, (dg * dt - off * da) / a, value.clamped)
+    df *= dt
+    dg *= dt
+    return value, Elements(
+        (df + dx - left * da) / a, (df - dx - right * da) / a, (dg - off * da) / a, value.clamped
+    )
 
 
 def _half_waves(t: Floats) -> Indices:
+    if t.max(initial=0.0) < np.pi**2:
+        return np.broadcast_to(np.int64(0), t.shape)
     return np.asarray(np.sqrt(np.maximum(t, 0.0)) // np.pi, dtype=np.int64)
+
+
+def _runs(section: Indices) -> Iterator[tuple[int, slice]]:
+    """Yield each section of sorted slices with the range they take."""
+    if not len(section):
+        return
+    starts = np.flatnonzero(np.diff(section, prepend=-1))
+    stops = np.append(starts[1:], len(section))
+    for start, stop in zip(starts.tolist(), stops.tolist(), strict=True):
+        yield int(section[start]), slice(start, stop)
 
 
 def cut(profile: Profile, counts: Sequence[int] | Indices) -> Slices:
     """Cut each section of a profile into that many equal slices."""
     counts = np.asarray(counts, dtype=np.int64)
+    whole = profile.numbers.thickness / counts
+    if len(counts) == counts.sum():
+        section = np.arange(len(counts))
+        return slice_at(profile, counts, section, np.zeros(len(counts)), whole)
     section = np.repeat(np.arange(len(counts)), counts)
     within = np.arange(len(section)) - np.repeat(np.cumsum(counts) - counts, counts)
-    whole = np.array([s.thickness for s in profile.sections])
-    thickness = (whole / counts)[section]
-    start = within * thickness
-    return slice_at(profile, counts, section, start, thickness)
+    thickness = whole[section]
+    return slice_at(profile, counts, section, within * thickness, thickness)
 
 
 def slice_at(
     profile: Profile, counts: Indices, section: Indices, start: Floats, thickness: Floats
 ) -> Slices:
-    """Return slices at given places of given sections, sampled at their Gauss points."""
-    shape = (3, len(section))
-    edge, mass, inverse_gap = np.empty(shape), np.empty(shape), np.empty(shape)
-    depth = start + _GAUSS[:, None] * thickness
-    bounds = np.searchsorted(section, np.arange(len(profile.sections) + 1))
-    flat = np.array([s.flat for s in profile.sections])
-    for index, part in enumerate(profile.sections):
-        here = slice(bounds[index], bounds[index + 1])
-        if flat[index]:
-            edge[:, here] = _first(part.edge)
-            mass[:, here] = _first(part.mass)
-            inverse_gap[:, here] = _first(part.inverse_gap)
-        elif bounds[index] < bounds[index + 1]:
-            edge[:, here] = part.edge.at(depth[:, here])
-            mass[:, here] = part.mass.at(depth[:, here])
-            inverse_gap[:, here] = part.inverse_gap.at(depth[:, here])
-    varying = ~flat[section]
+    """Return slices at given places of given sections, in ascending order of section."""
+    numbers = profile.numbers
+    flat, curved = numbers.flat[section], numbers.curved[section]
+    edge = numbers.edge[section, 0]
+    mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]
+    drop = numbers.edge[section, 1] * thickness
+    if not flat.all():
+        middle = start + 0.5 * thickness
+        edge = edge + numbers.edge[section, 1] * middle
+        rows = np.flatnonzero(curved)
+        for index, here in _runs(section[rows]):
+            some, part = rows[here], profile.sections[index]
+            edge[some] = part.edge.at(middle[some])
+            mass[some] = part.mass.at(middle[some])
+            inverse_gap[some] = part.inverse_gap.at(middle[some])
+            step = part.edge.at(start[some] + thickness[some]) - part.edge.at(start[some])
+            drop[some] = step
     return Slices(
-        profile, counts, section, start, thickness, edge, mass, inverse_gap,
-        np.flatnonzero(varying), np.flatnonzero(~varying),
-    )  # fmt: skip
-
-
-def _first(curve: object) -> float:
-    return curve.coefficients[0]  # type: ignore[attr-defined,no-any-return]
-
-
-def needed(profile: Profile, high: float, tolerance: float) -> Indices:
-    """Return how many slices each section needs for levels up to ``high`` [eV].
-
-    With k3 = (m F / h2m)^(1/3) of the steepest place, k4 likewise of the curvature, and the
-    largest wave number k: steps of a fixed share of 1/k3, 1/k4, 1/k; the share falls with the
-    sixth root of the tolerance.
-    """
-    share = (max(tolerance, 1e-13) / 1e-6) ** (1 / 6)
-    counts = np.array([_section_need(s, high, share) for s in profile.sections])
-    if len(counts) == 1:  # a face between two walls, so that K has a row
-        counts = np.maximum(counts, 2)
-    return counts
-
-
-def _section_need(section: Section, high: float, share: float) -> int:
-    if section.flat:
-        edge, mass, inverse_gap = (
-            np.array(_first(c)) for c in (section.edge, section.mass, section.inverse_gap)
-        )
-        local, _ = local_mass(np.array(high), edge, mass, inverse_gap)
-        phase = section.thickness * np.sqrt(np.maximum(local * (high - edge), 0.0) / H2M)
-        return max(1, int(np.ceil(phase / PHASE_LIMIT)))
-    points = np.linspace(0.0, section.thickness, 33)
-    step = points[1]
-    edge = section.edge.at(points)
-    mass, _ = local_mass(
-        np.array(high), edge, section.mass.at(points), section.inverse_gap.at(points)
+        profile, counts, section, start, thickness, edge, mass, inverse_gap, drop, flat, curved
     )
-    heavy = np.maximum(mass, section.mass.at(points))
-    steep = np.abs(np.gradient(edge, step))
-    bent = np.abs(np.gradient(np.gradient(edge, step), step))
-    drift = float(np.max(np.abs(np.gradient(np.log(mass), step))))
-    k3 = float(np.max(heavy * steep / H2M)) ** (1 / 3)
-    k4 = float(np.max(heavy * bent / H2M)) ** (1 / 4)
-    wave = float(np.max(np.sqrt(np.maximum(mass * (high - edge), 0.0) / H2M)))
-    rate = max(k3 / 0.36, k4 / 0.5, wave / 1.2, drift / 1.0) / share
-    rate = max(rate, wave / PHASE_LIMIT * 1.5)
-    return max(1, int(np.ceil(section.thickness * rate)))

@@ -11,7 +11,8 @@ import numpy.typing as npt
 from bandwright.errors import SolveError
 from bandwright.profile import Profile
 from bandwright.solver.find import Found, find
-from bandwright.solver.slices import MOST_SLICES, cut, needed
+from bandwright.solver.need import MOST_SLICES, needed
+from bandwright.solver.slices import cut
 from bandwright.solver.states import States
 from bandwright.solver.system import System, apply, chunks, solve_shifted
 

@@ -123,17 +123,10 @@ class States:
         index = np.clip(index, 0, len(slices.thickness) - 1)
         u, p = self._inside(z, index)
         section = slices.section[index]
-        sampled = slice_at(
-            slices.profile,
-            slices.counts,
-            section,
-            z - slices.profile.faces[section],
-            np.zeros_like(z),
-        )
-        _, b = local_mass(
-            self.energies[:, None], sampled.edge[1], sampled.mass[1], sampled.inverse_gap[1]
-        )
-        clamped = (b == 0.0) & (sampled.inverse_gap[1] > 0.0)
+        place = z - slices.profile.faces[section]
+        here = slice_at(slices.profile, slices.counts, section, place, np.zeros_like(z))
+        _, b = local_mass(self.energies[:, None], here.edge, here.mass, here.inverse_gap)
+        clamped = (b == 0.0) & (here.inverse_gap > 0.0)
         return _Quadrature(z, weight, section, u, np.sqrt(H2M * b) * p, clamped)
 
     def _tail_partner(self, tail: _Tail, row: int) -> Floats:
@@ -243,10 +236,10 @@ def _choose(
 def _cells(system: System, low: float, high: float) -> tuple[Floats, Floats]:
     """Return Gauss points and weights on cells in which no state turns or decays much."""
     slices = system.slices
-    edge = slices.edge
-    heavy = slices.mass * (1.0 + np.maximum(0.0, (high - edge) * slices.inverse_gap))
-    reach = np.maximum(np.abs(high - edge), np.abs(edge - low))
-    rate = np.sqrt(np.max(heavy * reach, axis=0) / H2M)
+    tilt = 0.5 * np.abs(slices.drop)
+    heavy = slices.mass * (1.0 + np.maximum(0.0, high - slices.edge + tilt) * slices.inverse_gap)
+    reach = np.maximum(np.abs(high - slices.edge), np.abs(slices.edge - low)) + tilt
+    rate = np.sqrt(heavy * reach / H2M)
     cells = np.maximum(1, np.ceil(slices.thickness * rate / _CELL)).astype(np.int64)
     width = np.repeat(slices.thickness / cells, cells)
     within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)

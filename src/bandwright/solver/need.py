@@ -1,0 +1,61 @@
+"""How many slices each section needs for an energy and a tolerance."""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+
+from bandwright.constants import H2M
+from bandwright.profile import Profile, Section
+from bandwright.solver.propagation import local_mass
+
+Floats = npt.NDArray[np.float64]
+Indices = npt.NDArray[np.int64]
+
+#: largest phase of a slice [rad], at the highest energy; a pole would stand at pi
+PHASE_LIMIT = 2.0
+#: most slices one profile may take
+MOST_SLICES = 2_000_000
+
+
+def needed(profile: Profile, high: float, tolerance: float) -> Indices:
+    """Return how many slices each section needs for levels up to ``high`` [eV].
+
+    With k3 = (m F / h2m)^(1/3) of the steepest place, k4 likewise of the curvature, and the
+    largest wave number k: steps of a fixed share of 1/k3, 1/k4, 1/k; the share falls with the
+    sixth root of the tolerance. Flat sections only keep each slice below `PHASE_LIMIT`.
+    """
+    numbers = profile.numbers
+    above = np.maximum(high - numbers.lowest, 0.0)
+    local = numbers.mass * (1.0 + above * numbers.inverse_gap)
+    wave = np.sqrt(local * above / H2M)
+    counts = np.ceil(wave * numbers.thickness / PHASE_LIMIT)
+    if not numbers.flat.all():
+        share = (max(tolerance, 1e-13) / 1e-6) ** (1 / 6)
+        steep = (numbers.mass * np.abs(numbers.edge[:, 1]) * (1.0 + above * numbers.inverse_gap)
+                 / H2M) ** (1 / 3)  # fmt: skip
+        rate = np.maximum(np.maximum(steep / 0.36, wave / 1.2) / share, 0.75 * wave)
+        counts = np.where(numbers.flat, counts, np.ceil(numbers.thickness * rate))
+        for index in np.flatnonzero(numbers.curved):
+            counts[index] = _curved_need(profile.sections[index], high, share)
+    if len(counts) == 1:  # a face between two walls, so that K has a row
+        counts = np.maximum(counts, 2)
+    return np.maximum(counts, 1).astype(np.int64)
+
+
+def _curved_need(section: Section, high: float, share: float) -> int:
+    points = np.linspace(0.0, section.thickness, 33)
+    step = points[1]
+    edge = section.edge.at(points)
+    mass, _ = local_mass(
+        np.array(high), edge, section.mass.at(points), section.inverse_gap.at(points)
+    )
+    heavy = np.maximum(mass, section.mass.at(points))
+    steep = np.abs(np.gradient(edge, step))
+    bent = np.abs(np.gradient(np.gradient(edge, step), step))
+    drift = float(np.max(np.abs(np.gradient(np.log(mass), step))))
+    k3 = float(np.max(heavy * steep / H2M)) ** (1 / 3)
+    k4 = float(np.max(heavy * bent / H2M)) ** (1 / 4)
+    wave = float(np.max(np.sqrt(np.maximum(mass * (high - edge), 0.0) / H2M)))
+    rate = max(k3 / 0.36, k4 / 0.5, wave / 1.2, drift / 1.0) / share
+    return int(np.ceil(section.thickness * max(rate, 0.75 * wave)))
