@@ -135,7 +135,8 @@ def _build_layer(layer: Layer, name: str, stack: Stack, library: Library, two_ba
         ends = probe
     else:
         ends = points.at(np.array([0.0, thickness]), thickness, "first")
-        face: Face = "first" if ends.edge[0] <= ends.edge[1] else "last"
+        first, last = np.ravel(ends.edge)
+        face: Face = "first" if first <= last else "last"
         smooth = not any(isinstance(shape, Function) for shape in shapes)
         for start, stop in _spans(shapes, thickness):
             pieces.append(points.piece(start, stop, thickness, face, two_band, smooth))

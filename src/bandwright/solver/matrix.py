@@ -31,6 +31,15 @@ class Elements(NamedTuple):
     off: Floats
     clamped: Counts
 
+    @classmethod
+    def blank(cls, shape: tuple[int, int]) -> Elements:
+        """Return elements yet to be filled."""
+        return cls(np.empty(shape), np.empty(shape), np.empty(shape), np.empty(shape, np.int64))
+
+    def rows(self, which: npt.NDArray[np.int64]) -> Elements:
+        """Return the elements of these rows, in this order."""
+        return Elements(self.left[which], self.right[which], self.off[which], self.clamped[which])
+
 
 class Matrix(NamedTuple):
     """K(E) of the free faces: ``diagonal`` (n_nodes, n_energies), ``off`` one row fewer.

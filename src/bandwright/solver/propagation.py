@@ -95,8 +95,8 @@ def tilted(
 ) -> tuple[Exponent, Exponent]:
     """Return the 6th-order Magnus exponent of linear slices and its derivative by E.
 
-    In closed form: with constant band-edge mass and gap everything is linear in z and in E, and the commutator
-    [A1, A2] is a constant: `magnus` in a few products. Only where the mass is off its floor.
+    In closed form: with constant band-edge mass and gap everything is linear in z and in E, and
+    the commutator [A1, A2] is a constant. Only where the mass is off its floor.
 
     Parameters
     ----------

@@ -104,14 +104,9 @@ class Slices:
         parts = [(rows, kind(energies, slopes)) for rows, kind in self._kinds]
         if len(parts) == 1:
             rows, found = parts[0]
-            if rows is None:
-                return found
-            return tuple(Elements(*(column[rows] for column in one)) for one in found)
+            return found if rows is None else tuple(one.rows(rows) for one in found)
         shape = (len(self), len(energies))
-        joined = tuple(
-            Elements(*(np.empty(shape, dtype=column.dtype) for column in one))
-            for one in parts[0][1]
-        )
+        joined = tuple(Elements.blank(shape) for _ in parts[0][1])
         for rows, found in parts:
             for target, source in zip(joined, found, strict=True):
                 for column, numbers in zip(target, source, strict=True):
