@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING, Any, NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -263,10 +263,11 @@ def lines_of(
     >>> [line.name for line in levels.lines(window=("8 um", "12 um"), strength=0.5).rows]
     ['3 to 2']
     """
-    return Lines(levels, _window(window), _strength(strength), bool(of_box))
+    return Lines(levels, read_window(window), read_strength(strength), bool(of_box))
 
 
-def _window(window: Sequence[object] | None) -> tuple[float | None, float | None]:
+def read_window(window: Sequence[object] | None) -> tuple[float | None, float | None]:
+    """Return the shortest and longest wavelength [nm] of a pair; None is an open side."""
     if window is None:
         return None, None
     if isinstance(window, str) or not isinstance(window, Sequence) or len(window) != 2:
@@ -283,11 +284,12 @@ def _window(window: Sequence[object] | None) -> tuple[float | None, float | None
     return first, last
 
 
-def _strength(strength: Any) -> float | None:
+def read_strength(strength: object) -> float | None:
+    """Return a least oscillator strength; None for none."""
     if strength is None:
         return None
     try:
-        value = float(strength)
+        value = float(strength)  # type: ignore[arg-type]
     except (TypeError, ValueError):
         value = math.nan
     if not (math.isfinite(value) and value >= 0.0) or isinstance(strength, bool):

@@ -48,7 +48,8 @@ def collect(levels: Levels) -> tuple[str, ...]:
     ...     "20 nm {edge 250 meV, mass 0.092}, 1200 nm {edge 0 meV, mass 0.067},"
     ...     " 20 nm {edge 250 meV, mass 0.092}"), at_most=2)
     >>> print(collect(levels)[0])
-    layer 2 is 1200 nm thick, over 1 um: is the unit right? 120 nm would be as many Angstrom
+    layer 2 (own numbers) is 1200 nm thick, over 1 um: is the unit right? 1.2 nm if um
+    stands for nm, 120 nm if nm stands for Å
     """
     return (
         *at_once(levels),

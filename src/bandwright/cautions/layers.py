@@ -16,9 +16,10 @@ def thicknesses(levels: Levels) -> list[str]:
     for fact in levels.profile.facts:
         length = f"{number_text(round(fact.thickness, 6))} nm"
         if fact.thickness > THICK:
+            nm, tenth = (number_text(round(fact.thickness / by, 6)) for by in (1000, 10))
             texts.append(
-                f"{fact.name} is {length} thick, over 1 um: is the unit right?"
-                f" {number_text(round(fact.thickness / 10, 6))} nm would be as many Angstrom"
+                f"{fact.name} is {length} thick, over 1 um: is the unit right? {nm} nm if um"
+                f" stands for nm, {tenth} nm if nm stands for Å"
             )
         elif fact.thickness < THIN:
             texts.append(
@@ -39,7 +40,9 @@ def materials(levels: Levels) -> list[str]:
     said: dict[str, list[str]] = {}
     for fact in levels.profile.facts:
         for text in fact.cautions:
-            said.setdefault(text, []).append(fact.name)
+            own = fact.name.endswith(f"({fact.material})")  # the name says the formula already
+            short = text.removeprefix(f"{fact.material}: ") if own else text
+            said.setdefault(short, []).append(fact.name)
     return [f"{listed(names)}: {text}" for text, names in said.items()]
 
 

@@ -30,7 +30,8 @@ def strains(levels: Levels) -> list[str]:
         return [
             f"no substrate is named, and lattices differ by {apart:.2%} ({small.name}"
             f" {small.lattice:.5f} nm, {large.name} {large.lattice:.5f} nm): every layer is taken"
-            " unstrained; name it, for example substrate = 'GaAs', and edges and gaps shift"
+            f" unstrained; name it, for example substrate = '{_likely(levels, facts)}', and edges"
+            " and gaps shift"
         ]
     off = [fact for fact in facts if abs(fact.mismatch) > MATCHED]
     texts = []
@@ -41,6 +42,13 @@ def strains(levels: Levels) -> list[str]:
             " shifted with the volume, no splitting of the valence bands"
         )
     return texts + _too_thick(levels, substrate)
+
+
+def _likely(levels: Levels, facts: Sequence[LayerFacts]) -> str:
+    """Return the usual substrate nearest to the layers' lattices."""
+    library = Library.with_files(levels.stack.materials)
+    mean = sum(fact.lattice * fact.thickness for fact in facts) / sum(f.thickness for f in facts)
+    return min(("GaAs", "InP", "GaSb"), key=lambda name: abs(library.lattice(name) - mean))
 
 
 def _sized(fact: LayerFacts) -> str:
@@ -111,15 +119,25 @@ def _too_thick(levels: Levels, substrate: str) -> list[str]:
         names = " + ".join(dict.fromkeys(fact.name for fact in film))
         text = _beyond(film, lattice, place < len(grown))
         if text:
-            found[names] = f"{names}: {text}"
-    strained = [fact for fact in grown if _sense(fact) != 0]
-    if len(strained) > 1 and not any(fact.own for fact in grown):
-        text = _beyond(grown, lattice, False)
-        if text and not found:
-            found[""] = (
-                f"the whole stack as one film: {text}, though no layer alone is; balance its strain"
-            )
-    return [f"{text} (Matthews and Blakeslee 1974), and may relax" for text in found.values()]
+            found[names] = f"{names}: {text}; make it thinner, or its misfit smaller"
+    if not found:
+        found[""] = _whole(grown, lattice)
+    return [text for text in found.values() if text]
+
+
+def _whole(grown: Sequence[LayerFacts], lattice: float) -> str:
+    """Return whether all from the first to the last strained layer is too much as one film."""
+    places = [i for i, fact in enumerate(grown) if _sense(fact) != 0]
+    if len(places) < 2 or any(fact.own for fact in grown):
+        return ""
+    film = grown[places[0] : places[-1] + 1]
+    text = _beyond(film, lattice, places[-1] < len(grown) - 1)
+    if text is None:
+        return ""
+    return (
+        f"{film[0].name} to {film[-1].name}: {text}, though no layer alone is; balance the strain"
+        " with layers of the other sign"
+    )
 
 
 def _sense(fact: LayerFacts) -> int:
@@ -137,7 +155,7 @@ def _beyond(film: Sequence[LayerFacts], lattice: float, buried: bool) -> str | N
         return None
     return (
         f"{thickness:.3g} nm with a misfit of {misfit:+.2%} is beyond the critical thickness of"
-        f" {limit:.3g} nm"
+        f" {limit:.3g} nm (Matthews and Blakeslee 1974) and may relax"
     )
 
 
