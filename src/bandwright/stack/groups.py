@@ -47,6 +47,8 @@ class Repeat:
             whole = 0
         if whole < 1 or isinstance(times, bool):
             raise StackError(f"times: got {show(times)}; write a whole number from 1", "group")
+        if whole > MOST_LAYERS:
+            raise StackError(f"times: got {show(times)}; at most {MOST_LAYERS:,}", "group")
         object.__setattr__(self, "times", whole)
         object.__setattr__(self, "layers", read_layers(layers, "group"))
 

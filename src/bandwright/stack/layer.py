@@ -243,6 +243,8 @@ def _layer_fields(inputs: Mapping[str, Any], old: Layer | None = None) -> dict[s
     grading = inputs.get("grading")
     if grading is not None:
         word(grading, _GRADINGS, "grading")
+    elif old is not None and _graded(old):
+        grading = "quadratic"  # a new pair goes as the layer's other pairs do
     converts: dict[str, Callable[[object, str], float]] = {
         "x": q.as_fraction,
         "y": q.as_fraction,
@@ -256,9 +258,8 @@ def _layer_fields(inputs: Mapping[str, Any], old: Layer | None = None) -> dict[s
         if name in inputs:
             given = inputs[name]
             values[name] = None if given is None else as_shape(given, convert, name, grading)
-    if grading is not None and not any(
-        isinstance(shape, Linear | Quadratic) for shape in values.values()
-    ):
+    pairs = any(isinstance(shape, Linear | Quadratic) for shape in values.values())
+    if inputs.get("grading") is not None and not pairs:
         raise StackError(
             f"grading: got {q.show(grading)} but no pair to grade; give one, such as x = [0, 0.3]"
         )
@@ -303,6 +304,8 @@ def _check_layer(layer: Layer) -> None:
                 f"thickness: got '{q.length_text(layer.thickness)}'; monolayers need a material;"
                 " write a length in nm"
             )
+    if _graded(layer) and any(isinstance(shape, Linear) for _, shape in layer.shapes):
+        raise StackError("grading: a linear and a quadratic pair; grade the pairs of a layer alike")
     for name, shape in layer.shapes:
         _check_shape(layer, name, shape)
 

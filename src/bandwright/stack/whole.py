@@ -44,7 +44,7 @@ class Stack:
         The label or material that energies count from.
     bands : {"one-band", "two-band"}, optional
     materials : path or sequence of paths
-        Own material files.
+        Own material files; stored as absolute paths, so that a stack means the same anywhere.
     order : {"first grown first", "surface first"}
         The order of what is given: ``layers``, groups, and of every pair, the one of ``ends``
         too. Stored in growth order.
@@ -250,7 +250,7 @@ def _check_stack(stack: Stack) -> None:
         other = next(w for w in written if not w.layer.own_numbers)
         raise StackError(
             f"zero: missing; {own[0].name} brings its own numbers and {other.name} a material:"
-            f" name what own edges count from, for example zero = '{_zero(other)}'"
+            f" name what own edges count from, for example zero = '{_zero(written)}'"
         )
     if stack.bands == "two-band":
         bare = [w.name for w in own if w.layer.gap is None and w.layer.nonparabolicity is None]
@@ -260,9 +260,11 @@ def _check_stack(stack: Stack) -> None:
             )
 
 
-def _zero(written: Written) -> str:
-    layer = written.layer
-    return layer.label if layer.label is not None else str(layer.material)
+def _zero(written: Iterable[Written]) -> str:
+    """Return a zero that a stack of own numbers and materials may name."""
+    layers = [w.layer for w in written if not w.layer.own_numbers]
+    names = [layer.label or layer.material for layer in layers if not layer.fractions]
+    return names[0] or "GaAs" if names else "GaAs"
 
 
 def _read_ends(value: object) -> tuple[str, str]:
@@ -286,7 +288,7 @@ def _paths(value: object) -> tuple[str, ...]:
         raise StackError(f"materials: got {q.show(value)}; give paths of material files")
     paths = []
     for path in given:
-        if not isinstance(path, str | os.PathLike):
+        if not isinstance(path, str | os.PathLike) or not os.fspath(path):
             raise StackError(f"materials: got {q.show(path)}; give the path of a material file")
-        paths.append(str(os.fspath(path)))
+        paths.append(os.path.abspath(os.fsdecode(path)))
     return tuple(paths)
