@@ -1,0 +1,54 @@
+"""The fractions of a formula with numbers, as parameters: read and replaced in the text."""
+
+from __future__ import annotations
+
+from decimal import Decimal
+
+from bandwright.errors import StackError
+from bandwright.formula import Sublattice, letters, parse
+from bandwright.quantities import number_text
+
+SITES = ("composition", "anion_composition")
+
+
+def mixed_sites(formula: str) -> list[tuple[str, Sublattice]]:
+    """Return (key, sublattice) of each mixed sublattice of a formula without letters.
+
+    Raises
+    ------
+    MaterialError
+        If the formula can't be read.
+    """
+    if letters(formula):
+        return []
+    mixed = [site for site in parse(formula).sublattices if len(site) > 1]
+    return list(zip(SITES, mixed, strict=False))
+
+
+def first_fraction(sublattice: Sublattice) -> float:
+    """Return the fraction of a sublattice's first element."""
+    return float(sublattice[0][1])
+
+
+def with_fraction(formula: str, key: str, sublattice: Sublattice, value: float) -> str:
+    """Return the formula with another first fraction of one sublattice, the rest in proportion.
+
+    Raises
+    ------
+    StackError
+        If the fraction is outside 0 to 1.
+    """
+    value += 0.0  # no minus zero
+    if not 0.0 <= value <= 1.0:
+        raise StackError(f"got {number_text(value)}; a fraction lies between 0 and 1")
+    amounts = {e: Decimal(repr(float(f))) for site in parse(formula).sublattices for e, f in site}
+    (first, _), *others = sublattice
+    new, old = Decimal(repr(value)), amounts[first]
+    rest = 1 - new
+    for element, _ in others[:-1]:
+        part = amounts[element] / (1 - old) if old != 1 else Decimal(0)
+        amounts[element] = min(rest, Decimal(repr(float((1 - new) * part))))
+        rest -= amounts[element]
+    amounts[first], amounts[others[-1][0]] = new, rest
+    mixed = {element for site in parse(formula).sublattices if len(site) > 1 for element, _ in site}
+    return "".join(e + (f"{a.normalize():f}" if e in mixed else "") for e, a in amounts.items())
