@@ -61,10 +61,15 @@ def frame(
     for name, values in columns.items():
         whole = name in integers or (name == index and name not in texts)
         arrays[name] = _column(values, text=name in texts, whole=whole)
-    if index is None:
-        return pd.DataFrame(arrays)
-    labels = pd.Index(arrays.pop(index), name=index)
-    return pd.DataFrame(arrays, index=labels)
+    labels = None
+    if index is not None:
+        found = arrays.pop(index)
+        labels = pd.Index(found, dtype=found.dtype, name=index)
+    # each with its own dtype: pandas 3 would make text of its own, with NaN for None
+    series = {
+        name: pd.Series(values, index=labels, dtype=values.dtype) for name, values in arrays.items()
+    }
+    return pd.DataFrame(series, index=labels)
 
 
 def rows(table: object) -> list[dict[str, Any]]:
