@@ -237,8 +237,9 @@ def _parts(formula: str) -> tuple[_Part, ...]:
         part = _part(found["element"], found["amount"])
         if part.element not in _ELEMENTS:
             near = _recased(compact) or close_matches(part.element, _ELEMENTS)
+            place_in = f"{formula!r}: " if part.element != compact else ""
             raise MaterialError(
-                f"{formula!r}: {part.element!r} sits on no sublattice of a compound{near}"
+                f"{place_in}{part.element!r} sits on no sublattice of a compound{near}"
             )
         if any(part.element == other.element for other in parts):
             raise MaterialError(f"{formula!r} names {part.element} twice")

@@ -15,7 +15,7 @@ from typing import Any
 
 from bandwright.errors import MaterialError, close_matches
 
-_TEXT = re.compile(r"([-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?)\s*(\S.*)?")
+_TEXT = re.compile(r"([-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?)\s*([^\d\s.,].*)?")
 
 
 @dataclass(frozen=True)
@@ -33,15 +33,15 @@ _ENERGY = {"eV": "1", "meV": "1e-3"}
 _LENGTH = {"nm": "1", "Å": "0.1", "\u212b": "0.1", "A": "0.1", "angstrom": "0.1", "pm": "1e-3"}
 _STIFFNESS = {"GPa": "1", "kbar": "0.1", "MPa": "1e-3", "dyn/cm^2": "1e-10"}
 
-LATTICE = Kind("lattice constant", _LENGTH, "0.565 nm", 0.3, 0.9)
-ENERGY = Kind("energy", _ENERGY, "1.519 eV", -30.0, 30.0)
-GAP = Kind("gap", _ENERGY, "1.519 eV", -1.0, 12.0)
-SLOPE = Kind("energy per temperature", {"eV/K": "1", "meV/K": "1e-3"}, "0.5 meV/K", -2e-3, 2e-3)
-TEMPERATURE = Kind("temperature", {"K": "1"}, "300 K", 0.0, 5000.0)
-C11 = Kind("elastic constant", _STIFFNESS, "122.1 GPa", 20.0, 500.0)
-C12 = Kind("elastic constant", _STIFFNESS, "56.6 GPa", 5.0, 200.0)
-MASS = Kind("mass", {}, "0.067", 1e-3, 5.0)
-RATIO = Kind("share", {}, "0.65", -2.0, 3.0)
+LATTICE = Kind("a lattice constant", _LENGTH, "0.565 nm", 0.3, 0.9)
+ENERGY = Kind("an energy", _ENERGY, "1.519 eV", -30.0, 30.0)
+GAP = Kind("a gap", _ENERGY, "1.519 eV", -1.0, 12.0)
+SLOPE = Kind("an energy per temperature", {"eV/K": "1", "meV/K": "1e-3"}, "0.5 meV/K", -2e-3, 2e-3)
+TEMPERATURE = Kind("a temperature", {"K": "1"}, "300 K", 0.0, 5000.0)
+C11 = Kind("an elastic constant", _STIFFNESS, "122.1 GPa", 20.0, 500.0)
+C12 = Kind("an elastic constant", _STIFFNESS, "56.6 GPa", 5.0, 200.0)
+MASS = Kind("a mass", {}, "0.067", 1e-3, 5.0)
+RATIO = Kind("a share", {}, "0.65", -2.0, 3.0)
 
 
 @dataclass(frozen=True)
@@ -159,25 +159,25 @@ class Reader:
     def value(self, key: str, found: Any, kind: Kind) -> float:
         """Return a value in core units: text with a unit, or a bare number where none is due."""
         if isinstance(found, bool) or not isinstance(found, str | int | float):
-            raise self.error(key, f"got {found!r}; write a {kind.name} like {kind.example!r}")
+            raise self.error(key, f"got {found!r}; write {kind.name} like {kind.example!r}")
         match = _TEXT.fullmatch(str(found).strip())
         if match is None:
             raise self.error(
-                key, f"can't read {found!r} as a {kind.name}; write it like {kind.example!r}"
+                key, f"can't read {found!r} as {kind.name}; write it like {kind.example!r}"
             )
         digits, unit = match.groups()
         if not kind.units:
             if unit:
-                raise self.error(key, f"a {kind.name} has no unit, got {found!r}")
+                raise self.error(key, f"{kind.name} has no unit, got {found!r}")
             value = float(digits)
         else:
             if not unit:
                 raise self.error(
-                    key, f"{found!r} has no unit; write a {kind.name} like {kind.example!r}"
+                    key, f"{found!r} has no unit; write {kind.name} like {kind.example!r}"
                 )
             if unit not in kind.units:
                 known = ", ".join(dict.fromkeys(kind.units))
-                raise self.error(key, f"{unit!r} is no unit of a {kind.name}; use one of {known}")
+                raise self.error(key, f"{unit!r} is no unit of {kind.name}; use one of {known}")
             value = float(Decimal(digits) * Decimal(kind.units[unit]))
         self._check_bounds(key, found, value, kind)
         return value
@@ -186,7 +186,7 @@ class Reader:
         if kind.low <= value <= kind.high:
             return
         unit = next(iter(kind.units), "")
-        hint = f"a {kind.name} lies between {kind.low:g} and {kind.high:g} {unit}".rstrip()
+        hint = f"{kind.name} lies between {kind.low:g} and {kind.high:g} {unit}".rstrip()
         if kind in (C11, C12) and value > kind.high:
             hint += (
                 "; tables often print kbar and call it GPa (10 kbar are 1 GPa): "
