@@ -1,0 +1,353 @@
+"""Error budget of a line: what a monolayer, a per cent, ten kelvin and a field do to it.
+
+The shift of a row is a derivative times its change. `derivatives` is the one place that finds
+them, here by solving the stack again a small step to both sides; whether the whole change is
+still linear, and still the same two levels, is checked by one more solution at the whole change.
+"""
+
+from __future__ import annotations
+
+import math
+import warnings
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from .constants import HC
+from .errors import BandwrightError, BandwrightWarning, SolveError, StackError
+from .formula import parse
+from .frames import frame
+from .levels import Levels, solve
+from .lines import CONTINUUM, Line, Lines, continuum_edge
+from .parameters import Parameter, list_parameters, shifted
+from .stack import Stack
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+Floats = npt.NDArray[np.float64]
+
+#: tolerance of the solutions that derivatives are taken from [eV]
+TOLERANCE = 1e-9
+#: steps of the derivatives, in core units: their square is negligible, their noise too
+STEPS = {"thickness": 0.02, "composition": 1e-3, "temperature": 1.0, "field": 1e-5, "bias": 1e-3}
+#: a level that keeps less of itself (overlap) over a whole change has crossed another
+SAME_LEVEL = 0.8
+#: a whole change is called linear if its shift is this near to it, relative or in eV
+LINEAR, LINEAR_EV = 0.25, 0.5e-3
+#: the change of a layer with its own numbers, which has no monolayer [nm]
+OWN_STEP = 0.1
+
+
+class Change(NamedTuple):
+    """A change that a grower or the lab makes.
+
+    Attributes
+    ----------
+    parameter : Parameter
+    amount : float
+        How much, in the parameter's unit.
+    step : float
+        Step of the derivative, in the parameter's unit.
+    what : str
+        The layer, or ``"temperature"`` and the like.
+    text : str
+        The change in words, as ``"+1 ML"``.
+    """
+
+    parameter: Parameter
+    amount: float
+    step: float
+    what: str
+    text: str
+
+
+def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None) -> pd.DataFrame:
+    """Return what small changes of the stack do to a line, the largest shift first.
+
+    Changes: one monolayer more in each written layer (repeats, and layers of one label,
+    together; +0.1 nm where a layer brings its own numbers and so no lattice), 0.01 more of each
+    composition, 10 K more, 1 kV/cm more along growth (10 mV more of a bias).
+
+    Parameters
+    ----------
+    lines : Lines
+    line : Line or (upper, lower), optional
+        The strongest line if absent, or the first onset where no line joins two levels.
+
+    Returns
+    -------
+    DataFrame
+        ``what``, ``change``, ``shift_meV``, ``shift_um`` and ``sentence``; empty without a line.
+
+    Raises
+    ------
+    StackError
+        If there is no such line.
+
+    Examples
+    --------
+    >>> import bandwright as bw
+    >>> well = bw.Layer("10 nm", edge="0 meV", mass=0.067, label="well")
+    >>> wall = bw.Layer("20 nm", edge="250 meV", mass=0.092, label="barrier")
+    >>> budget = bw.solve(bw.Stack([wall, well, wall])).lines().error_budget((2, 1))
+    >>> print(budget["sentence"][0])
+    well, +0.1 nm: +0.2 um
+    """
+    levels = lines.levels
+    if line is None:
+        chosen = lines.main
+    else:
+        upper, lower = line[:2]
+        chosen = lines.find(upper, lower)
+    rows: list[tuple[Change, float, str]] = []
+    if chosen is not None:
+        every = [
+            change
+            for change in changes(levels)
+            if chosen.upper != CONTINUUM or change.parameter.kind not in ("field", "bias")
+        ]
+        slopes = derivatives(levels, chosen, every)
+        before = _Sample.of(levels)
+        for change, (up, down) in zip(every, slopes, strict=True):
+            shift = float(up - down) * change.amount
+            rows.append((change, shift, _checked(levels, chosen, change, shift, before)))
+    rows.sort(key=lambda row: -abs(row[1]) if math.isfinite(row[1]) else math.inf)
+    return _table(chosen, rows)
+
+
+def _table(line: Line | None, rows: Sequence[tuple[Change, float, str]]) -> pd.DataFrame:
+    lengths = [_wavelength_shift(line, shift) for _, shift, _ in rows]
+    sentences = [
+        f"{change.what}, {change.text}: {_signed(length)} um{remark}"
+        for (change, _, remark), length in zip(rows, lengths, strict=True)
+    ]
+    return frame(
+        {
+            "what": [change.what for change, _, _ in rows],
+            "change": [change.text for change, _, _ in rows],
+            "shift_meV": [shift * 1e3 for _, shift, _ in rows],
+            "shift_um": lengths,
+            "sentence": sentences,
+        },
+        texts=("what", "change", "sentence"),
+    )
+
+
+def _signed(value: float) -> str:
+    """Return a shift with its sign and two digits.
+
+    Examples
+    --------
+    >>> _signed(-0.1234), _signed(2.5e-7), _signed(float("nan"))
+    ('-0.12', '0', 'unknown')
+    """
+    if math.isnan(value):
+        return "unknown"
+    return f"{value:+.2g}" if abs(value) >= 1e-6 else "0"
+
+
+def _wavelength_shift(line: Line | None, shift: float) -> float:
+    """Return the shift of the vacuum wavelength [um] of a shift of the energy [eV]."""
+    if line is None or line.energy_meV * 1e-3 + shift <= 0.0:
+        return math.nan
+    return HC / (line.energy_meV * 1e-3 + shift) * 1e-3 - line.wavelength_um
+
+
+def changes(levels: Levels) -> list[Change]:
+    """Return the changes a budget lists, in the order of the stack."""
+    stack = levels.stack
+    written = {one.number: one for one in stack.written()}
+    monolayers = {n: fact.monolayer for n, fact in enumerate(levels.profile.facts, start=1)}
+    materials = any(one.layer.material is not None for one in written.values())
+    found = []
+    for parameter in list_parameters(stack):
+        kind, number = parameter.kind, parameter.layer_number
+        if number is None:
+            found += _of_stack(parameter, materials)
+            continue
+        head, _, key = parameter.name.rpartition(".")
+        name = written[number].name
+        what = f"{head} ({name})" if head != name and not name.startswith(head) else name
+        layer = written[number].layer
+        if kind == "thickness":
+            step = min(STEPS[kind], 0.02 * levels.profile.facts[number - 1].thickness)
+            monolayer = monolayers[number]
+            if parameter.unit == "ML":
+                found.append(Change(parameter, 1.0, step / monolayer, what, "+1 ML"))
+            elif math.isnan(monolayer):
+                found.append(Change(parameter, OWN_STEP, step, what, f"+{OWN_STEP:g} nm"))
+            else:
+                found.append(Change(parameter, monolayer, step, what, "+1 ML"))
+        elif kind == "composition":
+            which = key.removesuffix("_shift")
+            if layer.material is not None and which not in ("x", "y"):
+                which = _first_element(layer.material, key)
+            found.append(Change(parameter, 0.01, STEPS[kind], what, f"+0.01 {which}"))
+    return found
+
+
+def _of_stack(parameter: Parameter, materials: bool) -> list[Change]:
+    """Return the change of a number of the whole stack; none of one that nothing follows."""
+    kind = parameter.kind
+    if kind == "temperature" and materials:
+        return [Change(parameter, 10.0, STEPS[kind], kind, "+10 K")]
+    if kind == "field":
+        return [Change(parameter, 1e-4, STEPS[kind], kind, "+1 kV/cm")]
+    if kind == "bias":
+        return [Change(parameter, 0.01, STEPS[kind], kind, "+10 mV")]
+    return []
+
+
+def _first_element(formula: str, key: str) -> str:
+    """Return the element whose fraction a composition parameter is.
+
+    Examples
+    --------
+    >>> _first_element("In0.53Ga0.47As", "composition")
+    'In'
+    """
+    mixed = [site for site in parse(formula).sublattices if len(site) > 1]
+    return mixed[-1 if key == "anion_composition" else 0][0][0]
+
+
+def derivatives(levels: Levels, line: Line, changes: Sequence[Change]) -> Floats:
+    """Return dE of the upper and of the lower level by each parameter, (n_changes, 2).
+
+    Central differences of solutions to `TOLERANCE`; for an onset, and where one side can't be
+    solved (a fraction at 0 or 1, a temperature at 0 K), one-sided ones of second order, from
+    three steps. Levels are followed by number; a group of copies by its mean. In eV per unit of
+    the parameter; nan where neither side can be solved.
+
+    Parameters
+    ----------
+    levels : Levels
+    line : Line
+        The upper level of an onset is the lower open edge.
+    changes : sequence of Change
+    """
+    slopes = np.full((len(changes), 2), np.nan)
+    for row, change in enumerate(changes):
+        up = _ends_at(levels, line, change, 1.0)
+        # an onset counts from the lower of two edges, which has a kink where they are equal
+        down = (
+            _ends_at(levels, line, change, -1.0) if line.upper != CONTINUUM or up is None else None
+        )
+        if up is not None and down is not None:
+            slopes[row] = (up - down) / (2.0 * change.step)
+            continue
+        side = 1.0 if up is not None else -1.0
+        near = up if up is not None else down
+        far = [_ends_at(levels, line, change, side * times) for times in (2.0, 3.0)]
+        if near is not None and far[0] is not None and far[1] is not None:
+            # through f(h), f(2h), f(3h); f(0) may have other ends than a stack in a field
+            slopes[row] = side * (-5.0 * near + 8.0 * far[0] - 3.0 * far[1]) / (2.0 * change.step)
+    return slopes
+
+
+def _ends_at(levels: Levels, line: Line, change: Change, steps: float) -> Floats | None:
+    """Return (upper, lower) energy [eV] a number of steps away; None where that is no stack."""
+    try:
+        moved = _moved(levels.stack, change.parameter.name, steps * change.step)
+        return _ends(_solved(levels, moved, line), levels, line)
+    except BandwrightError:
+        return None
+
+
+def _moved(stack: Stack, name: str, step: float) -> Stack:
+    moved = shifted(stack, name, step)
+    if moved == stack:
+        raise StackError(f"the step {step:g} does not move it", name)
+    return moved
+
+
+def _solved(levels: Levels, stack: Stack, line: Line) -> Levels:
+    """Return the lowest levels of another stack, up to the upper one of a line."""
+    group = _members(levels, line.lower if line.upper == CONTINUUM else int(line.upper))
+    below = max(levels.parts[-1].span.high, float(levels.energies[group].max()) + 0.1)
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", BandwrightWarning)  # said about the stack itself already
+        return solve(
+            stack,
+            below=f"{below!r} eV",
+            at_most=group.stop,
+            tolerance=f"{min(TOLERANCE, levels.tolerance)!r} eV",
+            bands=levels.profile.bands,
+        )
+
+
+def _members(levels: Levels, number: int) -> slice:
+    """Return the levels of the row that a level number names."""
+    return next(group for group in levels.groups if group.start + 1 == number)
+
+
+def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
+    """Return (upper, lower) energy [eV] of a line in another solution, levels by number."""
+    ends = []
+    for number in (line.upper, line.lower):
+        if number == CONTINUUM:
+            edge = continuum_edge(found)
+            ends.append(math.nan if edge is None else edge)
+        else:
+            group = _members(levels, int(number))
+            if group.stop > len(found):
+                raise SolveError(f"level {number} is no longer there")
+            ends.append(float(np.mean(found.energies[group])))
+    return np.array(ends)
+
+
+def _checked(levels: Levels, line: Line, change: Change, shift: float, before: _Sample) -> str:
+    """Return what must be said of a whole change beside its linear shift, '' if nothing."""
+    if not math.isfinite(shift):
+        return "; the stack can't be solved a step away"
+    try:
+        moved = _moved(levels.stack, change.parameter.name, change.amount)
+        found = _solved(levels, moved, line)
+        upper, lower = _ends(found, levels, line)
+    except BandwrightError as error:
+        return f"; only for a smaller change: {error}"
+    for number in (line.upper, line.lower):
+        if number != CONTINUUM:
+            kept = before.overlap(found, _members(levels, int(number)))
+            if kept < SAME_LEVEL:
+                return (
+                    f"; level {number} crosses another on the way (overlap {kept:.2f}): compare"
+                    " the changed stack itself"
+                )
+    whole = float(upper - lower) - line.energy_meV * 1e-3
+    if abs(whole - shift) > max(LINEAR_EV, LINEAR * abs(shift)):
+        return f"; not linear, the whole change gives {_signed(_wavelength_shift(line, whole))} um"
+    return ""
+
+
+class _Sample(NamedTuple):
+    """States of all levels of a solution at fractional depths, to compare solutions by.
+
+    A thicker layer is compared with itself. ``share`` is the number of depths in each section,
+    ``u`` (n_levels, n_depths) is weighted so that rows have their products as overlaps.
+    """
+
+    share: npt.NDArray[np.int64]
+    u: Floats
+
+    @staticmethod
+    def of(levels: Levels, share: npt.NDArray[np.int64] | None = None) -> _Sample:
+        """Return the states of a solution; without ``share``, at some 150 depths."""
+        profile = levels.profile
+        thickness = np.array([s.thickness for s in profile.sections])
+        if share is None:
+            share = np.maximum(6, np.rint(150.0 * thickness / thickness.sum())).astype(np.int64)
+        width = np.repeat(thickness / share, share)
+        inside = np.concatenate([np.arange(n) + 0.5 for n in share])
+        z = np.repeat(profile.faces[:-1], share) + inside * width
+        return _Sample(share, levels.states.sample(z)[0] * np.sqrt(width))
+
+    def overlap(self, found: Levels, group: slice) -> float:
+        """Return how much of a group's subspace is the same in another solution, 0 to 1."""
+        if len(found.profile.sections) != len(self.share):
+            return 0.0
+        other = _Sample.of(found, self.share).u
+        old, new = (np.linalg.svd(u[group], full_matrices=False)[2] for u in (self.u, other))
+        return float(np.linalg.svd(old @ new.T, compute_uv=False).min())
