@@ -1,5 +1,6 @@
-"""Levels by the phase integral: a method of its own beside shooting, and each level's budget."""
+"""Phase integral: levels from whole numbers of half waves, and the budget that explains them."""
 
+from .budget import Well, budget
 from .search import count, exact, levels
 
-__all__ = ["count", "exact", "levels"]
+__all__ = ["Well", "budget", "count", "exact", "levels"]

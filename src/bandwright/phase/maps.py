@@ -32,13 +32,15 @@ class Face(NamedTuple):
     """One face of every piece at every energy, shape (n_pieces, n_energies) each.
 
     ``square`` is M^2 where ``allowed``, else 2 N^2 [nm]; ``slope`` is (ln M)' or (ln N)' along
-    y towards the high side [1/nm]; ``shift`` is what Theta or S has beyond the action.
+    y towards the high side [1/nm]; ``shift`` is what Theta or S has beyond the action, and
+    ``distance`` |Q| / |Q'|^(2/3), the scaled distance from a turning point.
     """
 
     allowed: Mask
     square: Floats
     slope: Floats
     shift: Floats
+    distance: Floats
 
 
 def allowed_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
@@ -130,6 +132,7 @@ def airy_face(q: Floats, slope: Floats, plain: Mask) -> Face:
         square,
         np.where(allowed, m_log * sign * scale, -n_log * sign * scale),
         np.where(allowed, -sign * phase * weight, -sign * exponent),
+        np.maximum(x, 1e-6),
     )
 
 
@@ -147,7 +150,8 @@ def bottom_face(q: Floats, scale: Floats) -> Face:
     """
     allowed = q > 0
     square = scale * gamma_ratio(np.abs(q) * scale * scale) / np.sqrt(2.0)
-    return Face(allowed, square, np.zeros_like(q), np.zeros_like(q))
+    none = np.zeros_like(q)
+    return Face(allowed, square, none, none, none + _NONE)
 
 
 def top_face(q: Floats, scale: Floats) -> Face:
@@ -157,8 +161,8 @@ def top_face(q: Floats, scale: Floats) -> Face:
     """
     a = np.minimum(np.abs(q) * scale * scale, 1e8)
     ratio = np.exp((loggamma(0.25 + 0.5j * a) - loggamma(0.75 + 0.5j * a)).real)
-    none = np.zeros(q.shape, dtype=bool)
-    return Face(none, scale * ratio / np.sqrt(2.0), np.zeros_like(q), np.zeros_like(q))
+    none = np.zeros_like(q)
+    return Face(none > 0, scale * ratio / np.sqrt(2.0), none, none, none + _NONE)
 
 
 def bottom_exponent(height: Floats) -> Floats:
@@ -189,3 +193,22 @@ def top_exponent(theta: Floats) -> Floats:
     """Return half of arsinh(exp(2 theta)): theta + (ln 2)/2 deep below the top, 0 far above."""
     capped = np.minimum(theta, 300.0)
     return np.where(theta > 17.0, theta + 0.5 * np.log(2.0), 0.5 * np.arcsinh(np.exp(2 * capped)))
+
+
+def edge_phase(k: Floats, kappa: Floats) -> Floats:
+    """Return what a smooth edge between two levels adds to the pi/4 of its turning point.
+
+    For Q = k^2 - (k^2 + kappa^2) / (1 + exp(-y/l)), whose solutions are hypergeometric
+    (Eckart, Phys. Rev. 35, 1303, 1930): from the step's arctan(k/kappa) - pi/4 at l = 0 to 0
+    for a wide edge.
+
+    Parameters
+    ----------
+    k, kappa : arrays
+        k l and kappa l, both >= 0.
+    """
+    k = np.clip(k, 1e-12, 1e4)
+    kappa = np.clip(kappa, 0.0, 1e4)
+    action = k * np.log(4 * k * k / (k * k + kappa * kappa)) - 2 * kappa * np.arctan2(k, kappa)
+    far = (loggamma(kappa + 1j * k) + loggamma(1 + kappa + 1j * k) - loggamma(2j * k)).imag
+    return np.pi / 4 - action - far

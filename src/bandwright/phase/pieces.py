@@ -1,5 +1,4 @@
-"""Sections cut where their edge turns, so that each piece rises or falls and has one turning
-point at most.
+"""Sections cut where their edge turns: each piece rises or falls, with one turning point at most.
 
 A piece is read from its low face, where the edge is lower (s = 0), to its high face
 (s = length). All pieces of one kind are held as arrays and evaluated together.
@@ -38,6 +37,7 @@ class Piece:
     direction: int
     bottom: float = 0.0
     top: float = 0.0
+    walls: tuple[bool, bool] = (False, False)  # whether the low and the high face is a wall
 
 
 def derivative(curve: Curve, depth: float, inward: int, reach: float) -> tuple[float, float]:
@@ -93,8 +93,11 @@ def _highest(curve: Curve, low: float, high: float, sign: float) -> float:
     return 0.5 * float(low + high)
 
 
-def pieces_of(section: Section) -> list[Piece]:
-    """Cut a section that is not flat into its monotone pieces, in order of depth."""
+def pieces_of(section: Section, walls: tuple[bool, bool] = (False, False)) -> list[Piece]:
+    """Cut a section that is not flat into its monotone pieces, in order of depth.
+
+    ``walls`` says whether its first and its last face is a hard wall.
+    """
     length = section.thickness
     cuts = [0.0, *turns(section), length]
     edges = section.edge.at(np.array(cuts))
@@ -103,8 +106,9 @@ def pieces_of(section: Section) -> list[Piece]:
     for i, (a, b) in enumerate(zip(cuts[:-1], cuts[1:], strict=True)):
         rises = edges[i + 1] >= edges[i]
         low, high = (i, i + 1) if rises else (i + 1, i)
+        ends = (walls[0] and i == 0, walls[1] and i == len(cuts) - 2)
         found.append(Piece(section, cuts[low], b - a, 1 if rises else -1,
-                           scales[low], scales[high]))
+                           scales[low], scales[high], ends if rises else ends[::-1]))
     return found
 
 
@@ -143,11 +147,8 @@ class Batch:
         self.length = np.array([p.length for p in pieces])
         self.bottom = np.array([[p.bottom] for p in pieces])
         self.top = np.array([[p.top] for p in pieces])
-        self.linear = np.array(
-            [[p.section.tilted and p.section.inverse_gap.coefficients[0] == 0.0] for p in pieces]
-            if all(isinstance(p.section.inverse_gap, Polynomial) for p in pieces)
-            else [[False] for p in pieces]
-        )
+        self.plain = np.array([[w and not _linear(p.section) for p in pieces for w in p.walls]]
+                              ).reshape(-1, 2).T
         self._curves = {
             name: _Stacked([getattr(p.section, name) for p in pieces])
             for name in ("edge", "mass", "inverse_gap")
@@ -155,6 +156,14 @@ class Batch:
         self.ends = np.stack([np.zeros_like(self.length), self.length])  # (2, n_pieces)
         self.edge = np.stack([self.at("edge", s[:, None])[:, 0] for s in self.ends])
         self.slopes = {name: self._slopes(name) for name in self._curves}
+        self.curvature = self._slopes("edge", 1)
+        grid = np.linspace(0.0, 1.0, 129)
+        self._table = self.at("edge", self.length[:, None] * grid)
+        rise = np.diff(self._table)
+        steepest = rise.argmax(axis=1)
+        self.middle = (self.length * (steepest + 0.5) / 128)[:, None]
+        self.width = 0.25 * (self.edge[1] - self.edge[0])[:, None] * (
+            self.length / 128 / np.maximum(rise.max(axis=1), 1e-300))[:, None]
         x, w = np.polynomial.legendre.leggauss(nodes)
         part = (np.arange(panels)[:, None] + 0.5 * (x + 1)) / panels
         self.tau, self.weight = part.ravel(), np.tile(0.5 * w / panels, panels)
@@ -164,12 +173,29 @@ class Batch:
         shape = (-1,) + (1,) * (s.ndim - 1)
         return self._curves[name](self.start.reshape(shape) + self.direction.reshape(shape) * s)
 
-    def _slopes(self, name: str) -> Floats:
+    def local_width(self, energies: Floats, turn: Floats) -> Floats:
+        """Return the width l [nm] of the smooth step with this edge's levels and slope at ``turn``.
+
+        V = low + (high - low) / (1 + exp(-s/l)) has V' = (V - low)(high - V) / (l (high - low)).
+        """
+        length = self.length[:, None]
+        h = 1e-3 * length
+        s = np.clip(turn, h, length - h)
+        slope = (self.at("edge", s + h) - self.at("edge", s - h)) / (2 * h)
+        low, high = self.edge[0][:, None], self.edge[1][:, None]
+        e = np.clip(energies, low, high)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            local = (e - low) * (high - e) / ((high - low) * slope)
+        return np.clip(np.nan_to_num(local), 0.25 * self.width, 2.0 * self.width)
+
+    def _slopes(self, name: str, which: int = 0) -> Floats:
         value = np.zeros((2, len(self.pieces)))
         for i, p in enumerate(self.pieces):
             curve, way = getattr(p.section, name), p.direction
-            value[0, i] = way * derivative(curve, p.start, way, p.length)[0]
-            value[1, i] = way * derivative(curve, p.start + way * p.length, -way, p.length)[0]
+            sign = 1 if which else way
+            end = p.start + way * p.length
+            value[0, i] = sign * derivative(curve, p.start, way, p.length)[which]
+            value[1, i] = sign * derivative(curve, end, -way, p.length)[which]
         return value
 
     def turning(self, energies: Floats) -> Floats:
@@ -190,8 +216,7 @@ class Batch:
     def _refined(self, s: Floats, e: Floats) -> Floats:
         """Bracket each turning point by a table, then Ridders' method on all at once."""
         grid = np.linspace(0.0, 1.0, 129)
-        table = self.at("edge", self.length[:, None] * grid)
-        cell = np.clip((table[:, None, :] <= e[:, :, None]).sum(axis=-1) - 1, 0, 127)
+        cell = np.clip((self._table[:, None, :] <= e[:, :, None]).sum(axis=-1) - 1, 0, 127)
         a, b = self.length[:, None] * grid[cell], self.length[:, None] * grid[cell + 1]
         fa, fb = self.at("edge", a) - e, self.at("edge", b) - e
         inside = (fa <= 0) & (fb > 0)
@@ -209,6 +234,12 @@ class Batch:
             b, fb = np.where(use_right, d, right), np.where(use_right, fd, rf)
         between = np.where(fb - fa > 0, a - fa * (b - a) / np.where(fb > fa, fb - fa, 1.0), a)
         return np.where(inside, between, s)
+
+
+def _linear(section: Section) -> bool:
+    """Whether Airy functions are exact: a linear edge, one mass at all energies."""
+    gap = section.inverse_gap
+    return section.tilted and isinstance(gap, Polynomial) and gap.coefficients[0] == 0.0
 
 
 class _Stacked:
@@ -235,4 +266,5 @@ class _Stacked:
 
 def energy_mass(x: Floats, mass: Floats, inverse_gap: Floats) -> Floats:
     """Return m(E) [m0] for x = E - V [eV]: m (1 + x / gap), never under a twentieth of m."""
-    return mass * np.maximum(1.0 + x * inverse_gap, LEAST_MASS)
+    m: Floats = mass * np.maximum(1.0 + x * inverse_gap, LEAST_MASS)
+    return m

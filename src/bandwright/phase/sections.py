@@ -22,6 +22,7 @@ from .maps import (
     airy_face,
     bottom_exponent,
     bottom_face,
+    edge_phase,
     top_exponent,
     top_face,
     top_phase,
@@ -95,7 +96,7 @@ class Plan:
 
     def __init__(self, profile: Profile, ends: tuple[str, str] | None = None) -> None:
         self.profile = profile
-        self.ends = tuple(ends or profile.ends)
+        self.ends = ends or profile.ends
         if "periodic" in self.ends:
             raise SolveError(
                 "the phase integral knows open ends and walls, found 'periodic'; "
@@ -105,11 +106,14 @@ class Plan:
         self.sections: list[int] = []  # which section of the profile each element is part of
         groups: list[list[Piece]] = [[], [], [], []]  # flat, tilted, polynomial, sampled
         known: dict[tuple[object, ...], list[tuple[int, int, bool, Piece]]] = {}
+        final = len(profile.sections) - 1
         for number, s in enumerate(profile.sections):
-            key = (s.thickness, s.edge, s.mass, s.inverse_gap)
+            walls = (number == 0 and self.ends[0] == "wall",
+                     number == final and self.ends[1] == "wall")
+            key = (s.thickness, s.edge, s.mass, s.inverse_gap, walls)
             if key not in known:
                 known[key] = []
-                for piece in [Piece(s, 0.0, s.thickness, 1)] if s.flat else pieces_of(s):
+                for piece in [Piece(s, 0.0, s.thickness, 1)] if s.flat else pieces_of(s, walls):
                     kind = _kind(s)
                     groups[kind].append(piece)
                     known[key].append((kind, len(groups[kind]) - 1, piece.direction < 0, piece))
@@ -140,6 +144,12 @@ class Plan:
             left[i], right[i], off[i], clamped[i] = low[row], high[row], part.off[row], \
                 part.clamped[row]
         return Elements(left, right, off, clamped)
+
+    def turning(self, kind: int, energies: Floats) -> Floats:
+        """Return turning points of the batch of this kind, s [nm], see `Batch.turning`."""
+        batch = self.batches[kind - 1]
+        assert batch is not None
+        return batch.turning(energies)
 
     def outside(self, energies: Floats) -> tuple[Floats | None, Floats | None]:
         """Return what each end adds: kappa/m(E) of its outer face [1/nm], None at a wall."""
@@ -224,12 +234,47 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
                              np.where(inside, np.pi / 4, -high.shift))
     high_exponent = np.where(top, top_exponent(theta), decay + _HALF_LN2 + high.shift)
     height = np.where(inside, 2 * action / np.pi, np.abs(low_q) * batch.bottom**2)
+    round_, weight, phase = _smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
     larger = np.where(bottom, bottom_exponent(height), 0.0)
+    larger = np.where(inside, larger * round_, larger)
+    total = total + np.where(top | inside, weight * phase, 0.0)
+    if order == 2:
+        gain = next_order(batch, energies, inside, low_q > 0)
+        near = np.where(inside, low.distance, np.minimum(low.distance, high.distance))
+        gain = np.clip(np.nan_to_num(gain), -0.5, 0.5) / (1 + 0.1 * near**-3.0)
+        total = total + (1 - weight) * gain
     exponent = np.where(below, decay + high.shift - low.shift + larger,
                         high_exponent - np.where(inside, larger, 0.0))
-    if order == 2:
-        total = total + next_order(batch, energies, inside, low_q > 0)
     return Phases(action, decay, total, exponent, low, high)
+
+
+def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, high_q: Floats,
+                 action: Floats, decay: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return how round the low side is (1 a parabola, 0 flat), and weight and phase of an edge.
+
+    Where the edge is flat on both sides of its rise, within the reach of the wave, the pi/4 of
+    a turning point is corrected by the smooth step that has its two levels and its slope.
+    """
+    if all(p.section.tilted for p in batch.pieces):
+        return np.ones_like(low_q), np.zeros_like(low_q), np.zeros_like(low_q)
+    slant, curved = [], []
+    for end, q, reach in ((0, low_q, action), (1, high_q, decay)):
+        m = batch.at("mass", batch.ends[end][:, None])
+        m = energy_mass(energies - batch.edge[end][:, None], m,
+                        batch.at("inverse_gap", batch.ends[end][:, None]))
+        size = np.maximum(np.abs(q), 1e-100)
+        slope = np.abs(batch.slopes["edge"][end][:, None]) / (H2M * m * m)
+        bend = np.sqrt(2 * np.abs(batch.curvature[end][:, None]) / (H2M * m**3))
+        slant.append((1.5 * reach * slope / size**1.5) ** 2)
+        curved.append((2 * reach / np.pi * bend / size) ** 2)
+    weight = (np.clip(1 - slant[0], 0, 1) * np.clip(1 - slant[1] - curved[1], 0, 1)) ** 2
+    x = energies - batch.at("edge", batch.middle)
+    m = energy_mass(x, batch.at("mass", batch.middle), batch.at("inverse_gap", batch.middle))
+    width = m * batch.local_width(energies, turn)
+    k = np.sqrt(np.maximum(low_q, 0.0)) * width
+    kappa = np.sqrt(np.maximum(-high_q, 0.0)) * width
+    over = np.clip(1 - np.maximum(high_q, 0.0) / np.maximum(low_q, 1e-300), 0, 1)
+    return np.clip(slant[0] + curved[0], 0, 1), weight, np.where(low_q > 0, over * edge_phase(k, kappa), 0.0)
 
 
 def _face(batch: Batch, end: int, energies: Floats, order: int) -> tuple[Floats, Face]:
@@ -243,7 +288,7 @@ def _face(batch: Batch, end: int, energies: Floats, order: int) -> tuple[Floats,
     m_slope = m1 * bracket + np.where(bracket > 0.05, mass * (x * i1 - v1 * inverse_gap), 0.0)
     q = x / (H2M * m)
     slope = (-v1 - x * m_slope / m) / (H2M * m * m)
-    plain = ~batch.linear & np.full(q.shape, order == 1)
+    plain = batch.plain[end][:, None] & np.full(q.shape, order == 1)
     face = airy_face(q, slope, plain)
     scale = batch.bottom if end == 0 else batch.top
     level = np.broadcast_to(scale > 0, q.shape)
