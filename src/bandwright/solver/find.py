@@ -1,63 +1,75 @@
-"""All levels of one system: brackets by count, Newton for all at once, Ritz for clusters."""
+"""All levels of one system: brackets by count, then Newton for all of them at once."""
 
 from __future__ import annotations
 
+from functools import lru_cache
 from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
-from scipy.linalg import eigh
 
 from bandwright.constants import H2M
 from bandwright.errors import SolveError
-from bandwright.solver.matrix import Matrix
 from bandwright.solver.system import System, apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
+Flags = npt.NDArray[np.bool_]
 
 #: levels closer than this [eV] are refined together, as one subspace
 CLUSTER = 1e-10
-_RITZ_STEPS = 60
-_NEWTON_STEPS = 8
+_NEWTON_STEPS = 7
 _ROUNDS = 6
+# K is bent by about this much per eV: a Newton step s leaves an error of about s^2 times it [1/eV]
+_BENT = 20.0
 
 
 class Found(NamedTuple):
-    """Levels of a system, ascending: energies (n,), u at all faces (n_faces, n), clusters.
+    """Levels of a system, ascending: numbers from 0, energies (n,), rough u at the free faces.
 
-    ``u`` is normalised in the model's own product. ``cluster`` (n,) gives the number of the
-    first member for each level.
+    ``single`` says whether Newton reached the level alone; others are members of clusters.
     """
 
+    numbers: Indices
     energies: Floats
-    u: Floats
-    cluster: Indices
+    nodes: Floats
+    single: Flags
 
 
-def find(system: System, numbers: Indices, low: float, high: float) -> Found:
-    """Return the levels with these numbers (counted from 0), which lie in (low, high).
+def find(
+    system: System, low: float, high: float, skip: int, at_most: int | None, accuracy: float
+) -> Found:
+    """Return the levels between two energies.
 
     Parameters
     ----------
     system : System
-    numbers : array of int
-        Consecutive level numbers; ``count(low) <= number < count(high)`` for each.
     low, high : float
         Bounds [eV].
+    skip : int
+        Level numbers below this one are left out.
+    at_most : int or None
+        Most levels returned, from the lowest.
+    accuracy : float
+        How well the zeros of K are met [eV].
     """
+    scanned = np.linspace(low, high, 5 * _guess(system, high) + 16)
+    counts, pivots = system.count_and_pivot(scanned)
+    if (counts[1:] < counts[:-1]).any():  # rounding at a level; a count never falls
+        counts = np.maximum.accumulate(counts)
+    numbers = np.arange(max(skip, int(counts[0])), int(counts[-1]))[:at_most]
     if not len(numbers):
-        faces = len(system.slices.thickness) + 1
-        return Found(np.zeros(0), np.zeros((faces, 0)), np.zeros(0, dtype=np.int64))
-    scanned = np.linspace(low, high, 5 * len(numbers) + 16)
-    counts = np.maximum.accumulate(system.count(scanned))
+        return Found(numbers, np.zeros(0), np.zeros((system.nodes, 0)), np.zeros(0, dtype=bool))
     place = np.searchsorted(counts, numbers, side="right")
-    place = np.clip(place, 1, len(scanned) - 1)
     lows, highs = scanned[place - 1], scanned[place]
-    lows, highs = _isolate(system, numbers, lows, highs)
-    single = _single(lows, highs)
-    energies = 0.5 * (lows + highs)
-    nodes = np.zeros((system.matrix(energies[:1]).diagonal.shape[0], len(numbers)))
+    energies = _crossing(lows, highs, pivots[place - 1], pivots[place])
+    single = _alone(lows, highs)
+    if not single.all():
+        lows, highs = _isolate(system, numbers, lows, highs)
+        crowded = ~single
+        energies[crowded] = 0.5 * (lows + highs)[crowded]
+        single = _alone(lows, highs)
+    nodes = np.zeros((system.nodes, len(numbers)))
     done = np.zeros(len(numbers), dtype=bool)
     for _ in range(_ROUNDS):
         todo = np.flatnonzero(single & ~done)
@@ -66,7 +78,7 @@ def find(system: System, numbers: Indices, low: float, high: float) -> Found:
         for part in chunks(len(todo), len(nodes)):
             some = todo[part]
             energies[some], nodes[:, some], done[some] = _newton(
-                system, energies[some], lows[some], highs[some]
+                system, energies[some], lows[some], highs[some], accuracy
             )
         left = np.flatnonzero(single & ~done)
         if len(left):
@@ -76,17 +88,32 @@ def find(system: System, numbers: Indices, low: float, high: float) -> Found:
     if len(rest):
         lows[rest], highs[rest] = _bisect(system, numbers[rest], lows[rest], highs[rest], 60)
         energies[rest] = 0.5 * (lows[rest] + highs[rest])
-    cluster = _clusters(energies, CLUSTER)
-    for first in np.unique(cluster):
-        members = np.flatnonzero(cluster == first)
-        if len(members) > 1 or not done[members[0]]:
-            room = _room(energies, int(members[0]), int(members[-1]))
-            energies[members], nodes[:, members] = _ritz(system, energies[members], room)
-    return Found(energies, system.full(nodes), cluster)
+    if (energies[1:] < energies[:-1]).any():
+        worst = float(np.max(energies[:-1] - energies[1:]))
+        if worst > 1e-9:
+            raise SolveError(f"levels came out of order by {worst:g} eV; please report this stack")
+        energies = np.maximum.accumulate(energies)
+    return Found(numbers, energies, nodes, done)
 
 
-def _single(lows: Floats, highs: Floats) -> npt.NDArray[np.bool_]:
-    """Whether each bracket is apart from both neighbours' and wide enough to be a cluster's."""
+def _guess(system: System, high: float) -> int:
+    """Return about how many levels lie below ``high``, from the phase across all slices."""
+    slices = system.slices
+    above = np.maximum(high - slices.edge, 0.0)
+    wave = np.sqrt(slices.mass * (1.0 + above * slices.inverse_gap) * above)
+    return int(np.dot(wave, slices.thickness) / (np.pi * np.sqrt(H2M))) + 1
+
+
+def _crossing(lows: Floats, highs: Floats, first: Floats, last: Floats) -> Floats:
+    """Return where the last pivot's chord passes zero in each bracket, kept off its ends."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        part = first / (first - last)
+    part = np.where((part > 0.02) & (part < 0.98), part, 0.5)
+    return np.asarray(lows + part * (highs - lows))
+
+
+def _alone(lows: Floats, highs: Floats) -> Flags:
+    """Return whether each bracket shares no energies with its neighbours'."""
     alone = np.ones(len(lows), dtype=bool)
     shared = lows[1:] < highs[:-1]
     alone[1:] &= ~shared
@@ -97,12 +124,28 @@ def _single(lows: Floats, highs: Floats) -> npt.NDArray[np.bool_]:
 def _isolate(
     system: System, numbers: Indices, lows: Floats, highs: Floats
 ) -> tuple[Floats, Floats]:
-    """Halve brackets until each holds one level, or is a quarter of `CLUSTER` wide."""
-    for _ in range(80):
-        wide = ~_single(lows, highs) & (highs - lows > 0.25 * CLUSTER)
-        if not wide.any():
+    """Cut brackets that hold several levels, until each holds one or is narrower than a cluster.
+
+    Each round puts a few energies for each level into every such bracket and counts them all.
+    """
+    for _ in range(60):
+        wide = np.flatnonzero(~_alone(lows, highs) & (highs - lows > 0.25 * CLUSTER))
+        if not len(wide):
             break
-        lows[wide], highs[wide] = _bisect(system, numbers[wide], lows[wide], highs[wide], 1)
+        starts, first = np.unique(lows[wide], return_index=True)
+        stops = highs[wide][first]
+        holds = np.bincount(np.searchsorted(starts, lows[wide]), minlength=len(starts))
+        points = [
+            np.linspace(a, b, 3 * int(k) + 2)[1:-1]
+            for a, b, k in zip(starts, stops, holds, strict=True)
+        ]
+        trial = np.unique(np.concatenate(points))
+        counts = np.maximum.accumulate(system.count(trial))
+        place = np.searchsorted(counts, numbers[wide], side="right")
+        floor = np.append(-np.inf, trial)[place]
+        roof = np.append(trial, np.inf)[place]
+        lows[wide] = np.maximum(lows[wide], floor)
+        highs[wide] = np.minimum(highs[wide], roof)
     return lows, highs
 
 
@@ -119,106 +162,37 @@ def _bisect(
     return lows, highs
 
 
-def _start(nodes: int, columns: int) -> Floats:
-    """Random vectors, the same each time: a symmetric start would miss odd levels."""
-    column = np.random.default_rng(20250101).uniform(0.5, 1.5, nodes)
-    sign = np.random.default_rng(7).choice([-1.0, 1.0], nodes)
-    return np.repeat((column * sign)[:, None], columns, axis=1)
+@lru_cache(maxsize=64)
+def _random(nodes: int) -> Floats:
+    """Return a random vector, the same each time: a symmetric start would miss odd levels."""
+    rng = np.random.default_rng(20250101)
+    return np.asarray(rng.uniform(0.5, 1.5, nodes) * rng.choice([-1.0, 1.0], nodes))
 
 
 def _newton(
-    system: System, energies: Floats, lows: Floats, highs: Floats
-) -> tuple[Floats, Floats, npt.NDArray[np.bool_]]:
-    """Newton on K(E) z = 0: mu = -(z.r)/(z.K'z) with z = K^-1 r, r = K'z of the step before."""
-    energies = energies.copy()
-    matrix, slope = system.matrix_and_slope(energies)
-    z = solve_shifted(matrix, _start(len(matrix.diagonal), len(energies)))
+    system: System, energies: Floats, lows: Floats, highs: Floats, accuracy: float
+) -> tuple[Floats, Floats, Flags]:
+    """Newton on K(E) z = 0: mu = -(z.r)/(z.K'z) with z = K^-1 r, r = K'z of the step before.
+
+    Its error after a step s is about s^2 times `_BENT` plus one over the distance to the
+    neighbours. A level counts as reached if it stayed inside its bracket; a step that leaves it
+    is a sign of a neighbour's vector.
+    """
+    z = np.repeat(_random(system.nodes)[:, None], len(energies), axis=1)
+    left = np.full(len(energies), np.inf)
     inside = np.ones(len(energies), dtype=bool)
-    step = np.full(len(energies), np.inf)
-    for _ in range(_NEWTON_STEPS):
-        z /= np.max(np.abs(z), axis=0)
-        r = apply(slope, z)
-        z = solve_shifted(matrix, r)
-        step = -np.sum(z * r, axis=0) / np.sum(z * apply(slope, z), axis=0)
+    for turn in range(_NEWTON_STEPS):
+        matrix, slope = system.matrix_and_slope(energies)
+        for again in range(2 if turn == 0 else 1):
+            r = apply(slope, z) if turn or again else z
+            z = solve_shifted(matrix, r)
+        rayleigh = (z * apply(slope, z)).sum(axis=0)
+        step = -(z * r).sum(axis=0) / rayleigh
         moved = energies + step
         inside = (moved >= lows) & (moved <= highs)
         energies = np.where(inside, moved, energies)
-        small = np.abs(step) < 4e-15 * (1.0 + np.abs(energies)) + 1e-13
-        if np.all(small | ~inside):
+        z = z / np.sqrt(np.abs(rayleigh))
+        left = step * step * (_BENT + 4.0 / (highs - lows))
+        if turn and ((left < accuracy) | ~inside).all():
             break
-        matrix, slope = system.matrix_and_slope(energies)
-    norm = -H2M * np.sum(z * apply(slope, z), axis=0)
-    done = inside & (np.abs(step) < 1e-10) & (norm > 0)
-    with np.errstate(invalid="ignore"):
-        z = z / np.sqrt(np.abs(norm))
-    return energies, _signed(z), done
-
-
-def _signed(z: Floats) -> Floats:
-    """Give each vector the sign that makes its first sizeable lobe positive."""
-    large = np.abs(z) > 0.3 * np.max(np.abs(z), axis=0)
-    first = np.argmax(large, axis=0)
-    return np.asarray(z * np.sign(z[first, np.arange(z.shape[1])]))
-
-
-def _clusters(energies: Floats, width: float) -> Indices:
-    """Return the first member's number of each level's cluster, neighbours within ``width``."""
-    starts = np.concatenate(([True], np.diff(energies) > width))
-    return np.asarray(np.flatnonzero(starts)[np.cumsum(starts) - 1], dtype=np.int64)
-
-
-def _room(energies: Floats, first: int, last: int) -> float:
-    """Return how far the nearest level outside first..last is; at least `CLUSTER`."""
-    below = energies[first] - energies[first - 1] if first else 1e-6
-    above = energies[last + 1] - energies[last] if last + 1 < len(energies) else 1e-6
-    return float(max(CLUSTER, min(below, above)))
-
-
-def _ritz(system: System, energies: Floats, room: float) -> tuple[Floats, Floats]:
-    """Refine a cluster: block inverse iterations with -K' as mass, then a small eigenproblem.
-
-    ``room`` is the distance to the nearest level outside the cluster [eV]. The shift stands just
-    below the cluster, so that K is linear in E across it and the members grow alike.
-    """
-    size = len(energies)
-    spread = float(energies[-1] - energies[0])
-    shift = float(energies[0]) - 0.5 * spread - min(1e-10, 0.1 * room)
-    matrix, slope = (_repeat(m, size) for m in system.matrix_and_slope(np.array([shift])))
-    z = np.random.default_rng(11).uniform(-1.0, 1.0, (len(matrix.diagonal), size))
-    before = np.full(size, np.inf)
-    mu = np.zeros(size)
-    for _ in range(_RITZ_STEPS):
-        z = solve_shifted(matrix, -apply(slope, z))
-        z = _orthonormal(z, -apply(slope, z))
-        small = z.T @ apply(matrix, z)
-        mass = -(z.T @ apply(slope, z))
-        mu, mix = eigh(0.5 * (small + small.T), 0.5 * (mass + mass.T))
-        z = z @ mix
-        if np.max(np.abs(mu - before)) < 1e-16 + 1e-3 * spread:
-            break
-        before = mu
-    if np.max(np.abs(shift + mu - energies)) > 1e-11:
-        raise SolveError(
-            f"{size} levels near {energies[0]:.9f} eV could not be told apart from each other and"
-            " from their neighbours"
-        )
-    return np.asarray(shift + mu), _signed(z / np.sqrt(H2M))
-
-
-def _repeat(matrix: Matrix, size: int) -> Matrix:
-    """Return one energy's matrix once for each vector."""
-    return Matrix(
-        np.repeat(matrix.diagonal, size, axis=1),
-        np.repeat(matrix.off, size, axis=1),
-        np.repeat(matrix.clamped, size),
-    )
-
-
-def _orthonormal(z: Floats, mz: Floats) -> Floats:
-    """Orthonormalise columns in the product z.Mz, twice for stability."""
-    gram = z.T @ mz
-    scale = 1.0 / np.sqrt(np.diag(gram))
-    gram = gram * scale[:, None] * scale
-    values, vectors = eigh(0.5 * (gram + gram.T))
-    values = np.maximum(values, 1e-14)
-    return np.asarray((z * scale) @ (vectors / np.sqrt(values)))
+    return energies, z, inside & (left < accuracy)

@@ -16,6 +16,8 @@ import numpy as np
 import numpy.typing as npt
 
 Floats = npt.NDArray[np.float64]
+#: keeps 0/0 out of the recursion where a thick barrier's coupling underflows
+_TINY = 1e-290
 Counts = npt.NDArray[np.int64]
 
 
@@ -64,19 +66,15 @@ def assemble(elements: Elements, first: Floats | None, last: Floats | None) -> M
     """
     left, right, off, clamped = elements
     n, energies = left.shape
-    diagonal = np.zeros((n + 1, energies))
-    diagonal[:-1] += left
-    diagonal[1:] += right
-    joint = -off
-    if last is None:
-        diagonal, joint = diagonal[:-1], joint[:-1]
-    else:
-        diagonal[-1] += last
-    if first is None:
-        diagonal, joint = diagonal[1:], joint[1:]
-    else:
-        diagonal[0] += first
-    return Matrix(diagonal, joint, clamped.sum(axis=0))
+    start, stop = int(first is None), n + int(last is not None)
+    diagonal = np.empty((n + 1, energies))
+    np.add(right[:-1], left[1:], out=diagonal[1:-1])
+    if first is not None:
+        np.add(left[0], first, out=diagonal[0])
+    if last is not None:
+        np.add(right[-1], last, out=diagonal[-1])
+    total = clamped.sum(axis=0) if clamped.strides[0] else clamped[0]
+    return Matrix(diagonal[start:stop], -off[start : stop - 1], total)
 
 
 def count_below(matrix: Matrix) -> Counts:
@@ -85,15 +83,25 @@ def count_below(matrix: Matrix) -> Counts:
     Pivots by the sequential recursion with IEEE infinities, which is backward stable
     (Demmel, Dhillon, Ren, ETNA 3, 116, 1995).
     """
+    return count_and_pivot(matrix)[0]
+
+
+def count_and_pivot(matrix: Matrix) -> tuple[Counts, Floats]:
+    """Return the count below each energy and the last pivot, which passes zero at each level.
+
+    The last pivot is the mismatch of a march from the first face to the last one.
+    """
     diagonal, off, clamped = matrix
-    total = clamped.astype(np.int64)
     if not len(diagonal):
-        return total
-    squares = off * off
-    with np.errstate(divide="ignore", over="ignore", invalid="ignore"):
-        pivot = diagonal[0].copy()
-        total += np.signbit(pivot)
+        return clamped.astype(np.int64), np.ones(clamped.shape)
+    squares = np.maximum(off * off, _TINY)
+    pivot = diagonal[0].copy()
+    negative = np.signbit(pivot)
+    total = clamped + negative
+    with np.errstate(divide="ignore", over="ignore"):
         for row in range(1, len(diagonal)):
-            pivot = diagonal[row] - squares[row - 1] / pivot
-            total += np.signbit(pivot)
-    return total
+            np.divide(squares[row - 1], pivot, out=pivot)
+            np.subtract(diagonal[row], pivot, out=pivot)
+            np.signbit(pivot, out=negative)
+            total += negative
+    return total, pivot

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
@@ -12,6 +12,7 @@ from bandwright.errors import SolveError
 from bandwright.profile import Profile
 from bandwright.solver.find import Found, find
 from bandwright.solver.need import MOST_SLICES, needed
+from bandwright.solver.polish import polish
 from bandwright.solver.slices import cut
 from bandwright.solver.states import States
 from bandwright.solver.system import System, apply, chunks, solve_shifted
@@ -30,20 +31,19 @@ class Solution:
     ----------
     system : System
         The slices the levels were found on.
-    numbers : array of int
-        Level numbers counted from 0 in this system.
     found : Found
-        Energies [eV], states at the faces, clusters.
+        Numbers from 0, energies [eV] and rough states.
     error : array (n_levels,)
         Estimate of each energy's discretisation error [eV].
     count_checked : array of bool
         Whether the counts on halved slices agree around each level.
+    complete : bool
+        Whether they agree at the bounds as well.
     low, high : float
         Bounds [eV] between which the set is complete if ``complete``.
     """
 
     system: System
-    numbers: Indices
     found: Found
     error: Floats
     count_checked: npt.NDArray[np.bool_]
@@ -53,6 +53,11 @@ class Solution:
     tolerance: float
 
     @property
+    def numbers(self) -> Indices:
+        """Level numbers, counted from 0 in this system."""
+        return self.found.numbers
+
+    @property
     def energies(self) -> Floats:
         """Energies [eV], ascending."""
         return self.found.energies
@@ -60,7 +65,7 @@ class Solution:
     @cached_property
     def states(self) -> States:
         """The states of all levels."""
-        return States(self.system, self.found.energies, self.found.u)
+        return States(self.system, *polish(self.system, self.found))
 
     def dipoles(self) -> Floats:
         """Return the matrix elements of z [nm], (n_levels, n_levels)."""
@@ -114,25 +119,29 @@ def solve_profile(
     if high is None:
         raise SolveError("the highest energy asked is missing; give high")
     floor = lowest_edge(profile) if low is None else low
-    high = max(high, floor + tolerance)
-    numbers, top = _wanted(System(cut(profile, needed(profile, high, 1e-4)), ends),
-                           floor, high, at_most, skip)  # fmt: skip
+    top = high = max(high, floor + tolerance)
+    if at_most is not None:
+        top = _top(System(cut(profile, needed(profile, high, 1e-4)), ends), floor, high,
+                   at_most + skip)  # fmt: skip
     counts = needed(profile, top, tolerance)
-    flat = np.array([s.flat for s in profile.sections])
+    flat = profile.numbers.flat
+    exact = bool(flat.all())
+    accuracy = min(1e-3 * tolerance, 1e-9)
     for _ in range(_ATTEMPTS):
         if counts.sum() > MOST_SLICES:
             break
         system = System(cut(profile, counts), ends)
-        fine = system.halved()
-        first, last = system.count([floor, top])
-        numbers = np.arange(max(skip, first), last)
-        if at_most is not None:
-            numbers = numbers[:at_most]
-        found = find(system, numbers, floor, top)
-        error = np.zeros(len(numbers)) if flat.all() else _halving_error(fine, found)
-        worst = float(np.max(error, initial=0.0))
+        fine = system if exact else system.halved()
+        found = find(system, floor, top, skip, at_most, accuracy)
+        error = np.zeros(len(found.numbers)) if exact else _halving_error(fine, found)
+        worst = float(error.max(initial=0.0))
         if worst <= 0.5 * tolerance:
-            return _certified(system, fine, numbers, found, error, floor, top, high, tolerance)
+            cut_short = at_most is not None and len(found.numbers) == at_most
+            solution = _certified(system, fine, found, error, floor, high, cut_short, tolerance)
+            if solution.complete or accuracy < 1e-13:
+                return solution
+            accuracy = 1e-14  # a Newton stopped too soon would show here: go on to rounding
+            continue
         grow = max(1.3, 1.15 * (worst / (0.4 * tolerance)) ** (1 / 6))
         counts = np.where(flat, counts, np.ceil(counts * min(grow, 4.0)).astype(np.int64))
     raise SolveError(
@@ -144,84 +153,76 @@ def solve_profile(
 
 def lowest_edge(profile: Profile) -> float:
     """Return an energy [eV] below every level: the lowest edge, less a hair."""
-    least = np.inf
-    for section in profile.sections:
-        points = np.linspace(0.0, section.thickness, 3 if section.tilted else 65)
-        values = section.edge.at(points)
-        least = min(least, float(values.min()))
-        if not section.tilted:
-            least -= float(np.max(np.abs(np.diff(values)))) * 0.25
+    numbers = profile.numbers
+    least = float(numbers.lowest.min())
+    for index in np.flatnonzero(numbers.curved):
+        section = profile.sections[index]
+        values = section.edge.at(np.linspace(0.0, section.thickness, 65))
+        least = min(least, float(values.min() - np.max(np.abs(np.diff(values))) * 0.25))
     return least - 1e-9
 
 
-def _wanted(
-    system: System, low: float, high: float, at_most: int | None, skip: int
-) -> tuple[Indices, float]:
-    """Return the numbers of the levels asked, and an energy just above the last of them."""
-    first, last = (int(n) for n in system.count([low, high]))
-    numbers = np.arange(max(skip, first), last)
-    if at_most is None or len(numbers) <= at_most:
-        return numbers, high
-    numbers = numbers[:at_most]
+def _top(system: System, low: float, high: float, wanted: int) -> float:
+    """Return an energy above the level of this number, not far, or ``high``."""
+    if system.count([high])[0] <= wanted:
+        return high
     bottom, top = low, high
     while top - bottom > 0.02 * (top - low):
         middle = 0.5 * (bottom + top)
-        if system.count([middle])[0] > numbers[-1] + 1:
+        if system.count([middle])[0] > wanted:
             top = middle
         else:
             bottom = middle
-    return numbers, top
+    return top
 
 
 def _halving_error(fine: System, found: Found) -> Floats:
     """Estimate each error from one Rayleigh step on slices half as thick (factor 64/63)."""
     error = np.empty(len(found.energies))
-    for part in chunks(len(error), len(fine.slices.thickness)):
+    for part in chunks(len(error), len(fine.slices)):
         matrix, slope = fine.matrix_and_slope(found.energies[part])
-        z = _refine(fine, found.u[:, part], matrix.diagonal.shape[0])
+        z = _refine(fine, found.nodes[:, part])
         for _ in range(2):
-            z /= np.max(np.abs(z), axis=0)
             r = apply(slope, z)
             z = solve_shifted(matrix, r)
+            z, r = z / np.max(np.abs(z), axis=0), r / np.max(np.abs(z), axis=0)
         error[part] = np.abs(np.sum(z * r, axis=0) / np.sum(z * apply(slope, z), axis=0))
     return error * 64.0 / 63.0
 
 
-def _refine(fine: System, u: Floats, nodes: int) -> Floats:
-    """Carry u at the coarse faces to the free faces of halved slices, midpoints by the mean."""
+def _refine(fine: System, nodes: Floats) -> Floats:
+    """Carry u at the coarse free faces to those of halved slices, midpoints by the mean."""
+    first, last = (int(end == "wall") for end in fine.ends)
+    u = np.pad(nodes, [(first, last), (0, 0)])
     full = np.empty((2 * len(u) - 1, u.shape[1]))
     full[::2] = u
     full[1::2] = 0.5 * (u[:-1] + u[1:])
-    start = int(fine.ends[0] == "wall")
-    return full[start : start + nodes]
+    return np.asarray(full[first : len(full) - last])
 
 
 def _certified(
-    system: System, fine: System, numbers: Indices, found: Found, error: Floats,
-    low: float, top: float, high: float, tolerance: float,
+    system: System, fine: System, found: Found, error: Floats, low: float, high: float,
+    cut_short: bool, tolerance: float,
 ) -> Solution:  # fmt: skip
     """Count on halved slices below and above each level or cluster, and at both bounds."""
-    energies = found.energies
-    cut_short = top < high  # at_most: levels above the last one are known and left out
-    upper = float(energies[-1] + tolerance) if cut_short and len(energies) else high
-    at_low, under, over = fine.count([low, upper - tolerance, upper + tolerance])
-    past = numbers[-1] + 1 if len(numbers) else at_low
-    bounded = at_low <= (numbers[0] if len(numbers) else past) and under <= past <= over
+    energies, numbers = found.energies, found.numbers
     if not len(energies):
-        return Solution(system, numbers, found, error, np.zeros(0, dtype=bool),
-                        bool(bounded), low, upper, tolerance)  # fmt: skip
-    starts = np.concatenate(([True], np.diff(energies) > 2.0 * tolerance))
-    group = np.cumsum(starts) - 1
+        at_low, under = fine.count([low, high - tolerance])
+        none = np.zeros(0, dtype=bool)
+        return Solution(system, found, error, none, bool(under <= at_low), low, high, tolerance)
+    starts = np.empty(len(energies), dtype=bool)
+    starts[0] = True
+    np.greater(energies[1:] - energies[:-1], 2.0 * tolerance, out=starts[1:])
     firsts = np.flatnonzero(starts)
-    lasts = np.concatenate((firsts[1:], [len(energies)])) - 1
-    below = fine.count(energies[firsts] - tolerance)
-    above = fine.count(energies[lasts] + tolerance)
-    good = (below == numbers[firsts]) & (above == numbers[lasts] + 1)
-    checked = good[group]
+    lasts = np.append(firsts[1:], len(energies)) - 1
+    upper = float(energies[-1]) + tolerance if cut_short else high
+    asked = np.concatenate((energies[firsts] - tolerance, energies[lasts] + tolerance,
+                            [low, upper - tolerance, upper + tolerance]))  # fmt: skip
+    counted = fine.count(asked)
+    groups = len(firsts)
+    good = (counted[:groups] == numbers[firsts]) & (counted[groups:-3] == numbers[lasts] + 1)
+    checked = good[np.cumsum(starts) - 1]
+    at_low, under, over = counted[-3:]
+    bounded = at_low <= numbers[0] and under <= numbers[-1] + 1 <= over
     complete = bool(checked.all() and bounded)
-    return Solution(system, numbers, found, error, checked, complete, low, upper, tolerance)
-
-
-def with_ends(profile: Profile, ends: tuple[str, str]) -> Profile:
-    """Return the profile between other ends."""
-    return replace(profile, ends=ends)
+    return Solution(system, found, error, checked, complete, low, upper, tolerance)

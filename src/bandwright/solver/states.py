@@ -100,15 +100,14 @@ class States:
         """What each open end's outside holds."""
         tails = []
         faces = self.system.slices.faces
-        for outside, row, position, sign in zip(
-            self.system.outside(self.energies), (0, -1), (faces[0], faces[-1]), (-1.0, 1.0),
-            strict=True,
-        ):  # fmt: skip
-            if outside is not None:
-                over, _, kappa = outside
+        for end, row, position, sign in zip(
+            self.system.outside, (0, -1), (faces[0], faces[-1]), (-1.0, 1.0), strict=True
+        ):
+            if end is not None:
+                kappa, mass = end.decay(self.energies)
                 u = self.u[row]
-                tails.append(_Tail(float(position), sign, np.maximum(kappa, 1e-9), u,
-                                   -sign * over * u))  # fmt: skip
+                p = -sign * kappa / mass * u
+                tails.append(_Tail(float(position), sign, np.maximum(kappa, 1e-9), u, p))
         return tuple(tails)
 
     @cached_property

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -10,11 +12,44 @@ from scipy.linalg.lapack import dgtsv
 
 from bandwright.constants import H2M
 from bandwright.profile import Section
-from bandwright.solver.matrix import Counts, Matrix, assemble, count_below
+from bandwright.solver.matrix import Counts, Matrix, assemble, count_and_pivot
 from bandwright.solver.propagation import local_mass
 from bandwright.solver.slices import Slices
 
 Floats = npt.NDArray[np.float64]
+
+
+class OpenEnd(NamedTuple):
+    """An outer layer that never ends: edge [eV], mass, inverse gap [1/eV] of its outer face."""
+
+    edge: float
+    mass: float
+    inverse_gap: float
+
+    def decay(self, energies: Floats) -> tuple[Floats, Floats]:
+        """Return kappa [1/nm] and the mass m(E), below the edge (kappa = 0 above it)."""
+        local, _ = self._mass(energies)
+        return np.sqrt(local * np.maximum(self.edge - energies, 0.0) / H2M), local
+
+    def value(self, energies: Floats) -> Floats:
+        """Return kappa/m, which the end adds to K."""
+        local, _ = self._mass(energies)
+        return np.asarray(np.sqrt(np.maximum(self.edge - energies, 0.0) / (H2M * local)))
+
+    def value_and_slope(self, energies: Floats) -> tuple[Floats, Floats]:
+        """Return kappa/m and its derivative by E."""
+        local, b = self._mass(energies)
+        below = np.maximum(self.edge - energies, 1e-150)
+        over = np.sqrt(below / (H2M * local))
+        slope = -0.5 * over * (1.0 / below + b / local)
+        return over, np.where(below > 1e-150, slope, 0.0)
+
+    def _mass(self, energies: Floats) -> tuple[Floats, Floats]:
+        if self.inverse_gap == 0.0:
+            return np.full_like(energies, self.mass), np.zeros_like(energies)
+        return local_mass(
+            energies, np.array(self.edge), np.array(self.mass), np.array(self.inverse_gap)
+        )
 
 
 @dataclass(frozen=True)
@@ -28,35 +63,44 @@ class System:
         """Return the same system on slices half as thick."""
         return System(self.slices.halved(), self.ends)
 
+    @cached_property
+    def outside(self) -> tuple[OpenEnd | None, OpenEnd | None]:
+        """What lies beyond both ends; None is a wall."""
+        sections = self.slices.profile.sections
+        return (
+            _open_end(sections[0], 0.0) if self.ends[0] == "open" else None,
+            _open_end(sections[-1], sections[-1].thickness) if self.ends[1] == "open" else None,
+        )
+
+    @property
+    def nodes(self) -> int:
+        """Number of free faces."""
+        return len(self.slices) + 1 - self.ends.count("wall")
+
     def matrix(self, energies: Floats) -> Matrix:
         """Return K at each energy [eV]."""
-        first, last = self.outside(energies)
-        return assemble(self.slices.elements(energies), _value(first), _value(last))
+        first, last = (e and e.value(energies) for e in self.outside)
+        return assemble(self.slices.elements(energies), first, last)
 
     def matrix_and_slope(self, energies: Floats) -> tuple[Matrix, Matrix]:
         """Return K and its exact derivative by E at each energy."""
         value, slope = self.slices.elements_and_slopes(energies)
-        first, last = self.outside(energies)
-        return (
-            assemble(value, _value(first), _value(last)),
-            assemble(slope, _slope(first), _slope(last)),
+        first, last = (
+            (None, None) if end is None else end.value_and_slope(energies) for end in self.outside
         )
+        return assemble(value, first[0], last[0]), assemble(slope, first[1], last[1])
 
     def count(self, energies: npt.ArrayLike) -> Counts:
         """Return the number of levels below each energy."""
-        energies = np.atleast_1d(np.asarray(energies, dtype=float))
-        total = np.empty(energies.shape, dtype=np.int64)
-        for part in chunks(len(energies), len(self.slices.thickness)):
-            total[part] = count_below(self.matrix(energies[part]))
-        return total
+        return self.count_and_pivot(np.asarray(energies, dtype=float))[0]
 
-    def outside(self, energies: Floats) -> tuple[Outside, Outside]:
-        """Return kappa/m of both open ends with its slope and kappa; None at a wall."""
-        sections = self.slices.profile.sections
-        return (
-            _outside(self.ends[0], sections[0], 0.0, energies),
-            _outside(self.ends[1], sections[-1], sections[-1].thickness, energies),
-        )
+    def count_and_pivot(self, energies: Floats) -> tuple[Counts, Floats]:
+        """Return the number of levels below each energy, and the last pivot of K there."""
+        parts = chunks(len(energies), len(self.slices))
+        if len(parts) == 1:
+            return count_and_pivot(self.matrix(energies))
+        found = [count_and_pivot(self.matrix(energies[part])) for part in parts]
+        return np.concatenate([c for c, _ in found]), np.concatenate([p for _, p in found])
 
     def full(self, nodes: Floats) -> Floats:
         """Return u at every face from u at the free faces (zero at walls)."""
@@ -64,30 +108,12 @@ class System:
         return np.pad(nodes, pad)
 
 
-Outside = tuple[Floats, Floats, Floats] | None
-
-
-def _value(outside: Outside) -> Floats | None:
-    return None if outside is None else outside[0]
-
-
-def _slope(outside: Outside) -> Floats | None:
-    return None if outside is None else outside[1]
-
-
-def _outside(end: str, section: Section, depth: float, energies: Floats) -> Outside:
-    """kappa/m(E), its derivative by E, and kappa, of an outer layer that never ends."""
-    if end == "wall":
-        return None
+def _open_end(section: Section, depth: float) -> OpenEnd:
     place = np.array([depth])
-    edge, mass, gap = (c.at(place)[0] for c in (section.edge, section.mass, section.inverse_gap))
-    local, b = local_mass(energies, edge, mass, gap)
-    below = np.maximum(edge - energies, 0.0)
-    kappa = np.sqrt(local * below / H2M)
-    over = kappa / local
-    safe = np.maximum(kappa, 1e-150)
-    slope = (b * below - local) / (2.0 * H2M * safe * local) - over * b / local
-    return over, np.where(below > 0, slope, 0.0), kappa
+    edge, mass, inverse_gap = (
+        float(c.at(place)[0]) for c in (section.edge, section.mass, section.inverse_gap)
+    )
+    return OpenEnd(edge, mass, inverse_gap)
 
 
 def chunks(columns: int, rows: int, cells: int = 2_000_000) -> list[slice]:
@@ -110,7 +136,7 @@ def solve_shifted(matrix: Matrix, right: Floats) -> Floats:
     if info > 0:  # an exact singularity: the next float is as good a shift
         nudged = Matrix(np.nextafter(matrix.diagonal, np.inf), matrix.off, matrix.clamped)
         return solve_shifted(nudged, right)
-    return np.ascontiguousarray(np.asarray(z).reshape(m, n).T)
+    return np.asarray(z).reshape(m, n).T
 
 
 def apply(matrix: Matrix, z: Floats) -> Floats:
