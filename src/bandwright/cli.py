@@ -207,6 +207,9 @@ def _stack(text: str, args: argparse.Namespace) -> Stack:
 
     names = ("field", "bias", "electrons_run", "temperature", "substrate", "zero")
     changes: dict[str, Any] = {n: getattr(args, n) for n in names if getattr(args, n) is not None}
+    for one, other in (("field", "bias"), ("bias", "field")):
+        if one in changes:
+            changes.setdefault(other, None)  # the one asked for takes the other's place
     if args.materials:
         changes["materials"] = tuple(args.materials)
     return read_any(text, **changes)

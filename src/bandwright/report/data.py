@@ -18,6 +18,9 @@ if TYPE_CHECKING:
 
 Columns = dict[str, list[Any]]
 
+#: columns of counts and level numbers
+WHOLE = {"copies", "design", "level", "levels", "lower", "upper"}
+
 
 def plain(value: Any) -> Any:
     """Return a value as JSON knows it; what is not there is None, never NaN."""
@@ -27,9 +30,15 @@ def plain(value: Any) -> Any:
 
 
 def columns_of(table: Any) -> Columns:
-    """Return column name -> plain values of a DataFrame, its index first if it has a name."""
+    """Return column name -> plain values of a DataFrame, its index first if it has a name.
+
+    Counts and level numbers are whole, also where a gap in their column made pandas' floats.
+    """
     flat = table.reset_index() if any(table.index.names) else table
-    return {str(name): [plain(v) for v in flat[name].tolist()] for name in flat.columns}
+    columns = {str(name): [plain(v) for v in flat[name].tolist()] for name in flat.columns}
+    for name in WHOLE & columns.keys():
+        columns[name] = [int(v) if isinstance(v, float) else v for v in columns[name]]
+    return columns
 
 
 def rows_of(columns: Columns) -> list[dict[str, Any]]:

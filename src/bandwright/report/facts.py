@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from ..errors import BandwrightError
-from ..quantities import temperature_text
+from ..quantities import field_text, temperature_text, voltage_text
 from ..stackline import line_text
 
 if TYPE_CHECKING:
@@ -69,11 +69,31 @@ def direction(levels: Levels) -> str:
     return f"run {way}" if way.startswith("to ") else way
 
 
+def drive(stack: Stack) -> str:
+    """Return what drives the electrons of a stack that is not solved yet, and where.
+
+    Examples
+    --------
+    >>> from bandwright.stackline import parse_line
+    >>> drive(parse_line("6.2 nm GaAs", field="12 kV/cm"))
+    'electrons run to the substrate (12 kV/cm)'
+    """
+    if stack.signed_field:
+        side = "substrate" if stack.signed_field > 0.0 else "surface"
+        return f"electrons run to the {side} ({field_text(abs(stack.signed_field))})"
+    if stack.signed_bias:
+        side = "surface" if stack.signed_bias > 0.0 else "substrate"
+        return f"electrons run to the {side} ({voltage_text(abs(stack.signed_bias))})"
+    return "no field"
+
+
 def completeness(levels: Levels) -> str:
     """Return how many levels there are, between which bounds, and whether any may be missing."""
-    low, high = (f"{1e3 * bound:.1f} meV" for bound in levels.bounds)
+    low, high = (f"{1e3 * bound:.1f} meV".replace("-0.0 ", "0.0 ") for bound in levels.bounds)
     count = len(levels.energies)
     noun = "level" if count == 1 else "levels"
+    if levels.method != "shooting":
+        return f"{count} {noun} below {high} by the {levels.method} alone, none counted"
     proof = "none missing by count" if levels.complete else "the counts do not prove it complete"
     return f"{count} {noun} between {low} and {high}, {proof}"
 

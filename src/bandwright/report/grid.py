@@ -35,8 +35,11 @@ NARROW = 11  # no heading is wrapped to less
 DIGITS = {
     "energy_meV": ".3f",
     "phase_integral_meV": ".3f",
-    "difference_meV": ".2g",
-    "wall_shift_meV_per_nm": ".2g",
+    "difference_meV": "#.2g",
+    "largest_difference_meV": "#.2g",
+    "wall_shift_meV_per_nm": "#.2g",
+    "shift_meV": "+.3f",
+    "shift_um": "+.4f",
     "probability": ".3f",
     "mean_position_nm": ".2f",
     "spread_nm": ".2f",
@@ -90,8 +93,8 @@ def cell(name: str, value: Any, digits: Mapping[str, str] = DIGITS) -> str:
     number = float(value)
     if math.isnan(number):
         return "-"
-    text = format(number, digits.get(name, ".6g"))
-    return text.removeprefix("-") if float(text) == 0.0 else text
+    text = format(number, digits.get(name, ".6g")).removesuffix(".")
+    return text.lstrip("+-") if float(text) == 0.0 else text
 
 
 def grid(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGITS) -> list[str]:
@@ -121,8 +124,8 @@ def grid(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGIT
         longest = max((len(c) for c in cells), default=0)
         title = wrap(words, max(longest, NARROW)) or [""]
         width = max(longest, len(unit), *(len(line) for line in title))
-        words_only = all(isinstance(value, str | None) for value in values)
-        fit = str.ljust if words_only else str.rjust
+        of_words = not unit and all(isinstance(value, str | None) for value in values)
+        fit = str.ljust if of_words else str.rjust
         blocks.append([fit(text, width) for text in [*title, unit, *cells]])
     height = max(len(block) for block in blocks)
     for block in blocks:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable, Sequence
 from textwrap import wrap
 from typing import TYPE_CHECKING
 
 from .data import Columns, columns_of
-from .facts import SAFETY, Fact, facts, grown, held_at
+from .facts import SAFETY, Fact, drive, facts, grown, held_at
 from .grid import DIGITS, grid
 from .known import COMMON_SCALE, Known
 
@@ -38,9 +39,25 @@ def paragraph(label: str, text: str) -> list[str]:
     return [f"{'' if i else label:<{LABEL}}{line}" for i, line in enumerate(lines)]
 
 
+def layers(label: str, line: str) -> list[str]:
+    """Return a line of layers wrapped behind a label, only between layers.
+
+    Examples
+    --------
+    >>> layers("grown", "9 nm AlAs, 8 nm {edge 0.2 eV, mass 0.1}")
+    ['grown      9 nm AlAs, 8 nm {edge 0.2 eV, mass 0.1}']
+    """
+    kept = re.sub(r"(?<!,) |, (?=[^{]*})", lambda found: found[0].replace(" ", "\0"), line)
+    return [text.replace("\0", " ") for text in paragraph(label, kept)]
+
+
 def sheet(labelled: Iterable[Fact]) -> list[str]:
     """Return one paragraph a fact."""
-    return [line for label, text in labelled for line in paragraph(label, text)]
+    return [
+        line
+        for label, text in labelled
+        for line in (layers if label == "grown" else paragraph)(label, text)
+    ]
 
 
 def page(*blocks: Sequence[str]) -> str:
@@ -91,7 +108,7 @@ def level_notes(levels: Levels) -> list[Fact]:
 
 def levels_text(levels: Levels) -> str:
     """Return the levels with what was solved above and the cautions below."""
-    table = grid(*level_columns(levels)) if len(levels.table) else []
+    table = grid(*level_columns(levels)) if len(levels.table) else ["no level"]
     return page(sheet(facts(levels)), table, sheet(level_notes(levels)))
 
 
@@ -101,7 +118,9 @@ def budget_text(lines: Lines) -> list[str]:
     if line is None:
         return []
     head = f"what moves {line.name}, {line.wavelength_um:.4f} um:"
-    return [head, *grid(columns_of(lines.error_budget(line)))]
+    columns = columns_of(lines.error_budget(line))
+    columns.pop("sentence")  # says in words what its row says in numbers
+    return [head, *grid(columns)]
 
 
 def lines_text(lines: Lines) -> str:
@@ -117,8 +136,20 @@ def lines_notes(lines: Lines) -> list[str]:
 
 def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
     """Return designs side by side, what each is above."""
-    legend = sheet((stack.name or f"stack {n}", grown(stack)) for n, stack in enumerate(stacks, 1))
-    return page(legend, grid(columns))
+    legend = []
+    for number, stack in enumerate(stacks, 1):
+        said = (stack.name or "without a name", drive(stack))
+        held = held_at(stack.temperature, stack.substrate)
+        legend += paragraph(f"design {number}", f"{': '.join(said)}; {held}")
+        legend += layers("", grown(stack))
+    reasons = columns.get("reason", [])
+    failed = [(f"design {n}", f"failed: {why}") for n, why in enumerate(reasons, 1) if why]
+    shown = {
+        name: cells
+        for name, cells in columns.items()
+        if name not in ("name", "reason") and any(value is not None for value in cells)
+    }
+    return page(legend, grid(shown), sheet(failed))
 
 
 def materials_text(found: Known) -> str:

@@ -1,0 +1,56 @@
+"""The text of each command, letter by letter.
+
+After a wanted change: ``pytest tests/cli --rewrite-golden``, then read every difference.
+"""
+
+from pathlib import Path
+
+import pytest
+
+GOLDEN = Path(__file__).parent / "golden"
+
+CASES = {
+    "levels": ["levels", "demo/detector-well.toml"],
+    "levels-graded": ["levels", "demo/graded-well.toml"],
+    "levels-in-a-field": ["levels", "demo/emitter-period.toml"],
+    "levels-fine": ["levels", "demo/graded-well.toml", "--tolerance", "1e-9 eV", "--one-band"],
+    "levels-phase-integral": ["levels", "demo/graded-well.toml", "--method", "phase-integral"],
+    "levels-none": ["levels", "5 nm GaAs, 5 nm Al0.3Ga0.7As, 5 nm GaAs", "--substrate", "GaAs"],
+    "lines": ["lines", "demo/detector-well.toml"],
+    "lines-in-a-field": ["lines", "demo/emitter-period.toml", "--window", "8 um", "12 um"],
+    "compare": ["compare", "demo/detector-well.toml", "demo/graded-well.toml",
+                "demo/emitter-period.toml"],
+    "materials": ["materials"],
+    "materials-formulas": ["materials", "In0.53Ga0.47As", "InP", "--substrate", "InP",
+                           "--temperature", "77 K"],
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_text(name, run, root, monkeypatch, request):
+    monkeypatch.chdir(root)
+    status, out, err = run(*CASES[name])
+    assert (status, err) == (0, "")
+    path = GOLDEN / f"{name}.txt"
+    if request.config.getoption("--rewrite-golden"):
+        path.write_text(out, encoding="utf-8")
+    assert out == path.read_text(encoding="utf-8")
+
+
+def test_no_golden_text_is_left_over():
+    assert {path.stem for path in GOLDEN.glob("*.txt")} == set(CASES)
+
+
+@pytest.mark.parametrize("name", [n for n in CASES if n.startswith(("levels", "lines"))])
+def test_the_first_line_says_which_way_electrons_run(name):
+    first = (GOLDEN / f"{name}.txt").read_text(encoding="utf-8").splitlines()[0]
+    assert first.startswith("electrons  ")
+
+
+@pytest.mark.parametrize("name", [n for n in CASES if n.startswith("lines")])
+def test_lines_end_with_the_safety_line(name):
+    text = (GOLDEN / f"{name}.txt").read_text(encoding="utf-8")
+    last = text[text.index("safety     ") :]
+    assert "can injure eyes" in last
+    assert "laser-safety officer" in last and "IEC 60825-1" in last
+    assert "\n\n" not in last
