@@ -1,6 +1,8 @@
 """Layers, groups and stacks: what is stored, what is equal, and what can't be grown."""
 
+import copy
 import dataclasses
+import multiprocessing
 import os
 import pickle
 import re
@@ -463,3 +465,10 @@ def test_a_million_layers_and_no_more():
     with refused("1,000,000,000,000 grown layers; at most 1,000,000 can be grown: lower the times"
                  " of its groups"):  # fmt: skip
         Stack([Repeat(1_000_000, [Repeat(1_000_000, [WELL])])])
+
+
+def test_stacks_travel_to_spawned_processes():
+    stack = Stack([BARRIER, Repeat(2, [WELL, OWN])], zero="GaAs", field="12 kV/cm")
+    with multiprocessing.get_context("spawn").Pool(1) as pool:
+        assert pool.apply(copy.copy, (stack,)) == stack
+        assert pool.apply(repr, (stack,)) == repr(stack)
