@@ -65,7 +65,8 @@ def test_cell(name, value, shown):
 
 
 def test_every_unit_suffix_of_our_tables_is_known(flat, curved):
-    tables = [flat.table, flat.lines().table, flat.lines().error_budget(), bw.compare([curved.stack])]
+    lines = flat.lines()
+    tables = [flat.table, lines.table, lines.error_budget(), bw.compare([curved.stack])]
     names = {str(name) for table in tables for name in table.columns}
     bare = {name for name in names if not grid.unit_of(name)[1]}
     assert bare == {
