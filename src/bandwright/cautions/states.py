@@ -68,7 +68,7 @@ def boxes(levels: Levels) -> list[str]:
 
 def clusters(levels: Levels) -> list[str]:
     """Return sets of levels that are too close to be told apart singly."""
-    sets: list[str] = []
+    texts = []
     first = 0
     for part in levels.parts:
         if part.solution is not None and len(part.energies):
@@ -76,77 +76,93 @@ def clusters(levels: Levels) -> list[str]:
             near = np.diff(part.energies) < TOLD_APART * np.maximum(error[1:], error[:-1])
             label = np.concatenate(([0], np.cumsum(~near)))
             for _, members in groupby(range(len(label)), key=lambda i: int(label[i])):
-                numbers = np.array(list(members)) + first + 1
+                numbers = [index + first for index in members]
                 if len(numbers) > 1:
-                    sets.append(numbered(numbers))
+                    texts.append(_mixed(levels, numbers))
         first += len(part.energies)
-    return [
-        f"{listed(sets)} are too close to be told apart singly: energies and the sum over them"
-        " hold, single states and dipoles are mixtures; widen group, so that they are one row"
-    ] if sets else []  # fmt: skip
+    return texts
+
+
+def _mixed(levels: Levels, indices: list[int]) -> str:
+    text = (
+        f"{numbered([i + 1 for i in indices])} are too close to be told apart singly: their"
+        " energies and sums over all of them hold, a single state or dipole is a mixture"
+    )
+    if any(group.start <= indices[0] and indices[-1] < group.stop for group in levels.groups):
+        return f"{text}; the table's row counts them together"
+    return f"{text}; widen group, so that they become one row"
 
 
 def tops(levels: Levels) -> list[str]:
     """Return levels within a few meV of the top of a barrier they lie in."""
     if levels.method == "phase-integral" or not len(levels.energies):
         return []
-    profile = levels.profile
-    heights = _barrier_tops(profile)
     inside = levels.states.probabilities
-    said: dict[tuple[int, str], str] = {}
-    for section, top in heights.items():
+    near: dict[int, dict[str, float]] = {}
+    for section, top in _barrier_tops(levels.profile).items():
         for index in np.flatnonzero(np.abs(levels.energies - top) < NEAR_TOP):
-            if levels.of_box[index] or inside[index, section] < IN_BARRIER:
-                continue
-            off = 1e3 * float(levels.energies[index] - top)
-            side = "above" if off >= 0.0 else "below"
-            key = (int(index), profile.name(section))
-            said[key] = f"level {index + 1} lies {abs(off):.2g} meV {side} the top of {key[1]}"
-    return [
-        f"{text}: a small error of the band offset binds or frees it; compare a stack with"
-        " 0.01 more and less in its composition"
-        for _, text in sorted(said.items())
-    ]
+            if not levels.of_box[index] and inside[index, section] >= IN_BARRIER:
+                off = float(levels.energies[index] - top)
+                near.setdefault(int(index), {})[levels.profile.name(section)] = off
+    texts = []
+    for index, tops_here in sorted(near.items()):
+        off = min(tops_here.values(), key=abs)
+        side = "above" if off >= 0.0 else "below"
+        texts.append(
+            f"level {index + 1} lies {abs(off) * 1e3:.2g} meV {side} the top of"
+            f" {listed(list(tops_here))}: a small error of the band offset binds or frees it;"
+            " compare the stack with a barrier slightly higher and slightly lower"
+        )
+    return texts
 
 
 def _barrier_tops(profile: Profile) -> dict[int, float]:
-    """Return the highest edge [eV] of each section that stands above one of its neighbours."""
-    sections = profile.sections
-    edges = [s.edge.at(np.linspace(0.0, s.thickness, 2 if s.tilted else 65)) for s in sections]
-    tops = {}
-    for i, edge in enumerate(edges):
-        beside = [float(edges[i - 1][-1]) - float(edge[0])] if i else []
-        beside += [float(edges[i + 1][0]) - float(edge[-1])] if i + 1 < len(edges) else []
-        if beside and min(beside) < -2.0 * NEAR_TOP:
-            tops[i] = float(edge.max())
-    return tops
+    """Return the highest edge [eV] of each section that is a barrier to one of its neighbours.
+
+    What is a barrier is seen without the stack's field.
+    """
+    lows, highs, tops = [], [], []
+    for start, section in zip(profile.faces, profile.sections, strict=False):
+        depth = np.linspace(0.0, section.thickness, 2 if section.tilted else 65)
+        edge = section.edge.at(depth)
+        bare = edge - profile.field * (start + depth)
+        lows.append(float(bare.min()))
+        highs.append(float(bare.max()))
+        tops.append(float(edge.max()))
+    found = {}
+    for i, high in enumerate(highs):
+        beside = lows[max(i - 1, 0) : i] + lows[i + 1 : i + 2]
+        if beside and min(beside) < high - 2.0 * NEAR_TOP:
+            found[i] = tops[i]
+    return found
 
 
 def phases(levels: Levels) -> list[str]:
     """Return levels whose two methods are further apart than a tenth of the spacing."""
-    if levels.method == "phase-integral" or len(levels.groups) < 2 or levels.phase_exact:
+    if levels.method == "phase-integral" or not len(levels.groups) or levels.phase_exact:
         return []
     energies = np.array([float(np.mean(levels.energies[g])) for g in levels.groups])
     phase = np.array([float(np.mean(levels.phase_integral[g])) for g in levels.groups])
+    own = np.array([not bool(np.any(levels.of_box[g])) for g in levels.groups])
+    numbers = np.array([g.start + 1 for g in levels.groups])
     gaps = np.diff(energies)
     spacing = np.minimum(np.append(gaps, np.inf), np.append(np.inf, gaps))
     share = np.abs(phase - energies) / spacing
     texts = []
-    apart = np.flatnonzero(share > APART)
+    apart = np.flatnonzero(own & (share > APART))
     if len(apart):
         worst = apart[int(np.argmax(share[apart]))]
-        numbers = numbered([levels.groups[i].start + 1 for i in apart])
         texts.append(
-            f"phase integral and shooting are over {APART:.0%} of the spacing apart for {numbers}"
-            f" (level {levels.groups[worst].start + 1}: {share[worst]:.0%}): the simple picture of"
-            " standing waves fails there; trust the shooting energy, or try phase_order = 2"
+            f"phase integral and shooting are over {APART:.0%} of the spacing apart for"
+            f" {numbered(numbers[apart])} (level {numbers[worst]}: {share[worst]:.0%}): the simple"
+            " picture of standing waves fails there; trust the shooting energy, or try"
+            " phase_order = 2"
         )
-    missing = np.flatnonzero(np.isnan(phase))
+    missing = np.flatnonzero(own & np.isnan(phase))
     if len(missing):
-        numbers = numbered([levels.groups[i].start + 1 for i in missing])
         texts.append(
-            f"the phase integral has no level of the number of {numbers}: the simple picture of"
-            " standing waves fails there; trust the shooting energy"
+            f"the phase integral has no level of the number of {numbered(numbers[missing])}: the"
+            " simple picture of standing waves fails there; trust the shooting energy"
         )
     return texts
 
@@ -158,7 +174,7 @@ def two_band(levels: Levels) -> list[str]:
         return []
     texts = []
     clamped = levels.states.clamped
-    deep = np.flatnonzero(clamped > CLAMPED)
+    deep = np.flatnonzero((clamped > CLAMPED) & ~levels.of_box)
     if len(deep):
         texts.append(
             f"two-band model near its limit: {numbered(deep + 1)} with up to"
@@ -171,10 +187,11 @@ def two_band(levels: Levels) -> list[str]:
         section = profile.sections[main]
         middle = np.array([0.5 * section.thickness])
         above = float(levels.energies[index] - section.edge.at(middle)[0])
-        if above * float(section.inverse_gap.at(middle)[0]) > 1.0:
+        if above * float(section.inverse_gap.at(middle)[0]) > 1.0 and not levels.of_box[index]:
             beyond.setdefault(profile.name(int(main)), []).append(index + 1)
     return texts + [
-        f"two-band model near its limit: {numbered(numbers)} further above the edge of {name}"
-        " than its gap; far bands count there, expect the energy to be some per cent off"
+        f"two-band model near its limit: {numbered(numbers)} {'lie' if len(numbers) > 1 else 'lies'}"
+        f" further above the edge of {name} than its gap; far bands count there: take the energy as"
+        " a guess, or stay lower"
         for name, numbers in beyond.items()
     ]
