@@ -35,15 +35,18 @@ class Polynomial:
     @property
     def degree(self) -> int:
         """Degree after trailing zeros are dropped; 0 for a constant."""
-        nonzero = [i for i, c in enumerate(self.coefficients) if c != 0.0]
-        return nonzero[-1] if nonzero else 0
+        degree = len(self.coefficients) - 1
+        while degree > 0 and self.coefficients[degree] == 0.0:
+            degree -= 1
+        return degree
 
     def plus(self, constant: float, slope: float) -> Polynomial:
         """Return this polynomial with ``constant + slope * s`` added."""
-        c = list(self.coefficients) + [0.0] * (2 - len(self.coefficients))
-        c[0] += constant
-        c[1] += slope
-        return Polynomial(tuple(c))
+        first, *rest = self.coefficients
+        if slope == 0.0:
+            return Polynomial((first + constant, *rest))
+        second, *more = rest or [0.0]
+        return Polynomial((first + constant, second + slope, *more))
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,11 +137,14 @@ class LayerFacts:
     cautions: tuple[str, ...] = ()
 
 
-def _value_and_slope(curve: Curve) -> tuple[float, float]:
-    if isinstance(curve, Polynomial):
-        c = curve.coefficients
-        return c[0], c[1] if len(c) > 1 else 0.0
-    return _first(curve), 0.0
+def _row(section: Section) -> tuple[float, float, float, float, float, float]:
+    """Thickness, edge, its slope, mass and inverse gap at the first face, and 1 if curved."""
+    edge = section.edge
+    slope = 0.0
+    if isinstance(edge, Polynomial) and len(edge.coefficients) > 1:
+        slope = edge.coefficients[1]
+    mass, gap = _first(section.mass), _first(section.inverse_gap)
+    return section.thickness, _first(edge), slope, mass, gap, float(not section.tilted)
 
 
 def _first(curve: Curve) -> float:
@@ -162,6 +168,7 @@ class SectionNumbers(NamedTuple):
     lowest: Floats
     flat: npt.NDArray[np.bool_]
     curved: npt.NDArray[np.bool_]
+    all_flat: bool
 
 
 @dataclass(frozen=True)
@@ -197,21 +204,16 @@ class Profile:
     @cached_property
     def numbers(self) -> SectionNumbers:
         """The sections as arrays."""
-        thickness, edge, mass, gap, curved = [], [], [], [], []
-        for section in self.sections:
-            thickness.append(section.thickness)
-            curved.append(not section.tilted)
-            edge.append(_value_and_slope(section.edge))
-            mass.append(_first(section.mass))
-            gap.append(_first(section.inverse_gap))
-        h, values = np.array(thickness), np.array(edge)
-        lowest = values[:, 0] + np.minimum(values[:, 1], 0.0) * h
-        bent = np.array(curved)
-        for index in np.flatnonzero(bent):
+        rows = [_row(section) for section in self.sections]
+        h, edge, slope, mass, inverse_gap, bent = np.array(rows).T.copy()
+        curved = bent > 0.0
+        lowest = edge + np.minimum(slope, 0.0) * h
+        for index in np.flatnonzero(curved):
             section = self.sections[index]
             lowest[index] = section.edge.at(np.linspace(0.0, section.thickness, 65)).min()
-        flat = (values[:, 1] == 0.0) & ~bent
-        return SectionNumbers(h, values, np.array(mass), np.array(gap), lowest, flat, bent)
+        flat = (slope == 0.0) & ~curved
+        values = np.column_stack((edge, slope))
+        return SectionNumbers(h, values, mass, inverse_gap, lowest, flat, curved, bool(flat.all()))
 
     @cached_property
     def faces(self) -> Floats:

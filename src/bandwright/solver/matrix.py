@@ -25,33 +25,28 @@ class Elements(NamedTuple):
     """One row an element, one column an energy; every array has shape (n_elements, n_energies).
 
     ``left`` is A/B, ``right`` is D/B, ``off`` is 1/B, all [1/nm]; ``clamped`` counts each
-    element's own levels below E when u = 0 at both its faces.
+    element's own levels below E when u = 0 at both its faces; None says there are none.
     """
 
     left: Floats
     right: Floats
     off: Floats
-    clamped: Counts
-
-    @classmethod
-    def blank(cls, shape: tuple[int, int]) -> Elements:
-        """Return elements yet to be filled."""
-        return cls(np.empty(shape), np.empty(shape), np.empty(shape), np.empty(shape, np.int64))
+    clamped: Counts | None = None
 
     def rows(self, which: npt.NDArray[np.int64]) -> Elements:
         """Return the elements of these rows, in this order."""
-        return Elements(self.left[which], self.right[which], self.off[which], self.clamped[which])
+        return Elements(*(None if c is None else c[which] for c in self))  # type: ignore[arg-type]
 
 
 class Matrix(NamedTuple):
     """K(E) of the free faces: ``diagonal`` (n_nodes, n_energies), ``off`` one row fewer.
 
-    ``off`` holds -1/B. ``clamped`` (n_energies,) sums the elements' own levels.
+    ``off`` holds -1/B. ``clamped`` (n_energies,) sums the elements' own levels; None is none.
     """
 
     diagonal: Floats
     off: Floats
-    clamped: Counts
+    clamped: Counts | None
 
 
 def assemble(elements: Elements, first: Floats | None, last: Floats | None) -> Matrix:
@@ -73,7 +68,7 @@ def assemble(elements: Elements, first: Floats | None, last: Floats | None) -> M
         np.add(left[0], first, out=diagonal[0])
     if last is not None:
         np.add(right[-1], last, out=diagonal[-1])
-    total = clamped.sum(axis=0) if clamped.strides[0] else clamped[0]
+    total = None if clamped is None else clamped.sum(axis=0)
     return Matrix(diagonal[start:stop], -off[start : stop - 1], total)
 
 
@@ -93,11 +88,14 @@ def count_and_pivot(matrix: Matrix) -> tuple[Counts, Floats]:
     """
     diagonal, off, clamped = matrix
     if not len(diagonal):
-        return clamped.astype(np.int64), np.ones(clamped.shape)
+        none = np.zeros(diagonal.shape[1], dtype=np.int64)
+        return none if clamped is None else clamped.astype(np.int64), np.ones(len(none))
     squares = np.maximum(off * off, _TINY)
     pivot = diagonal[0].copy()
     negative = np.signbit(pivot)
-    total = clamped + negative
+    total = negative.astype(np.int64)
+    if clamped is not None:
+        total += clamped
     with np.errstate(divide="ignore", over="ignore"):
         for row in range(1, len(diagonal)):
             np.divide(squares[row - 1], pivot, out=pivot)

@@ -30,7 +30,7 @@ def needed(profile: Profile, high: float, tolerance: float) -> Indices:
     local = numbers.mass * (1.0 + above * numbers.inverse_gap)
     wave = np.sqrt(local * above / H2M)
     counts = np.ceil(wave * numbers.thickness / PHASE_LIMIT)
-    if not numbers.flat.all():
+    if not numbers.all_flat:
         share = (max(tolerance, 1e-13) / 1e-6) ** (1 / 6)
         steep = (numbers.mass * np.abs(numbers.edge[:, 1]) * (1.0 + above * numbers.inverse_gap)
                  / H2M) ** (1 / 3)  # fmt: skip

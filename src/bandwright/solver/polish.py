@@ -109,7 +109,7 @@ def _repeat(matrix: Matrix, size: int) -> Matrix:
     return Matrix(
         np.repeat(matrix.diagonal, size, axis=1),
         np.repeat(matrix.off, size, axis=1),
-        np.repeat(matrix.clamped, size),
+        None,
     )
 
 

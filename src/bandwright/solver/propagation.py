@@ -81,12 +81,13 @@ def local_mass(
     """Return m(E) and dm/dE of the two-band model, floored far below the edge.
 
     Kane's m(E) = m [1 + (E - V)/Eg], its bracket never below `MASS_FLOOR`, with dm/dE = 0
-    where the floor holds, so that counts stay right.
+    where the floor holds, so that counts stay right. dm/dE has the shape of the mass where no
+    bracket is at the floor.
     """
     bracket = 1.0 + (energy - edge) * inverse_gap
     free = bracket > MASS_FLOOR
     if free.all():
-        return mass * bracket, np.broadcast_to(mass * inverse_gap, bracket.shape)
+        return mass * bracket, mass * inverse_gap
     return mass * np.where(free, bracket, MASS_FLOOR), mass * np.where(free, inverse_gap, 0.0)
 
 

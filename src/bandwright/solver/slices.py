@@ -105,19 +105,16 @@ class Slices:
         if len(parts) == 1:
             rows, found = parts[0]
             return found if rows is None else tuple(one.rows(rows) for one in found)
-        shape = (len(self), len(energies))
-        joined = tuple(Elements.blank(shape) for _ in parts[0][1])
-        for rows, found in parts:
-            for target, source in zip(joined, found, strict=True):
-                for column, numbers in zip(target, source, strict=True):
-                    column[rows] = numbers
-        return joined
+        return tuple(
+            _joined([(rows, found[which]) for rows, found in parts], len(self))
+            for which in range(len(parts[0][1]))
+        )
 
     @cached_property
     def _kinds(self) -> tuple[tuple[Indices | None, _Constant | _Tilted | _Curved], ...]:
         """Evaluators of constant, linear and curved slices with their rows; None is every row."""
         straight = ~self.curved & ~self.flat
-        if self.flat.all():
+        if self.profile.numbers.all_flat:
             first, back = self._distinct()
             return ((back, _Constant(self._columns(first))),)
         kinds: list[tuple[Indices | None, _Constant | _Tilted | _Curved]] = []
@@ -201,7 +198,7 @@ class _Constant:
             d_side -= side * da
             d_off -= off * da
         d_side /= a
-        return value, Elements(d_side, d_side, d_off / a, value.clamped)
+        return value, Elements(d_side, d_side, d_off / a)
 
 
 class _Tilted:
@@ -264,13 +261,27 @@ def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> tuple[Elem
     df *= dt
     dg *= dt
     return value, Elements(
-        (df + dx - left * da) / a, (df - dx - right * da) / a, (dg - off * da) / a, value.clamped
+        (df + dx - left * da) / a, (df - dx - right * da) / a, (dg - off * da) / a
     )
 
 
-def _half_waves(t: Floats) -> Indices:
+def _joined(parts: list[tuple[Indices | None, Elements]], rows: int) -> Elements:
+    """Return the elements of all kinds in the order of the slices."""
+    shape = (rows, parts[0][1].left.shape[1])
+    left, right, off = np.empty(shape), np.empty(shape), np.empty(shape)
+    clamped: Indices | None = None
+    for where, found in parts:
+        left[where], right[where], off[where] = found.left, found.right, found.off
+        if found.clamped is not None:
+            clamped = np.zeros(shape, dtype=np.int64) if clamped is None else clamped
+            clamped[where] = found.clamped
+    return Elements(left, right, off, clamped)
+
+
+def _half_waves(t: Floats) -> Indices | None:
+    """Count each slice's own levels between two walls; none where all phases are below pi."""
     if t.max(initial=0.0) < np.pi**2:
-        return np.broadcast_to(np.int64(0), t.shape)
+        return None
     return np.asarray(np.sqrt(np.maximum(t, 0.0)) // np.pi, dtype=np.int64)
 
 
@@ -302,11 +313,16 @@ def slice_at(
 ) -> Slices:
     """Return slices at given places of given sections, in ascending order of section."""
     numbers = profile.numbers
+    if len(section) == len(counts) and numbers.all_flat:
+        return Slices(
+            profile, counts, section, start, thickness, numbers.edge[:, 0], numbers.mass,
+            numbers.inverse_gap, np.zeros(len(counts)), numbers.flat, numbers.curved,
+        )  # fmt: skip
     flat, curved = numbers.flat[section], numbers.curved[section]
     edge = numbers.edge[section, 0]
     mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]
     drop = numbers.edge[section, 1] * thickness
-    if not flat.all():
+    if not numbers.all_flat:
         middle = start + 0.5 * thickness
         edge = edge + numbers.edge[section, 1] * middle
         rows = np.flatnonzero(curved)

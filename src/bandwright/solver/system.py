@@ -11,7 +11,7 @@ import numpy.typing as npt
 from scipy.linalg.lapack import dgtsv
 
 from bandwright.constants import H2M
-from bandwright.profile import Section
+from bandwright.profile import Polynomial, Section
 from bandwright.solver.matrix import Counts, Matrix, assemble, count_and_pivot
 from bandwright.solver.propagation import local_mass
 from bandwright.solver.slices import Slices
@@ -28,25 +28,25 @@ class OpenEnd(NamedTuple):
 
     def decay(self, energies: Floats) -> tuple[Floats, Floats]:
         """Return kappa [1/nm] and the mass m(E), below the edge (kappa = 0 above it)."""
-        local, _ = self._mass(energies)
+        local = np.broadcast_to(self._mass(energies)[0], energies.shape)
         return np.sqrt(local * np.maximum(self.edge - energies, 0.0) / H2M), local
 
     def value(self, energies: Floats) -> Floats:
         """Return kappa/m, which the end adds to K."""
-        local, _ = self._mass(energies)
-        return np.asarray(np.sqrt(np.maximum(self.edge - energies, 0.0) / (H2M * local)))
+        rate = np.maximum(self.edge - energies, 0.0)
+        rate /= H2M * self._mass(energies)[0]
+        return np.sqrt(rate)
 
     def value_and_slope(self, energies: Floats) -> tuple[Floats, Floats]:
-        """Return kappa/m and its derivative by E."""
+        """Return kappa/m and its derivative by E (huge at the edge itself)."""
         local, b = self._mass(energies)
-        below = np.maximum(self.edge - energies, 1e-150)
+        below = np.maximum(self.edge - energies, 1e-60)
         over = np.sqrt(below / (H2M * local))
-        slope = -0.5 * over * (1.0 / below + b / local)
-        return over, np.where(below > 1e-150, slope, 0.0)
+        return over, -0.5 * over * (1.0 / below + b / local)
 
-    def _mass(self, energies: Floats) -> tuple[Floats, Floats]:
+    def _mass(self, energies: Floats) -> tuple[Floats | float, Floats | float]:
         if self.inverse_gap == 0.0:
-            return np.full_like(energies, self.mass), np.zeros_like(energies)
+            return self.mass, 0.0
         return local_mass(
             energies, np.array(self.edge), np.array(self.mass), np.array(self.inverse_gap)
         )
@@ -79,8 +79,12 @@ class System:
 
     def matrix(self, energies: Floats) -> Matrix:
         """Return K at each energy [eV]."""
-        first, last = (e and e.value(energies) for e in self.outside)
-        return assemble(self.slices.elements(energies), first, last)
+        first, last = self.outside
+        return assemble(
+            self.slices.elements(energies),
+            None if first is None else first.value(energies),
+            None if last is None else last.value(energies),
+        )
 
     def matrix_and_slope(self, energies: Floats) -> tuple[Matrix, Matrix]:
         """Return K and its exact derivative by E at each energy."""
@@ -110,10 +114,14 @@ class System:
 
 def _open_end(section: Section, depth: float) -> OpenEnd:
     place = np.array([depth])
-    edge, mass, inverse_gap = (
-        float(c.at(place)[0]) for c in (section.edge, section.mass, section.inverse_gap)
+    return OpenEnd(
+        *(
+            c.coefficients[0]
+            if isinstance(c, Polynomial) and c.degree == 0
+            else float(c.at(place)[0])
+            for c in (section.edge, section.mass, section.inverse_gap)
+        )
     )
-    return OpenEnd(edge, mass, inverse_gap)
 
 
 def chunks(columns: int, rows: int, cells: int = 2_000_000) -> list[slice]:
@@ -134,7 +142,7 @@ def solve_shifted(matrix: Matrix, right: Floats) -> Floats:
     diagonal = matrix.diagonal.T.reshape(-1)
     _, _, _, z, info = dgtsv(between, diagonal, between, right.T.reshape(-1, 1))
     if info > 0:  # an exact singularity: the next float is as good a shift
-        nudged = Matrix(np.nextafter(matrix.diagonal, np.inf), matrix.off, matrix.clamped)
+        nudged = Matrix(np.nextafter(matrix.diagonal, np.inf), matrix.off, None)
         return solve_shifted(nudged, right)
     return np.asarray(z).reshape(m, n).T
 
