@@ -7,7 +7,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.polynomial import chebyshev, polynomial
-from scipy.optimize import minimize_scalar
 
 from bandwright.profile.sections import Curve, Floats, Polynomial, Sampled
 
@@ -70,6 +69,8 @@ def least(curve: Curve, thickness: float) -> float:
     values = curve.at(places)
     best = int(np.argmin(values))
     low, high = places[max(best - 1, 0)], places[min(best + 1, 256)]
+    from scipy.optimize import minimize_scalar  # a quarter second that flat stacks need not pay
+
     found = minimize_scalar(
         lambda s: float(curve.at(np.array([s]))[0]),
         bounds=(low, high), method="bounded", options={"xatol": 1e-9 * thickness},
