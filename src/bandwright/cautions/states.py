@@ -100,10 +100,10 @@ def tops(levels: Levels) -> list[str]:
     inside = levels.states.probabilities
     near: dict[int, dict[str, float]] = {}
     for section, top in _barrier_tops(levels.profile).items():
-        for index in np.flatnonzero(np.abs(levels.energies - top) < NEAR_TOP):
+        for index in map(int, np.flatnonzero(np.abs(levels.energies - top) < NEAR_TOP)):
             if not levels.of_box[index] and inside[index, section] >= IN_BARRIER:
                 off = float(levels.energies[index] - top)
-                near.setdefault(int(index), {})[levels.profile.name(section)] = off
+                near.setdefault(index, {})[levels.profile.name(section)] = off
     texts = []
     for index, tops_here in sorted(near.items()):
         off = min(tops_here.values(), key=abs)
@@ -190,8 +190,7 @@ def two_band(levels: Levels) -> list[str]:
         if above * float(section.inverse_gap.at(middle)[0]) > 1.0 and not levels.of_box[index]:
             beyond.setdefault(profile.name(int(main)), []).append(index + 1)
     return texts + [
-        f"two-band model near its limit: {numbered(numbers)} {'lie' if len(numbers) > 1 else 'lies'}"
-        f" further above the edge of {name} than its gap; far bands count there: take the energy as"
-        " a guess, or stay lower"
+        f"two-band model near its limit: {numbered(numbers)} further above the edge of {name} than"
+        " its gap; far bands count there: take the energy as a guess, or stay lower"
         for name, numbers in beyond.items()
     ]
