@@ -274,6 +274,7 @@ def test_inverse_energies(text):
         (q.as_mass, 0.0, "got 0.0; a mass must be above zero"),
         (q.as_mass, -0.067, "got -0.067; a mass must be above zero"),
         (q.as_mass, math.inf, "got inf; that is not finite"),
+        (q.as_mass, 10**400, f"got {str(10**400)[:77]}...; the number is too large"),
         (q.as_mass, "0.067 kg", "got '0.067 kg'; write a number such as 0.067"),
         (q.as_mass, np.array([0.067, 0.09]), "got [0.067 0.09 ]; that is an array; write one numb"
          "er"),
@@ -349,12 +350,13 @@ def test_quantities_of_another_kind(ureg, door, magnitude, unit, says):
 
 
 class Strange:
-    """Has `m_as`, but gives nothing a float can be made of."""
+    """Has `m_as` and little else of a quantity."""
 
-    magnitude = None
+    def __init__(self, value):
+        self.value = value
 
     def m_as(self, unit):
-        return "much"
+        return self.value
 
     def __str__(self):
         return "something strange"
@@ -362,7 +364,8 @@ class Strange:
 
 def test_a_quantity_that_gives_no_number():
     with refused("depth: got something strange; that is no plain number"):
-        q.as_length(Strange(), "depth")
+        q.as_length(Strange("much"), "depth")
+    assert q.as_length(Strange(0.1 + 0.2), "depth") == 0.1 + 0.2
 
 
 def test_quantities_out():
@@ -404,7 +407,11 @@ def test_texts(text, expected):
     assert text == expected
 
 
-def test_show_cuts_long_finds():
+def test_show_keeps_to_one_short_line():
+    assert q.show(True) == "True"
+    assert q.show("a\nb") == "'a\\nb'"
+    assert q.show(np.zeros((2, 2))) == "[[0. 0.] [0. 0.]]"
+    assert len(q.show("long" * 40)) == 80
     assert q.show(["long"] * 40).endswith("...")
     assert len(q.show(["long"] * 40)) == 80
 

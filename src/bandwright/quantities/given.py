@@ -283,6 +283,8 @@ def _scalar(value: Any, noun: str) -> float:
         number = float(value)
     except (TypeError, ValueError):
         raise Wrong("that is no plain number") from None
+    except OverflowError:
+        raise Wrong("the number is too large") from None
     if not math.isfinite(number):
         raise Wrong("that is not finite")
     return number

@@ -148,7 +148,7 @@ def quantity(value: Any, unit: str) -> pint.Quantity[Any]:
 
 
 def show(value: object) -> str:
-    """Return a found value as an error text shows it: text in quotes, numbers bare.
+    """Return a found value as an error text shows it: in one line, text in quotes.
 
     Examples
     --------
@@ -156,8 +156,9 @@ def show(value: object) -> str:
     ("'6.2'", '6.2')
     """
     if isinstance(value, str):
-        return repr(str(value))
-    if isinstance(value, SupportsFloat) and not isinstance(value, bool):
-        return str(value)
-    text = str(value) if hasattr(value, "m_as") else repr(value)
+        text = repr(str(value))
+    elif hasattr(value, "m_as") or isinstance(value, SupportsFloat):
+        text = " ".join(str(value).split())
+    else:
+        text = " ".join(repr(value).split())
     return text if len(text) <= 80 else text[:77] + "..."
