@@ -64,13 +64,8 @@ def ranges(profile: Profile, below: float | None, at_most: int | None) -> tuple[
 def open_edge(profile: Profile) -> float | None:
     """Return the lower edge of the open ends' outer faces [eV]; None between two walls."""
     first, last = profile.sections[0], profile.sections[-1]
-    edges = [
-        float(section.edge.at(np.array([depth]))[0])
-        for end, section, depth in zip(
-            profile.ends, (first, last), (0.0, last.thickness), strict=True
-        )
-        if end == "open"
-    ]
+    places = ((profile.ends[0], first, 0.0), (profile.ends[1], last, last.thickness))
+    edges = [section.edge.value(depth) for end, section, depth in places if end == "open"]
     return min(edges) if edges else None
 
 

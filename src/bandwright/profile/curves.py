@@ -62,9 +62,9 @@ def fitted(function: Callable[[Floats], Floats], thickness: float) -> Curve:
 
 def least(curve: Curve, thickness: float) -> float:
     """Return the true minimum of a curve on its section, between sampled places by a search."""
-    ends = curve.at(np.array([0.0, thickness]))
-    if curve.degree <= 1:
-        return float(ends.min())
+    if isinstance(curve, Polynomial) and curve.degree <= 1:
+        first, *slope = curve.coefficients
+        return min(first, first + slope[0] * thickness) if slope else first
     places = np.linspace(0.0, thickness, 257)
     values = curve.at(places)
     best = int(np.argmin(values))

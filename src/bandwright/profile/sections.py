@@ -32,6 +32,13 @@ class Polynomial:
             value = value * depth + coefficient
         return value
 
+    def value(self, depth: float) -> float:
+        """Return the value at one depth [nm]."""
+        value = 0.0
+        for coefficient in reversed(self.coefficients):
+            value = value * depth + coefficient
+        return value
+
     @property
     def degree(self) -> int:
         """Degree after trailing zeros are dropped; 0 for a constant."""
@@ -64,6 +71,10 @@ class Sampled:
         depth = np.asarray(depth, dtype=float)
         value = np.asarray(self.function(depth), dtype=float)
         return value + self.constant + self.slope * depth
+
+    def value(self, depth: float) -> float:
+        """Return the value at one depth [nm]."""
+        return float(self.at(np.array([depth]))[0])
 
     def plus(self, constant: float, slope: float) -> Sampled:
         """Return this curve with ``constant + slope * s`` added."""
@@ -148,9 +159,7 @@ def _row(section: Section) -> tuple[float, float, float, float, float, float]:
 
 
 def _first(curve: Curve) -> float:
-    if isinstance(curve, Polynomial):
-        return curve.coefficients[0]
-    return float(curve.at(np.zeros(1))[0])
+    return curve.coefficients[0] if isinstance(curve, Polynomial) else curve.value(0.0)
 
 
 class SectionNumbers(NamedTuple):

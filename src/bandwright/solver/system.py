@@ -11,7 +11,7 @@ import numpy.typing as npt
 from scipy.linalg.lapack import dgtsv
 
 from bandwright.constants import H2M
-from bandwright.profile import Polynomial, Section
+from bandwright.profile import Section
 from bandwright.solver.matrix import Counts, Matrix, assemble, count_and_pivot
 from bandwright.solver.propagation import local_mass
 from bandwright.solver.slices import Slices
@@ -113,15 +113,8 @@ class System:
 
 
 def _open_end(section: Section, depth: float) -> OpenEnd:
-    place = np.array([depth])
-    return OpenEnd(
-        *(
-            c.coefficients[0]
-            if isinstance(c, Polynomial) and c.degree == 0
-            else float(c.at(place)[0])
-            for c in (section.edge, section.mass, section.inverse_gap)
-        )
-    )
+    curves = (section.edge, section.mass, section.inverse_gap)
+    return OpenEnd(*(curve.value(depth) for curve in curves))
 
 
 def chunks(columns: int, rows: int, cells: int = 2_000_000) -> list[slice]:
