@@ -27,7 +27,7 @@ from bandwright.quantities import (
 )
 from bandwright.stack import Layer, Repeat, Stack
 from bandwright.stackfile.keys import PLAIN, SHAPED, UNITS, column, entries_of, layer_from
-from bandwright.stackline import shape_text, shape_value
+from bandwright.stackfile.shapetext import shape_text, shape_value
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -139,9 +139,6 @@ def frame_from_stack(stack: Stack) -> pd.DataFrame:
             record["group"] = "/".join(str(name) for name, _ in groups)
             record["times"] = "/".join(str(times) for _, times in groups)
         entries = entries_of(written.layer, written.number)
-        grading = entries.get("grading")
-        if isinstance(grading, Mapping):
-            entries["grading"] = ", ".join(f"{key} {word}" for key, word in grading.items())
         for key, value in entries.items():
             record |= _cells(key, value)
         records.append(record)
@@ -175,9 +172,6 @@ def _entries(row: Mapping[str, Any], number: int) -> dict[str, Any]:
             given[key] = ends
         if points is not None:
             given[key] = _points(points, key, where)
-    if isinstance(given.get("grading"), str) and " " in given["grading"]:
-        words = [item.split() for item in given["grading"].split(",")]
-        given["grading"] = {w[0]: " ".join(w[1:]) for w in words if w}
     return given
 
 

@@ -11,16 +11,16 @@ from __future__ import annotations
 import json
 import os
 import re
-from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
 from bandwright.errors import BandwrightError, MaterialError, StackFileError, close_matches
 from bandwright.formula import letters
-from bandwright.quantities import length_text, number_text
+from bandwright.quantities import length_text
 from bandwright.stack import Layer, Repeat, Stack
 from bandwright.stackfile import read_stack
-from bandwright.stackfile.keys import GRADINGS, LAYER_KEYS, SHAPED, entries_of, layer_from
+from bandwright.stackfile.keys import LAYER_KEYS, SHAPED, entries_of, layer_from
+from bandwright.stackfile.shapetext import is_pair, shape_text, shape_value
 
 _GROUP = re.compile(r"(?P<times>\S+?)\s*[x×*]\s*\((?P<inner>.*)\)", re.DOTALL)
 _LAYER = re.compile(
@@ -29,7 +29,7 @@ _LAYER = re.compile(
 )
 _SETTING = re.compile(r"(?P<key>\w+)(?:\s*[=:]\s*|\s+|(?=\"))(?P<value>.+)", re.DOTALL)
 _DECIMAL_COMMA = re.compile(r"\d+,\d+")
-_BARE_NAME = re.compile(r"[A-Za-z0-9.()-]+")
+_BARE_NAME = re.compile(r"[A-Za-z0-9.-]+")
 _BARE_LABEL = re.compile(r"\w(?:[\w .+-]*[\w.+-])?")
 _CLOSING = {"(": ")", "{": "}"}
 _INSIDE = tuple(key for key in LAYER_KEYS if key not in ("thickness", "material"))
@@ -299,7 +299,7 @@ def _unquoted(text: str, where: str) -> str:
 
 def _settings(inside: str, where: str) -> dict[str, Any]:
     entries: dict[str, Any] = {}
-    gradings: dict[str, str] = {}
+    pairs: dict[str, str | None] = {}
     for item in _split(inside, where):
         match = _SETTING.fullmatch(item)
         if match is None:
@@ -313,32 +313,20 @@ def _settings(inside: str, where: str) -> dict[str, Any]:
             raise StackFileError(f"{key!r} is given twice; leave one out", where)
         if key in SHAPED:
             entries[key], grading = shape_value(value)
-            if grading:
-                gradings[key] = grading
+            if grading or is_pair(entries[key]):
+                pairs[key] = grading
         else:
             entries[key] = _unquoted(value, where) if value.startswith('"') else value
-    if gradings and "grading" in entries:
-        raise StackFileError("grading is given for one key and for all; leave one out", where)
-    return entries | ({"grading": gradings} if gradings else {})
-
-
-def shape_value(text: str) -> tuple[Any, str | None]:
-    """Return the value that a text such as ``"0 to 0.3 quadratic"`` means, and its grading.
-
-    Examples
-    --------
-    >>> shape_value("0 to 0.3 quadratic"), shape_value("0 at 0 nm to 0.3 at 8 nm")
-    ((['0', '0.3'], 'quadratic'), ([['0 nm', '0'], ['8 nm', '0.3']], None))
-    """
-    grading = None
-    words = text.rsplit(None, 1)
-    if len(words) == 2 and words[1] in GRADINGS:
-        text, grading = words
-    parts = re.split(r"\s+to\s+", text.strip())
-    if all(re.search(r"\s+at\s+", part) for part in parts):
-        points = [re.split(r"\s+at\s+", part, maxsplit=1) for part in parts]
-        return [[depth, value] for value, depth in points], grading
-    return (parts if len(parts) > 1 else parts[0]), grading
+    words = set(pairs.values())
+    if words <= {None}:
+        return entries
+    if len(words) > 1 or "grading" in entries:
+        raise StackFileError(
+            "a grading for some; write 'linear' or 'quadratic' behind every pair, or one"
+            " grading for all",
+            where,
+        )
+    return entries | {"grading": words.pop()}
 
 
 # --- stack -> line --------------------------------------------------------------------------
@@ -365,31 +353,10 @@ def _layer_text(layer: Layer, number: int) -> str:
         if key == "label":
             value = value if _BARE_LABEL.fullmatch(value) else json.dumps(value, ensure_ascii=False)
         elif key in SHAPED:
-            value = shape_text(value)
-            graded = grading.get(key) if isinstance(grading, Mapping) else grading
-            if graded and not isinstance(
-                entries[key][0] if isinstance(entries[key], list) else [], list
-            ):
-                value += f" {graded}"
+            value = shape_text(value) + (f" {grading}" if grading and is_pair(value) else "")
         inside.append(f"{key} {value}")
     text = length_text(layer.thickness)
     if layer.material is not None:
         bare = _BARE_NAME.fullmatch(layer.material)
         text += " " + (layer.material if bare else json.dumps(layer.material, ensure_ascii=False))
     return text + (f" {{{', '.join(inside)}}}" if inside else "")
-
-
-def shape_text(value: Any) -> str:
-    """Return the text that `shape_value` reads as this value, pair, or list of points.
-
-    Examples
-    --------
-    >>> shape_text([0.0, 0.3]), shape_text([["0 nm", "0 meV"], ["8 nm", "250 meV"]])
-    ('0 to 0.3', '0 meV at 0 nm to 250 meV at 8 nm')
-    """
-    if not isinstance(value, list):
-        return value if isinstance(value, str) else number_text(value)
-    points = (
-        f"{shape_text(p[1])} at {p[0]}" if isinstance(p, list) else shape_text(p) for p in value
-    )
-    return " to ".join(points)

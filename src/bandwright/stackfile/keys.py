@@ -10,18 +10,18 @@ from collections.abc import Callable, Mapping
 from typing import Any
 
 from bandwright import quantities as q
-from bandwright.errors import BandwrightError, StackFileError, close_matches
-from bandwright.shapes import Flat, Function, Points, Quadratic, Shape, as_shape
+from bandwright.errors import StackFileError, close_matches
+from bandwright.shapes import Flat, Function, Points, Quadratic, Shape
 from bandwright.stack import Layer, Stack, numbered_layer
 
-#: what may vary along a layer: key -> (text or number to float, float to text or number)
-SHAPED: Mapping[str, tuple[Callable[[object, str], float], Callable[[float], str | float]]] = {
-    "x": (q.as_fraction, float),
-    "y": (q.as_fraction, float),
-    "edge": (q.as_energy, q.energy_text),
-    "mass": (q.as_mass, float),
-    "gap": (q.as_energy, q.energy_text),
-    "nonparabolicity": (q.as_inverse_energy, q.inverse_energy_text),
+#: what may vary along a layer: key -> what writes one float of it
+SHAPED: Mapping[str, Callable[[float], str | float]] = {
+    "x": float,
+    "y": float,
+    "edge": q.energy_text,
+    "mass": float,
+    "gap": q.energy_text,
+    "nonparabolicity": q.inverse_energy_text,
 }
 PLAIN = ("label", "material", "thickness", "grading", "field", "donors", "acceptors")
 LAYER_KEYS = (*PLAIN, *SHAPED)
@@ -95,12 +95,10 @@ def check_keys(found: Mapping[str, Any], known: tuple[str, ...], where: str | No
 def layer_from(entries: Mapping[str, Any], number: int) -> Layer:
     """Return the layer that a mapping of `LAYER_KEYS` describes.
 
-    ``grading`` may be one word for all pairs, or a mapping from key to word.
-
     Raises
     ------
     StackFileError
-        If a key is unknown or the grading is for something that is no pair.
+        If a key is unknown.
     StackError, QuantityError
         If the layer can't be grown; the text begins with the layer's number.
 
@@ -109,27 +107,8 @@ def layer_from(entries: Mapping[str, Any], number: int) -> Layer:
     >>> layer_from({"thickness": "6.2 nm", "material": "GaAs"}, 1)
     Layer('6.2 nm', 'GaAs')
     """
-    where = place(number, entries)
-    check_keys(entries, LAYER_KEYS, where)
-    inputs = dict(entries)
-    grading = inputs.get("grading")
-    if isinstance(grading, Mapping):
-        del inputs["grading"]
-        for key, word in grading.items():
-            if key not in SHAPED or word not in GRADINGS:
-                raise StackFileError(
-                    f"grading: got {key} = {q.show(word)}; write a word for all pairs"
-                    " ('linear', 'quadratic'), or one for a key such as x",
-                    where,
-                )
-            pair = inputs.get(key)
-            if not isinstance(pair, list | tuple) or len(pair) != 2:
-                raise StackFileError(f"grading: {key} is no pair, so it has no grading", where)
-            try:
-                inputs[key] = as_shape(pair, SHAPED[key][0], key, word)
-            except BandwrightError as error:
-                raise error.at(where) from None
-    return numbered_layer(number, **inputs)
+    check_keys(entries, LAYER_KEYS, place(number, entries))
+    return numbered_layer(number, **entries)
 
 
 def entries_of(layer: Layer, number: int) -> dict[str, Any]:
@@ -150,11 +129,8 @@ def entries_of(layer: Layer, number: int) -> dict[str, Any]:
     entries["thickness"] = q.length_text(layer.thickness)
     for key, shape in layer.shapes:
         entries[key] = _shape_value(key, shape, place(number, entries))
-    pairs = [(k, s) for k, s in layer.shapes if not isinstance(s, Flat | Points)]
-    quadratic = [key for key, shape in pairs if isinstance(shape, Quadratic)]
-    if quadratic:
-        mixed = len(quadratic) < len(pairs)
-        entries["grading"] = dict.fromkeys(quadratic, "quadratic") if mixed else "quadratic"
+    if any(isinstance(shape, Quadratic) for _, shape in layer.shapes):
+        entries["grading"] = "quadratic"
     if layer.field is not None:
         entries["field"] = q.field_text(layer.field)
     for key, density in (("donors", layer.donors), ("acceptors", layer.acceptors)):
@@ -164,7 +140,7 @@ def entries_of(layer: Layer, number: int) -> dict[str, Any]:
 
 
 def _shape_value(key: str, shape: Shape, where: str) -> Any:
-    text = SHAPED[key][1]
+    text = SHAPED[key]
     if isinstance(shape, Function):
         raise StackFileError(
             f"{key} is a callable, which can't be written; write the tabulated copy that"
