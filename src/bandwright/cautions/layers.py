@@ -49,7 +49,11 @@ def materials(levels: Levels) -> list[str]:
 def charges(levels: Levels) -> list[str]:
     """Return that doping has no effect yet."""
     written = levels.stack.written()
-    doped = [w.name for w in written if w.layer.donors or w.layer.acceptors]
+    doped = [
+        one.name
+        for one in written
+        if any(d is not None and d.value > 0.0 for d in (one.layer.donors, one.layer.acceptors))
+    ]
     if not doped:
         return []
     return [
