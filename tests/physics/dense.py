@@ -49,25 +49,28 @@ class Dense:
     clamped: np.ndarray = field(default_factory=lambda: np.zeros(0, dtype=bool))
 
     def products(self, moment=0):
-        """<i|j> (moment 0) or z_ij (moment 1) with the two-band product, normalised."""
+        """<i|j> (moment 0) or z_ij (moment 1) with the two-band product, normalised.
+
+        b = dm/dE of a pair is zero where either state's mass is clamped.
+        """
         z, weight, edge, mass, inverse = self.mesh.points()
         u, du = self.mesh.fields(self.vectors)
-        p, bp = np.empty_like(du), np.empty_like(du)
+        p = np.empty_like(du)
         for i, energy in enumerate(self.energies):
             m, b = mass_at(energy, edge, mass, inverse)
-            p[i], bp[i] = du[i] / m, b * du[i] / m
+            p[i] = np.sqrt(H2M * b) * du[i] / m
         lever = weight * (z if moment else 1.0)
-        out = (u * lever) @ u.T + H2M * (p * lever) @ bp.T
-        norm = np.einsum("iq,iq,q->i", u, u, weight) + H2M * np.einsum("iq,iq,q->i", p, bp, weight)
+        out = (u * lever) @ u.T + (p * lever) @ p.T
+        norm = ((u**2 + p**2) * weight).sum(axis=1)
         faces = zip(self.mesh.end_curves, (0, -1), (-1, 1), (0.0, self.mesh.length), strict=True)
         for face, node, side, place in faces:
             if face is None:
                 continue
             m, b = mass_at(self.energies, face[0], face[1], face[2])
             kappa = np.sqrt(m * (face[0] - self.energies) / H2M)
-            q = kappa / m
+            q = np.sqrt(H2M * b) * kappa / m
             amplitude = np.outer(self.vectors[node], self.vectors[node])
-            amplitude = amplitude * (1 + H2M * b[None, :] * np.outer(q, q))
+            amplitude = amplitude * (1 + np.outer(q, q))
             reach = kappa[:, None] + kappa[None, :]
             norm += np.diag(amplitude / reach)
             out += amplitude * ((place / reach + side / reach**2) if moment else 1 / reach)
