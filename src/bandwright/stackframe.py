@@ -181,7 +181,7 @@ def _value(name: str, cell: Any, unit: str, where: str) -> Any:
         if isinstance(cell, int) and not isinstance(cell, bool):
             return str(cell)
         if not isinstance(cell, str):
-            raise StackFileError(f"{name}: got {show(cell)}; write text", f"{where}, {name}")
+            raise StackFileError(f"{name}: got {show(cell)}; write text", where)
         return cell
     if not unit:
         return cell

@@ -270,4 +270,8 @@ def _find(stack: Stack, name: str) -> tuple[list[Written], str]:
 
 
 def _near(stack: Stack, name: str) -> str:
-    return close_matches(name, (*_STACK_UNITS, *(p.name for p in list_parameters(stack))))
+    try:
+        listed = [parameter.name for parameter in list_parameters(stack)]
+    except BandwrightError:  # a formula that can't be read is not what is asked about
+        listed = []
+    return close_matches(name, (*_STACK_UNITS, *listed))

@@ -110,7 +110,9 @@ def loads(text: str, folder: str | os.PathLike[str] = ".", *, source: str = "sta
     try:
         content = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
-        raise StackFileError(f"not TOML: {error}", source) from None
+        end = f"at line {text.rstrip().count(chr(10)) + 1}, the end of the document"
+        reason = str(error).replace("at end of document", end)
+        raise StackFileError(f"not TOML: {reason}", source) from None
     try:
         return _stack(content, folder)
     except BandwrightError as error:

@@ -1,4 +1,7 @@
-"""A value along a layer in one text: ``0.3``, ``0 to 0.3 quadratic``, ``0 at 0 nm to 0.3 at 8 nm``."""
+"""A value along a layer in one text, for lines and cells.
+
+``0.3``, ``0 to 0.3``, ``0 to 0.3 quadratic``, ``0 at 0 nm to 0.12 at 3 nm to 0.3 at 8 nm``.
+"""
 
 from __future__ import annotations
 
