@@ -187,7 +187,7 @@ def replace(stack: Stack, name: str, value: float) -> Stack:
             stack = stack.with_layer(member.number, replaced(member.layer, key, value))
         return stack
     except BandwrightError as error:
-        raise error.at(name) from None
+        raise error if str(error).startswith(f"{name}:") else error.at(name) from None
 
 
 def shifted(stack: Stack, name: str, step: float, *, monolayer_nm: float | None = None) -> Stack:
