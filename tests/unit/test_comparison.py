@@ -1,0 +1,144 @@
+import math
+
+import numpy as np
+import pytest
+
+import bandwright as bw
+from bandwright import comparison
+from bandwright.comparison import METRICS, add_metric
+from bandwright.errors import QuantityError, StackError, UnknownName
+
+DEFAULT = [
+    "name", "levels", "upper", "lower", "wavelength_um", "energy_meV", "dipole_nm",
+    "oscillator_strength", "largest_difference_meV", "thickness_nm", "reason",
+]  # fmt: skip
+
+
+def design(width, **arguments):
+    text = f"30 nm Al0.3Ga0.7As, {width} nm GaAs, 30 nm Al0.3Ga0.7As"
+    return bw.parse_line(text, **arguments)
+
+
+BAD = bw.Stack([bw.Layer("30 nm", "Al0.3Ga0.6As"), bw.Layer("8 nm", "GaAs")], name="swapped")
+
+
+def test_one_row_a_design_with_its_own_numbers():
+    stacks = [design(8, name="thick"), design(7)]
+    table = bw.compare(stacks)
+    assert list(table.columns) == DEFAULT and table.index.name == "design"
+    assert table.index.tolist() == [1, 2] and table["name"].tolist() == ["thick", None]
+    for number, stack in enumerate(stacks, start=1):
+        levels = bw.solve(stack)
+        line = levels.lines().strongest
+        found = table.loc[number]
+        assert found["levels"] == len(levels.energies)
+        for column in DEFAULT[2:8]:
+            assert found[column] == getattr(line, column)
+        difference = np.abs(levels.phase_integral - levels.energies).max() * 1e3
+        assert found["largest_difference_meV"] == pytest.approx(difference)
+        assert found["thickness_nm"] == levels.profile.thickness
+        assert found["reason"] is None
+    assert table["levels"].dtype == np.int64 and table["upper"].dtype == np.int64
+    assert table["wavelength_um"].dtype == np.float64
+
+
+def test_a_design_that_fails_keeps_its_row_with_the_reason():
+    table = bw.compare([design(8), BAD, design(7)])
+    assert table["reason"].notna().tolist() == [False, True, False]
+    row = table.loc[2]
+    assert row["name"] == "swapped" and math.isnan(row["wavelength_um"])
+    assert "Al 0.3 and Ga 0.6 add up to 0.9 instead of 1" in row["reason"]
+    assert "layer 1 (Al0.3Ga0.6As)" in row["reason"]
+    assert table.loc[1, "wavelength_um"] > table.loc[3, "wavelength_um"]
+
+
+def test_files_are_designs_and_a_missing_one_is_a_reason(tmp_path):
+    path = tmp_path / "well.toml"
+    bw.write_stack(design(8, name="from a file"), path)
+    table = bw.compare([path, str(path), tmp_path / "gone.toml"], ["levels"])
+    assert table["name"].tolist() == ["from a file", "from a file", str(tmp_path / "gone.toml")]
+    assert table["levels"].tolist()[:2] == [2, 2]
+    assert "gone.toml" in table.loc[3, "reason"]
+
+
+def test_a_design_without_a_line_is_no_failure():
+    table = bw.compare([design(3), design(8)])
+    assert table["levels"].tolist() == [1, 2]
+    assert math.isnan(table.loc[1, "wavelength_um"]) and table.loc[1, "reason"] is None
+
+
+def test_levels_of_the_box_are_not_counted():
+    stack = design(8, field="20 kV/cm", electrons_run="to surface")
+    levels = bw.solve(stack)
+    assert levels.of_box.any()
+    assert bw.compare([stack])["levels"].tolist() == [int((~levels.of_box).sum())]
+
+
+def test_chosen_metrics_and_own_ones():
+    table = bw.compare([design(8)], ["frequency_THz", "wavenumber_per_cm", "cautions"])
+    assert list(table.columns) == [
+        "name",
+        "frequency_THz",
+        "wavenumber_per_cm",
+        "cautions",
+        "reason",
+    ]
+    line = bw.solve(design(8)).lines().strongest
+    assert table.loc[1, "frequency_THz"] == line.frequency_THz
+    own = bw.compare([design(8)], {"ground_meV": lambda solved: solved.levels.energies[0] * 1e3})
+    assert own["ground_meV"].tolist() == [bw.solve(design(8)).energies[0] * 1e3]
+
+
+def test_a_metric_added_by_its_column(monkeypatch):
+    monkeypatch.setattr(comparison, "METRICS", dict(METRICS))
+    add_metric("layers", lambda solved: len(solved.stack.grown()))
+    assert bw.compare([design(8)], ["layers"])["layers"].tolist() == [3]
+    with pytest.raises(StackError, match="metric 'layers' is taken; choose another name"):
+        add_metric("layers", len)
+    with pytest.raises(StackError, match="metric 'reason' is taken"):
+        add_metric("reason", len)
+    with pytest.raises(StackError, match="metric 'sigma_um': got 3; give a function"):
+        add_metric("sigma_um", 3)
+
+
+def test_filters_choose_which_line_is_the_strongest():
+    stack = design(12)
+    table = bw.compare([stack], ["upper", "lower"], window=("15 um", "30 um"))
+    line = bw.solve(stack).lines(window=("15 um", "30 um")).strongest
+    assert table.loc[1].tolist()[1:3] == [line.upper, line.lower]
+    weak = bw.compare([stack], ["wavelength_um"], strength=1e3)
+    assert math.isnan(weak.loc[1, "wavelength_um"])
+
+
+def test_arguments_of_solve_are_handed_on():
+    one = bw.compare([design(8)], ["energy_meV"], bands="one-band").loc[1, "energy_meV"]
+    assert one == bw.solve(design(8), bands="one-band").lines().strongest.energy_meV
+    assert bw.compare([design(12)], ["levels"], at_most=1)["levels"].tolist() == [1]
+
+
+def test_no_designs_make_an_empty_table():
+    table = bw.compare([])
+    assert list(table.columns) == DEFAULT and len(table) == 0
+
+
+@pytest.mark.parametrize(
+    ("stacks", "says"),
+    [
+        (design(8), r"stacks: got Stack.*; give a list of stacks, \[stack, \.\.\.\]"),
+        ("well.toml", r"stacks: got 'well.toml'; give a list of stacks"),
+        (7, r"stacks: got 7; give a list of stacks"),
+        ([design(8), 7], r"design 2: got 7; a Stack or a path is due"),
+    ],
+)
+def test_what_is_no_list_of_designs(stacks, says):
+    with pytest.raises(StackError, match=says):
+        bw.compare(stacks)
+
+
+def test_a_metric_that_does_not_exist_and_filters_that_mean_nothing():
+    with pytest.raises(UnknownName, match=r"none of the name 'wavelenth_um'; did you mean"):
+        bw.compare([design(8)], ["wavelenth_um"])
+    with pytest.raises(QuantityError, match="window: got"):
+        bw.compare([design(8)], window="8 um")
+    with pytest.raises(TypeError, match="unexpected keyword"):
+        bw.compare([design(8)], belw="1 eV")
