@@ -19,12 +19,12 @@ from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
-from scipy.special import airy, airye, gammaln, loggamma
+from scipy.special import airy, gammaln, loggamma
 
 Floats = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
 
-_FAR = 12.0  # beyond it the asymptotic series below are good to 1e-13
+_FAR = 10.0  # beyond it the series below are good to 1e-10, and scipy's airy is slow
 _NONE = 1e12  # a scaled distance that stands for "no turning point anywhere near"
 
 
@@ -58,22 +58,21 @@ def allowed_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
         with respect to x; the phase beyond (2/3) x^(3/2) + pi/4 [DLMF 9.8.22].
     """
     near = distance < _FAR
-    x = np.where(near, distance, 0.0)
+    x = distance[near]
     ai, aip, bi, bip = airy(-x)
     square = ai * ai + bi * bi
-    logarithmic = -(ai * aip + bi * bip) / square
-    phase = np.arctan2(ai, bi) - 2.0 / 3.0 * x**1.5 - np.pi / 4
-    phase = phase - 2 * np.pi * np.round(phase / (2 * np.pi))
+    turn = np.arctan2(ai, bi) - 2.0 / 3.0 * x**1.5 - np.pi / 4
     far = np.where(near, _FAR, np.minimum(distance, _NONE))
     c = far**-3.0
-    series = 1 - c * (5 / 32 - c * (1155 / 2048 - c * (425425 / 65536)))
+    factor = 1 - c * (5 / 32 - c * (1155 / 2048 - c * (425425 / 65536)))
     derivative = c * (15 / 32 - c * (3465 / 1024 - c * (3828825 / 65536)))
     tail = c * (-5 / 32 + c * (1105 / 6144 - c * (82825 / 65536 - c * (1282031525 / 58720256))))
-    return (
-        np.where(near, np.pi * np.sqrt(x) * square, series),
-        np.where(near, logarithmic, (-0.5 + derivative / series) / (2 * far)),
-        np.where(near, phase, 2.0 / 3.0 * far**1.5 * tail),
-    )
+    logarithmic = (-0.5 + derivative / factor) / (2 * far)
+    phase = 2.0 / 3.0 * far**1.5 * tail
+    factor[near] = np.pi * np.sqrt(x) * square
+    logarithmic[near] = -(ai * aip + bi * bip) / square
+    phase[near] = turn - 2 * np.pi * np.round(turn / (2 * np.pi))
+    return factor, logarithmic, phase
 
 
 def forbidden_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
@@ -86,28 +85,25 @@ def forbidden_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
         exponent beyond (2/3) x^(3/2) + (ln 2) / 2 (DLMF 9.7).
     """
     near = distance < _FAR
-    x = np.where(near, distance, 0.0)
-    ai, aip, bi, bip = airye(x)
-    logarithmic = 0.5 * (aip / ai + bip / bi)
-    exponent = 0.5 * np.log(bi / ai) - 0.5 * np.log(2.0)
+    x = distance[near]
+    ai, aip, bi, bip = airy(x)
     far = np.where(near, _FAR, np.minimum(distance, _NONE))
     c = far**-3.0
-    series = 1 + c * (5 / 32 + c * (1155 / 2048 + c * (425425 / 65536)))
+    factor = 1 + c * (5 / 32 + c * (1155 / 2048 + c * (425425 / 65536)))
     derivative = -c * (15 / 32 + c * (3465 / 1024 + c * (3828825 / 65536)))
     tail = c * (5 / 32 + c * (1105 / 6144 + c * (82825 / 65536 + c * (1282031525 / 58720256))))
-    return (
-        np.where(near, 2 * np.pi * np.sqrt(x) * ai * bi, series),
-        np.where(near, logarithmic, (-0.5 + derivative / series) / (2 * far)),
-        np.where(near, exponent, 2.0 / 3.0 * far**1.5 * tail),
-    )
+    logarithmic = (-0.5 + derivative / factor) / (2 * far)
+    exponent = 2.0 / 3.0 * far**1.5 * tail
+    factor[near] = 2 * np.pi * np.sqrt(x) * ai * bi
+    logarithmic[near] = 0.5 * (aip / ai + bip / bi)
+    exponent[near] = 0.5 * np.log(bi / (2 * ai)) - 2.0 / 3.0 * x**1.5
+    return factor, logarithmic, exponent
 
 
-def airy_face(q: Floats, slope: Floats, plain: Mask) -> Face:
+def airy_face(q: Floats, slope: Floats) -> Face:
     """Return a face where Q = ``q`` and Q' = ``slope``, by the Airy functions of that slope.
 
-    For a linear Q this is exact. ``plain`` marks pieces whose phase beyond the action counts
-    only within one scaled distance of the turning point, so that the condition between hard
-    walls is the plain one, action = n pi.
+    For a linear Q this is exact.
     """
     steep = np.maximum(np.abs(slope), 1e-300)
     with np.errstate(over="ignore"):
@@ -117,8 +113,6 @@ def airy_face(q: Floats, slope: Floats, plain: Mask) -> Face:
     scale = steep ** (1.0 / 3.0)
     m_factor, m_log, phase = allowed_modulus(np.where(allowed, x, _NONE))
     n_factor, n_log, exponent = forbidden_modulus(np.where(allowed, _NONE, x))
-    fade = np.clip((x - 0.3) / 0.7, 0.0, 1.0)
-    weight = np.where(plain, 1 - fade * fade * (3 - 2 * fade), 1.0)
     root = np.sqrt(np.maximum(np.abs(q), 1e-300))
     tiny = x < 1e-8  # at the turning point: Ai, Bi at zero instead of 0 / 0
     ai, _, bi, _ = airy(0.0)
@@ -131,9 +125,16 @@ def airy_face(q: Floats, slope: Floats, plain: Mask) -> Face:
         allowed,
         square,
         np.where(allowed, m_log * sign * scale, -n_log * sign * scale),
-        np.where(allowed, -sign * phase * weight, -sign * exponent),
+        np.where(allowed, -sign * phase, -sign * exponent),
         np.maximum(x, 1e-6),
     )
+
+
+def rise(x: Floats) -> Floats:
+    """Return 0 for x <= 0, 1 for x >= 1, and a smooth rise between."""
+    t = np.clip(x, 0.0, 1.0)
+    smooth: Floats = t * t * (3 - 2 * t)
+    return smooth
 
 
 def gamma_ratio(height: Floats) -> Floats:
@@ -173,7 +174,8 @@ def bottom_exponent(height: Floats) -> Floats:
     """
     h = np.maximum(np.minimum(height, 1e8), 1e-300)
     exact = 0.5 * (0.5 * np.log(2 * np.pi) + h * (np.log(h) - 1) - gammaln(h + 0.5))
-    return np.where(height > 1e4, 1 / (48 * h), exact)
+    amplitude: Floats = np.where(height > 1e4, 1 / (48 * h), exact)
+    return amplitude
 
 
 def top_phase(height: Floats) -> Floats:
@@ -186,13 +188,16 @@ def top_phase(height: Floats) -> Floats:
     large = np.abs(a) > 1e4
     safe = np.where(large, 1.0, a)
     exact = 0.5 * (loggamma(0.5 + 1j * safe).imag - safe * np.log(np.abs(safe)) + safe)
-    return np.where(large, 1 / (48 * a), exact)
+    phase: Floats = np.where(large, 1 / (48 * a), exact)
+    return phase
 
 
 def top_exponent(theta: Floats) -> Floats:
     """Return half of arsinh(exp(2 theta)): theta + (ln 2)/2 deep below the top, 0 far above."""
     capped = np.minimum(theta, 300.0)
-    return np.where(theta > 17.0, theta + 0.5 * np.log(2.0), 0.5 * np.arcsinh(np.exp(2 * capped)))
+    near = 0.5 * np.arcsinh(np.exp(2 * capped))
+    exponent: Floats = np.where(theta > 17.0, theta + 0.5 * np.log(2.0), near)
+    return exponent
 
 
 def edge_phase(k: Floats, kappa: Floats) -> Floats:
@@ -211,4 +216,5 @@ def edge_phase(k: Floats, kappa: Floats) -> Floats:
     kappa = np.clip(kappa, 0.0, 1e4)
     action = k * np.log(4 * k * k / (k * k + kappa * kappa)) - 2 * kappa * np.arctan2(k, kappa)
     far = (loggamma(kappa + 1j * k) + loggamma(1 + kappa + 1j * k) - loggamma(2j * k)).imag
-    return np.pi / 4 - action - far
+    phase: Floats = np.pi / 4 - action - far
+    return phase

@@ -38,6 +38,7 @@ class Piece:
     bottom: float = 0.0
     top: float = 0.0
     walls: tuple[bool, bool] = (False, False)  # whether the low and the high face is a wall
+    alone: bool = False  # whether its section is all there is between two walls
 
 
 def derivative(curve: Curve, depth: float, inward: int, reach: float) -> tuple[float, float]:
@@ -47,8 +48,9 @@ def derivative(curve: Curve, depth: float, inward: int, reach: float) -> tuple[f
     (+1 or -1) within ``reach`` [nm], as it may end there.
     """
     if isinstance(curve, Polynomial):
-        c = np.polynomial.Polynomial(curve.coefficients)
-        return float(c.deriv(1)(depth)), float(c.deriv(2)(depth))
+        c = list(enumerate(curve.coefficients))
+        return (sum(n * a * depth ** (n - 1) for n, a in c[1:]),
+                sum(n * (n - 1) * a * depth ** (n - 2) for n, a in c[2:]))
     h = inward * reach * 2e-3
     value = curve.at(depth + h * np.arange(6.0))
     first = (-137 / 60, 5.0, -5.0, 10 / 3, -5 / 4, 1 / 5)
@@ -108,7 +110,7 @@ def pieces_of(section: Section, walls: tuple[bool, bool] = (False, False)) -> li
         low, high = (i, i + 1) if rises else (i + 1, i)
         ends = (walls[0] and i == 0, walls[1] and i == len(cuts) - 2)
         found.append(Piece(section, cuts[low], b - a, 1 if rises else -1,
-                           scales[low], scales[high], ends if rises else ends[::-1]))
+                           scales[low], scales[high], ends if rises else ends[::-1], all(walls)))
     return found
 
 
@@ -125,9 +127,8 @@ def _scale(section: Section, depth: float, cuts: list[float], index: int) -> flo
         return 0.0
     mass = float(section.mass.at(np.array([depth]))[0])
     bent = max(abs(curvature), 1e-9 * rise / reach**2)
-    if bent == 0.0:
-        return 0.5 * reach * mass
-    return min(float((2 * bent / (H2M * mass**3)) ** -0.25), 0.5 * reach * mass)
+    widest = 0.5 * max(beside) * mass
+    return min(float((2 * bent / (H2M * mass**3)) ** -0.25), widest) if bent > 0.0 else widest
 
 
 class Batch:
@@ -147,6 +148,8 @@ class Batch:
         self.length = np.array([p.length for p in pieces])
         self.bottom = np.array([[p.bottom] for p in pieces])
         self.top = np.array([[p.top] for p in pieces])
+        self.alone = np.array([[p.alone] for p in pieces])
+        self.tilted = all(p.section.tilted for p in pieces)
         self.plain = np.array([[w and not _linear(p.section) for p in pieces for w in p.walls]]
                               ).reshape(-1, 2).T
         self._curves = {
@@ -186,7 +189,8 @@ class Batch:
         e = np.clip(energies, low, high)
         with np.errstate(divide="ignore", invalid="ignore"):
             local = (e - low) * (high - e) / ((high - low) * slope)
-        return np.clip(np.nan_to_num(local), 0.25 * self.width, 2.0 * self.width)
+        width: Floats = np.clip(np.nan_to_num(local), 0.25 * self.width, 2.0 * self.width)
+        return width
 
     def _slopes(self, name: str, which: int = 0) -> Floats:
         value = np.zeros((2, len(self.pieces)))
@@ -208,8 +212,8 @@ class Batch:
         length = self.length[:, None]
         share = np.clip((e - low) / np.where(high > low, high - low, 1.0), 0.0, 1.0)
         share = np.where(e > high, 1.0, np.where(e < low, 0.0, share))
-        s = share * length
-        if all(p.section.tilted for p in self.pieces):
+        s: Floats = share * length
+        if self.tilted:
             return s
         return self._refined(s, e)
 
@@ -233,7 +237,8 @@ class Batch:
             a, fa = np.where(use_left, d, left), np.where(use_left, fd, lf)
             b, fb = np.where(use_right, d, right), np.where(use_right, fd, rf)
         between = np.where(fb - fa > 0, a - fa * (b - a) / np.where(fb > fa, fb - fa, 1.0), a)
-        return np.where(inside, between, s)
+        found: Floats = np.where(inside, between, s)
+        return found
 
 
 def _linear(section: Section) -> bool:

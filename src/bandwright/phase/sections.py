@@ -23,6 +23,7 @@ from .maps import (
     bottom_exponent,
     bottom_face,
     edge_phase,
+    rise,
     top_exponent,
     top_face,
     top_phase,
@@ -33,7 +34,6 @@ Floats = npt.NDArray[np.float64]
 Counts = npt.NDArray[np.int64]
 
 _HALF_LN2 = 0.5 * float(np.log(2.0))
-_LEVEL = 1e-13  # (k3 h)^3 under which a tilt can't be told from a flat section
 
 
 class Phases(NamedTuple):
@@ -68,7 +68,7 @@ def flat_elements(h: Floats, edge: Floats, mass: Floats, inverse_gap: Floats,
     wave = np.where(t > 0, y, 1.0)
     tangent = np.tan(wave)
     decay = np.exp(-np.where(t > 0, 1.0, 2 * y))
-    between = -np.expm1(np.log(decay) * 2)
+    between = -np.expm1(-np.where(t > 0, 2.0, 4 * y))
     near, off = wave / tangent, wave * tangent
     f = np.where(t > 0, near - off, 2 * y * (1 + decay * decay) / between)
     g = np.where(t > 0, near + off, 4 * y * decay / between)
@@ -131,7 +131,7 @@ class Plan:
 
     def elements(self, energies: Floats, order: int = 1) -> Elements:
         """Return one element a piece, in growth order, at these energies [eV]."""
-        lists = [self._flats(energies)] if self.flats else [None]
+        lists: list[Elements | None] = [self._flats(energies) if self.flats else None]
         for batch in self.batches:
             lists.append(None if batch is None else piece_elements(batch, energies, order))
         n = len(self.rows), len(energies)
@@ -139,7 +139,7 @@ class Plan:
         clamped = np.empty(n, dtype=np.int64)
         for i, (kind, row, falls) in enumerate(self.rows):
             part = lists[kind]
-            assert part is not None
+            assert part is not None and part.clamped is not None
             low, high = (part.right, part.left) if falls else (part.left, part.right)
             left[i], right[i], off[i], clamped[i] = low[row], high[row], part.off[row], \
                 part.clamped[row]
@@ -161,9 +161,11 @@ class Plan:
 
     def _flats(self, energies: Floats) -> Elements:
         zero = np.zeros((1,))
-        columns = [np.array([[float(getattr(p.section, name).at(zero)[0])] for p in self.flats])
-                   for name in ("edge", "mass", "inverse_gap")]
-        return flat_elements(np.array([[p.length] for p in self.flats]), *columns, energies)
+        edge, mass, inverse_gap = (
+            np.array([[float(getattr(p.section, name).at(zero)[0])] for p in self.flats])
+            for name in ("edge", "mass", "inverse_gap"))
+        lengths = np.array([[p.length] for p in self.flats])
+        return flat_elements(lengths, edge, mass, inverse_gap, energies)
 
 
 def _kind(section: Section) -> int:
@@ -221,22 +223,29 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     zero = np.zeros_like(turn)
     action = integral(batch, energies, turn, zero)
     decay = integral(batch, energies, turn, length)
-    low_q, low = _face(batch, 0, energies, order)
-    high_q, high = _face(batch, 1, energies, order)
+    low_q, low = _face(batch, 0, energies)
+    high_q, high = _face(batch, 1, energies)
     inside = (low_q > 0) & (high_q <= 0)
     below = low_q <= 0
     bottom, top = batch.bottom > 0, batch.top > 0
     scaled = np.where(top, high_q * batch.top**2, 0.0)
     a = np.where(high_q > 0, -scaled, 2 * decay / np.pi)
     theta = np.where(high_q > 0, -0.5 * np.pi * scaled, decay)
+    over = 1 - rise((np.abs(a) - 0.5) / 0.75) * (high_q > 0)  # a top well below the level
+    peak = np.where(below, 0.0, over * top_phase(a)) if top.any() else 0.0
+    if order == 1:
+        low, high = _between_walls(batch, energies, low, high)
     total = action + low.shift
-    total = total + np.where(top, np.pi / 4 + np.where(below, 0.0, top_phase(a)),
-                             np.where(inside, np.pi / 4, -high.shift))
-    high_exponent = np.where(top, top_exponent(theta), decay + _HALF_LN2 + high.shift)
+    if order == 1 and batch.plain[1].any():  # joins the plain condition at the wall's own edge
+        lost = np.pi / 12 * (1 - rise(high.distance / 0.5))
+        total = total - np.where(inside & batch.plain[1][:, None], lost, 0.0)
+    total = total + np.where(top, np.pi / 4 + peak, np.where(inside, np.pi / 4, -high.shift))
+    high_exponent = np.where(top, over * top_exponent(theta), decay + _HALF_LN2 + high.shift)
     height = np.where(inside, 2 * action / np.pi, np.abs(low_q) * batch.bottom**2)
     round_, weight, phase = _smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
     larger = np.where(bottom, bottom_exponent(height), 0.0)
     larger = np.where(inside, larger * round_, larger)
+    weight = np.where(batch.alone & (high_q > 0), over * weight, weight)
     total = total + np.where(top | inside, weight * phase, 0.0)
     if order == 2:
         gain = next_order(batch, energies, inside, low_q > 0)
@@ -248,6 +257,19 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     return Phases(action, decay, total, exponent, low, high)
 
 
+def _between_walls(batch: Batch, energies: Floats, low: Face, high: Face) -> tuple[Face, Face]:
+    """Take what the Airy models add to the phase at hard walls away, above the piece's edge.
+
+    There is no turning point there, and the condition is the plain one, action = n pi.
+    """
+    bottom, top = (edge[:, None] for edge in batch.edge)
+    near = rise((top - energies) / np.maximum(0.2 * (top - bottom), 1e-300))
+    wall = batch.plain[..., None]
+    plain_high = wall[1] & high.allowed
+    return (low._replace(shift=np.where(wall[0], near * low.shift, low.shift)),
+            high._replace(shift=np.where(plain_high, 0.0, high.shift)))
+
+
 def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, high_q: Floats,
                  action: Floats, decay: Floats) -> tuple[Floats, Floats, Floats]:
     """Return how round the low side is (1 a parabola, 0 flat), and weight and phase of an edge.
@@ -255,7 +277,7 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
     Where the edge is flat on both sides of its rise, within the reach of the wave, the pi/4 of
     a turning point is corrected by the smooth step that has its two levels and its slope.
     """
-    if all(p.section.tilted for p in batch.pieces):
+    if batch.tilted:
         return np.ones_like(low_q), np.zeros_like(low_q), np.zeros_like(low_q)
     slant, curved = [], []
     for end, q, reach in ((0, low_q, action), (1, high_q, decay)):
@@ -274,10 +296,11 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
     k = np.sqrt(np.maximum(low_q, 0.0)) * width
     kappa = np.sqrt(np.maximum(-high_q, 0.0)) * width
     over = np.clip(1 - np.maximum(high_q, 0.0) / np.maximum(low_q, 1e-300), 0, 1)
-    return np.clip(slant[0] + curved[0], 0, 1), weight, np.where(low_q > 0, over * edge_phase(k, kappa), 0.0)
+    phase = np.where(low_q > 0, over * edge_phase(k, kappa), 0.0)
+    return np.clip(slant[0] + curved[0], 0, 1), weight, phase
 
 
-def _face(batch: Batch, end: int, energies: Floats, order: int) -> tuple[Floats, Face]:
+def _face(batch: Batch, end: int, energies: Floats) -> tuple[Floats, Face]:
     """Return Q and the model of the low (0) or high (1) faces."""
     s = batch.ends[end][:, None]
     x = energies - batch.edge[end][:, None]
@@ -288,8 +311,7 @@ def _face(batch: Batch, end: int, energies: Floats, order: int) -> tuple[Floats,
     m_slope = m1 * bracket + np.where(bracket > 0.05, mass * (x * i1 - v1 * inverse_gap), 0.0)
     q = x / (H2M * m)
     slope = (-v1 - x * m_slope / m) / (H2M * m * m)
-    plain = batch.plain[end][:, None] & np.full(q.shape, order == 1)
-    face = airy_face(q, slope, plain)
+    face = airy_face(q, slope)
     scale = batch.bottom if end == 0 else batch.top
     level = np.broadcast_to(scale > 0, q.shape)
     if level.any():
@@ -322,7 +344,8 @@ def integral(batch: Batch, energies: Floats, begin: Floats, end: Floats,
     x = e[..., None] - batch.at("edge", s)
     m = energy_mass(x, batch.at("mass", s), batch.at("inverse_gap", s))
     value = np.sqrt(np.abs(x) * m / H2M) * rate
-    return np.abs(end - begin) * (value * batch.weight).sum(axis=-1)
+    total: Floats = np.abs(end - begin) * (value * batch.weight).sum(axis=-1)
+    return total
 
 
 def next_order(batch: Batch, energies: Floats, inside: npt.NDArray[np.bool_],
@@ -363,4 +386,5 @@ def _bent(batch: Batch, base: Floats, energies: Floats) -> Floats:
     x = energies[..., None] - batch.at("edge", s)
     mass = energy_mass(x, batch.at("mass", s), batch.at("inverse_gap", s))
     root = np.sqrt(np.maximum(x / (H2M * mass), 1e-300))
-    return (batch.weight * jacobian * q2 / rate[1] * mass / root).sum(axis=-1)
+    total: Floats = (batch.weight * jacobian * q2 / rate[1] * mass / root).sum(axis=-1)
+    return total
