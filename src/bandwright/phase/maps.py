@@ -24,7 +24,9 @@ from scipy.special import airy, gammaln, loggamma
 Floats = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
 
-_FAR = 10.0  # beyond it the series below are good to 1e-10, and scipy's airy is slow
+_FAR = 10.0  # beyond it the series below are good to 1e-11, and scipy's airy is slow
+_MODULUS = (1.0, 5 / 32, 1155 / 2048, 425425 / 65536, 1301375075 / 8388608)
+_PHASE = (0.0, 5 / 32, 1105 / 6144, 82825 / 65536, 1282031525 / 58720256)
 _NONE = 1e12  # a scaled distance that stands for "no turning point anywhere near"
 
 
@@ -41,6 +43,15 @@ class Face(NamedTuple):
     slope: Floats
     shift: Floats
     distance: Floats
+
+
+def _series(x: Floats, sign: float) -> tuple[Floats, Floats, Floats]:
+    """Return the asymptotic series at x, ``sign`` -1 on the allowed side (DLMF 9.8.20, 9.8.22)."""
+    c = sign * x**-3.0
+    factor = np.polynomial.polynomial.polyval(c, _MODULUS)
+    derivative = -3 * np.polynomial.polynomial.polyval(c, [k * a for k, a in enumerate(_MODULUS)])
+    phase = 2 / 3 * x**1.5 * np.polynomial.polynomial.polyval(c, _PHASE)
+    return factor, (-0.5 + derivative / factor) / (2 * x), phase
 
 
 def allowed_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
@@ -63,12 +74,7 @@ def allowed_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
     square = ai * ai + bi * bi
     turn = np.arctan2(ai, bi) - 2.0 / 3.0 * x**1.5 - np.pi / 4
     far = np.where(near, _FAR, np.minimum(distance, _NONE))
-    c = far**-3.0
-    factor = 1 - c * (5 / 32 - c * (1155 / 2048 - c * (425425 / 65536)))
-    derivative = c * (15 / 32 - c * (3465 / 1024 - c * (3828825 / 65536)))
-    tail = c * (-5 / 32 + c * (1105 / 6144 - c * (82825 / 65536 - c * (1282031525 / 58720256))))
-    logarithmic = (-0.5 + derivative / factor) / (2 * far)
-    phase = 2.0 / 3.0 * far**1.5 * tail
+    factor, logarithmic, phase = _series(far, -1.0)
     factor[near] = np.pi * np.sqrt(x) * square
     logarithmic[near] = -(ai * aip + bi * bip) / square
     phase[near] = turn - 2 * np.pi * np.round(turn / (2 * np.pi))
@@ -88,12 +94,7 @@ def forbidden_modulus(distance: Floats) -> tuple[Floats, Floats, Floats]:
     x = distance[near]
     ai, aip, bi, bip = airy(x)
     far = np.where(near, _FAR, np.minimum(distance, _NONE))
-    c = far**-3.0
-    factor = 1 + c * (5 / 32 + c * (1155 / 2048 + c * (425425 / 65536)))
-    derivative = -c * (15 / 32 + c * (3465 / 1024 + c * (3828825 / 65536)))
-    tail = c * (5 / 32 + c * (1105 / 6144 + c * (82825 / 65536 + c * (1282031525 / 58720256))))
-    logarithmic = (-0.5 + derivative / factor) / (2 * far)
-    exponent = 2.0 / 3.0 * far**1.5 * tail
+    factor, logarithmic, exponent = _series(far, 1.0)
     factor[near] = 2 * np.pi * np.sqrt(x) * ai * bi
     logarithmic[near] = 0.5 * (aip / ai + bip / bi)
     exponent[near] = 0.5 * np.log(bi / (2 * ai)) - 2.0 / 3.0 * x**1.5

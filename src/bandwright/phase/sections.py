@@ -371,7 +371,7 @@ def _bent(batch: Batch, base: Floats, energies: Floats) -> Floats:
     turn = batch.turning(energies)[..., None]
     s = turn * (1 - batch.tau**2)
     jacobian = 2 * turn * batch.tau
-    h = 1e-3 * batch.length[:, None, None]
+    h = 3e-4 * batch.length[:, None, None]
     centre = np.clip(s, h, batch.length[:, None, None] - h)
     e = base[..., None]
     q, rate, m = [], [], []
