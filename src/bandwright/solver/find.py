@@ -178,21 +178,23 @@ def _newton(
     neighbours. A level counts as reached if it stayed inside its bracket; a step that leaves it
     is a sign of a neighbour's vector.
     """
-    z = np.repeat(_random(system.nodes)[:, None], len(energies), axis=1)
-    left = np.full(len(energies), np.inf)
-    inside = np.ones(len(energies), dtype=bool)
+    r = np.repeat(_random(system.nodes)[:, None], len(energies), axis=1)
+    narrow = _BENT + 4.0 / (highs - lows)
     for turn in range(_NEWTON_STEPS):
         matrix, slope = system.matrix_and_slope(energies)
-        for again in range(2 if turn == 0 else 1):
-            r = apply(slope, z) if turn or again else z
+        z = solve_shifted(matrix, r)
+        if turn == 0:
+            r = apply(slope, z)
             z = solve_shifted(matrix, r)
-        rayleigh = (z * apply(slope, z)).sum(axis=0)
-        step = -(z * r).sum(axis=0) / rayleigh
+        after = apply(slope, z)
+        rayleigh = (z * after).sum(axis=0)
+        step = (z * r).sum(axis=0) / -rayleigh
         moved = energies + step
         inside = (moved >= lows) & (moved <= highs)
         energies = np.where(inside, moved, energies)
-        z = z / np.sqrt(np.abs(rayleigh))
-        left = step * step * (_BENT + 4.0 / (highs - lows))
+        scale = np.sqrt(np.abs(rayleigh))
+        z, r = z / scale, after / scale
+        left = step * step * narrow
         if turn and ((left < accuracy) | ~inside).all():
             break
     return energies, z, inside & (left < accuracy)

@@ -24,8 +24,9 @@ Counts = npt.NDArray[np.int64]
 class Elements(NamedTuple):
     """One row an element, one column an energy; every array has shape (n_elements, n_energies).
 
-    ``left`` is A/B, ``right`` is D/B, ``off`` is 1/B, all [1/nm]; ``clamped`` counts each
-    element's own levels below E when u = 0 at both its faces; None says there are none.
+    ``left`` is A/B, ``right`` is D/B, ``off`` is 1/B, all [1/nm]; a further axis before the others
+    may stack values and derivatives. ``clamped`` counts each element's own levels below E when
+    u = 0 at both its faces; None says there are none.
     """
 
     left: Floats
@@ -35,18 +36,30 @@ class Elements(NamedTuple):
 
     def rows(self, which: npt.NDArray[np.int64]) -> Elements:
         """Return the elements of these rows, in this order."""
-        return Elements(*(None if c is None else c[which] for c in self))  # type: ignore[arg-type]
+        clamped = None if self.clamped is None else self.clamped[which]
+        left = self.left[..., which, :]
+        right = left if self.right is self.left else self.right[..., which, :]
+        return Elements(left, right, self.off[..., which, :], clamped)
 
 
 class Matrix(NamedTuple):
     """K(E) of the free faces: ``diagonal`` (n_nodes, n_energies), ``off`` one row fewer.
 
-    ``off`` holds -1/B. ``clamped`` (n_energies,) sums the elements' own levels; None is none.
+    ``off`` holds -1/B; a further axis before the others may stack K and its derivative.
+    ``clamped`` (n_energies,) sums the elements' own levels; None is none.
     """
 
     diagonal: Floats
     off: Floats
     clamped: Counts | None
+
+    def split(self) -> tuple[Matrix, Matrix]:
+        """Return K and its derivative of a stacked pair."""
+        value, slope = (
+            Matrix(diagonal, off, None)
+            for diagonal, off in zip(self.diagonal, self.off, strict=True)
+        )
+        return value, slope
 
 
 def assemble(elements: Elements, first: Floats | None, last: Floats | None) -> Matrix:
@@ -55,21 +68,21 @@ def assemble(elements: Elements, first: Floats | None, last: Floats | None) -> M
     Parameters
     ----------
     elements : Elements
-    first, last : array (n_energies,) or None
+    first, last : array (n_energies,), or stacked like the elements, or None
         What the outside adds to the end's diagonal (kappa/m for an open end below its edge);
         None is a wall: the end's face is dropped.
     """
     left, right, off, clamped = elements
-    n, energies = left.shape
+    *stack, n, energies = left.shape
     start, stop = int(first is None), n + int(last is not None)
-    diagonal = np.empty((n + 1, energies))
-    np.add(right[:-1], left[1:], out=diagonal[1:-1])
+    diagonal = np.empty((*stack, n + 1, energies))
+    np.add(right[..., :-1, :], left[..., 1:, :], out=diagonal[..., 1:-1, :])
     if first is not None:
-        np.add(left[0], first, out=diagonal[0])
+        np.add(left[..., 0, :], first, out=diagonal[..., 0, :])
     if last is not None:
-        np.add(right[-1], last, out=diagonal[-1])
+        np.add(right[..., -1, :], last, out=diagonal[..., -1, :])
     total = None if clamped is None else clamped.sum(axis=0)
-    return Matrix(diagonal[start:stop], -off[start : stop - 1], total)
+    return Matrix(diagonal[..., start:stop, :], -off[..., start : stop - 1, :], total)
 
 
 def count_below(matrix: Matrix) -> Counts:

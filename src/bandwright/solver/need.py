@@ -18,8 +18,10 @@ PHASE_LIMIT = 2.0
 MOST_SLICES = 2_000_000
 
 
-def needed(profile: Profile, high: float, tolerance: float) -> Indices:
+def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str]) -> Indices:
     """Return how many slices each section needs for levels up to ``high`` [eV].
+
+    A flat outer section with an open end needs none: it goes on for ever from its inner face.
 
     With k3 = (m F / h2m)^(1/3) of the steepest place, k4 likewise of the curvature, and the
     largest wave number k: steps of a fixed share of 1/k3, 1/k4, 1/k; the share falls with the
@@ -38,9 +40,18 @@ def needed(profile: Profile, high: float, tolerance: float) -> Indices:
         counts = np.where(numbers.flat, counts, np.ceil(numbers.thickness * rate))
         for index in np.flatnonzero(numbers.curved):
             counts[index] = _curved_need(profile.sections[index], high, share)
-    if len(counts) == 1:  # a face between two walls, so that K has a row
-        counts = np.maximum(counts, 2)
-    return np.maximum(counts, 1).astype(np.int64)
+    counts = np.maximum(counts, 1).astype(np.int64)
+    first, last = (
+        int(end == "open" and numbers.flat[row]) for end, row in zip(ends, (0, -1), strict=True)
+    )
+    if first + last < len(counts):
+        if first:
+            counts[0] = 0
+        if last:
+            counts[-1] = 0
+    if counts.sum() == 1:  # a face between two walls, so that K has a row
+        counts *= 2
+    return counts
 
 
 def _curved_need(section: Section, high: float, share: float) -> int:

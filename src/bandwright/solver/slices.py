@@ -84,7 +84,8 @@ class Slices:
     @cached_property
     def faces(self) -> Floats:
         """Positions of all slice faces [nm], shape (n_slices + 1,)."""
-        return np.asarray(np.concatenate(([0.0], np.cumsum(self.thickness))))
+        start = self.profile.faces[self.section[0]]
+        return np.asarray(start + np.concatenate(([0.0], np.cumsum(self.thickness))))
 
     def halved(self) -> Slices:
         """Return the same profile with every slice cut in two."""
@@ -92,23 +93,19 @@ class Slices:
 
     def elements(self, energies: Floats) -> Elements:
         """Return the elements at each energy [eV], see `Elements`."""
-        return self._elements(energies, slopes=False)[0]
+        return self._elements(energies, slopes=False)
 
-    def elements_and_slopes(self, energies: Floats) -> tuple[Elements, Elements]:
-        """Return the elements and their exact derivatives by E."""
-        value, slope = self._elements(energies, slopes=True)
-        return value, slope
+    def elements_and_slopes(self, energies: Floats) -> Elements:
+        """Return the elements and their exact derivatives by E, stacked along a new first axis."""
+        return self._elements(energies, slopes=True)
 
-    def _elements(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+    def _elements(self, energies: Floats, slopes: bool) -> Elements:
         energies = np.asarray(energies, dtype=float)
         parts = [(rows, kind(energies, slopes)) for rows, kind in self._kinds]
         if len(parts) == 1:
             rows, found = parts[0]
-            return found if rows is None else tuple(one.rows(rows) for one in found)
-        return tuple(
-            _joined([(rows, found[which]) for rows, found in parts], len(self))
-            for which in range(len(parts[0][1]))
-        )
+            return found if rows is None else found.rows(rows)
+        return _joined(parts, len(self))
 
     @cached_property
     def _kinds(self) -> tuple[tuple[Indices | None, _Constant | _Tilted | _Curved], ...]:
@@ -176,7 +173,7 @@ class _Constant:
         self.one_band_rate = self.square * mass
         self.one_band_a = h * mass
 
-    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+    def __call__(self, energies: Floats, slopes: bool) -> Elements:
         h, edge, mass, inverse_gap, _ = self.numbers
         above = energies - edge
         if self.two_band:
@@ -188,17 +185,22 @@ class _Constant:
             a, da, dt = self.one_band_a, None, self.one_band_rate
             t = dt * above
         f, g = half_wave_functions(t)
-        side, off = f / a, g / a
-        value = Elements(side, side, off, _half_waves(t))
         if not slopes:
-            return (value,)
+            f /= a
+            g /= a
+            return Elements(f, f, g, _half_waves(t))
+        side, off = np.empty((2, *f.shape)), np.empty((2, *f.shape))
         df, dg = half_wave_slopes(t, f, g)
-        d_side, d_off = df * dt, dg * dt
+        np.divide(f, a, out=side[0])
+        np.divide(g, a, out=off[0])
+        np.multiply(df, dt, out=side[1])
+        np.multiply(dg, dt, out=off[1])
         if da is not None:
-            d_side -= side * da
-            d_off -= off * da
-        d_side /= a
-        return value, Elements(d_side, d_side, d_off / a)
+            side[1] -= side[0] * da
+            off[1] -= off[0] * da
+        side[1] /= a
+        off[1] /= a
+        return Elements(side, side, off, None)
 
 
 class _Tilted:
@@ -207,7 +209,7 @@ class _Tilted:
     def __init__(self, numbers: _Numbers) -> None:
         self.numbers = numbers
 
-    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+    def __call__(self, energies: Floats, slopes: bool) -> Elements:
         h, edge, mass, inverse_gap, drop = self.numbers
         above = energies - edge
         omega, d_omega = tilted(h, above, drop, mass, inverse_gap)
@@ -241,37 +243,43 @@ class _Curved:
     def __init__(self, thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats) -> None:
         self.thickness, self.edge, self.mass, self.inverse_gap = thickness, edge, mass, inverse_gap
 
-    def __call__(self, energies: Floats, slopes: bool) -> tuple[Elements, ...]:
+    def __call__(self, energies: Floats, slopes: bool) -> Elements:
         local, b = local_mass(energies, self.edge, self.mass, self.inverse_gap)
         return _exponential(*magnus(self.thickness, energies, self.edge, local, b), slopes)
 
 
-def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> tuple[Elements, ...]:
+def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> Elements:
     """Return the elements of the propagators exp(omega), and their derivatives."""
     x, a, c = omega
     t = -(x * x + a * c)
     f, g = half_wave_functions(t)
-    left, right, off = (f + x) / a, (f - x) / a, g / a
-    value = Elements(left, right, off, _half_waves(t))
     if not slopes:
-        return (value,)
+        return Elements((f + x) / a, (f - x) / a, g / a, _half_waves(t))
+    left, right, off = (np.empty((2, *f.shape)) for _ in range(3))
+    np.divide(f + x, a, out=left[0])
+    np.divide(f - x, a, out=right[0])
+    np.divide(g, a, out=off[0])
     dx, da, dc = d_omega
     df, dg = half_wave_slopes(t, f, g)
     dt = -(2.0 * x * dx + a * dc + da * c)
     df *= dt
     dg *= dt
-    return value, Elements(
-        (df + dx - left * da) / a, (df - dx - right * da) / a, (dg - off * da) / a
-    )
+    np.divide(df + dx - left[0] * da, a, out=left[1])
+    np.divide(df - dx - right[0] * da, a, out=right[1])
+    np.divide(dg - off[0] * da, a, out=off[1])
+    return Elements(left, right, off, None)
 
 
 def _joined(parts: list[tuple[Indices | None, Elements]], rows: int) -> Elements:
     """Return the elements of all kinds in the order of the slices."""
-    shape = (rows, parts[0][1].left.shape[1])
+    *stack, _, columns = parts[0][1].left.shape
+    shape = (*stack, rows, columns)
     left, right, off = np.empty(shape), np.empty(shape), np.empty(shape)
     clamped: Indices | None = None
     for where, found in parts:
-        left[where], right[where], off[where] = found.left, found.right, found.off
+        left[..., where, :] = found.left
+        right[..., where, :] = found.right
+        off[..., where, :] = found.off
         if found.clamped is not None:
             clamped = np.zeros(shape, dtype=np.int64) if clamped is None else clamped
             clamped[where] = found.clamped
@@ -296,15 +304,11 @@ def _runs(section: Indices) -> Iterator[tuple[int, slice]]:
 
 
 def cut(profile: Profile, counts: Sequence[int] | Indices) -> Slices:
-    """Cut each section of a profile into that many equal slices."""
+    """Cut each section of a profile into that many equal slices; 0 leaves a section out."""
     counts = np.asarray(counts, dtype=np.int64)
-    whole = profile.numbers.thickness / counts
-    if len(counts) == counts.sum():
-        section = np.arange(len(counts))
-        return slice_at(profile, counts, section, np.zeros(len(counts)), whole)
     section = np.repeat(np.arange(len(counts)), counts)
-    within = np.arange(len(section)) - np.repeat(np.cumsum(counts) - counts, counts)
-    thickness = whole[section]
+    within = np.arange(len(section)) - (np.cumsum(counts) - counts)[section]
+    thickness = profile.numbers.thickness[section] / counts[section]
     return slice_at(profile, counts, section, within * thickness, thickness)
 
 
@@ -313,11 +317,6 @@ def slice_at(
 ) -> Slices:
     """Return slices at given places of given sections, in ascending order of section."""
     numbers = profile.numbers
-    if len(section) == len(counts) and numbers.all_flat:
-        return Slices(
-            profile, counts, section, start, thickness, numbers.edge[:, 0], numbers.mass,
-            numbers.inverse_gap, np.zeros(len(counts)), numbers.flat, numbers.curved,
-        )  # fmt: skip
     flat, curved = numbers.flat[section], numbers.curved[section]
     edge = numbers.edge[section, 0]
     mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]

@@ -121,9 +121,9 @@ def solve_profile(
     floor = lowest_edge(profile) if low is None else low
     top = high = max(high, floor + tolerance)
     if at_most is not None:
-        top = _top(System(cut(profile, needed(profile, high, 1e-4)), ends), floor, high,
+        top = _top(System(cut(profile, needed(profile, high, 1e-4, ends)), ends), floor, high,
                    at_most + skip)  # fmt: skip
-    counts = needed(profile, top, tolerance)
+    counts = needed(profile, top, tolerance, ends)
     flat = profile.numbers.flat
     exact = bool(flat.all())
     accuracy = min(1e-3 * tolerance, 1e-9)

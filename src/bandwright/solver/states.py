@@ -16,6 +16,7 @@ import numpy.typing as npt
 from bandwright.constants import H2M
 from bandwright.solver.matrix import Elements
 from bandwright.solver.propagation import local_mass
+from bandwright.solver.sensitivity import Reach, Sensitivity, sensitivity, tail_reaches
 from bandwright.solver.slices import slice_at
 from bandwright.solver.system import System
 
@@ -34,6 +35,7 @@ class _Quadrature(NamedTuple):
     u: Floats
     p: Floats  # sqrt(h2m b) psi'/m: the valence-like partner of the two-band product
     clamped: npt.NDArray[np.bool_]
+    rise: Floats  # psi'/m
 
 
 class _Tail(NamedTuple):
@@ -126,7 +128,7 @@ class States:
         here = slice_at(slices.profile, slices.counts, section, place, np.zeros_like(z))
         _, b = local_mass(self.energies[:, None], here.edge, here.mass, here.inverse_gap)
         clamped = (b == 0.0) & (here.inverse_gap > 0.0)
-        return _Quadrature(z, weight, section, u, np.sqrt(H2M * b) * p, clamped)
+        return _Quadrature(z, weight, section, u, np.sqrt(H2M * b) * p, clamped, p)
 
     def _tail_partner(self, tail: _Tail, row: int) -> Floats:
         section = self.system.slices.profile.sections[row]
@@ -190,13 +192,23 @@ class States:
         q = self._quadrature
         sections = len(self.system.slices.profile.sections)
         density = (q.u**2 + q.p**2) * q.weight
-        starts = np.searchsorted(q.section, np.arange(sections))
-        result = np.add.reduceat(density, starts, axis=1)
+        present, starts = np.unique(q.section, return_index=True)
+        result = np.zeros((len(self.energies), sections))
+        result[:, present] = np.add.reduceat(density, starts, axis=1)
         for tail in self._tails:
             row = 0 if tail.outward < 0 else -1
             partner = self._tail_partner(tail, row)
             result[:, row] += (tail.u**2 + partner**2) / (2.0 * tail.decay)
         return np.asarray(result)
+
+    @cached_property
+    def sensitivity(self) -> Sensitivity:
+        """What small changes of the profile do to each energy, tails beyond open ends included."""
+        q, profile = self._quadrature, self.system.slices.profile
+        parts = [Reach(q.section, q.z - profile.faces[q.section], q.weight, q.u, q.rise)]
+        for tail in self._tails:
+            parts += tail_reaches(profile, tail.position, tail.outward, tail.decay, tail.u, tail.p)
+        return sensitivity(profile, self.energies, parts)
 
     @property
     def clamped(self) -> Floats:

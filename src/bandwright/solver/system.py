@@ -37,12 +37,14 @@ class OpenEnd(NamedTuple):
         rate /= H2M * self._mass(energies)[0]
         return np.sqrt(rate)
 
-    def value_and_slope(self, energies: Floats) -> tuple[Floats, Floats]:
-        """Return kappa/m and its derivative by E (huge at the edge itself)."""
+    def value_and_slope(self, energies: Floats) -> Floats:
+        """Return kappa/m and its derivative by E (huge at the edge itself), (2, n_energies)."""
         local, b = self._mass(energies)
         below = np.maximum(self.edge - energies, 1e-60)
-        over = np.sqrt(below / (H2M * local))
-        return over, -0.5 * over * (1.0 / below + b / local)
+        pair = np.empty((2, len(energies)))
+        np.sqrt(below / (H2M * local), out=pair[0])
+        np.multiply(-0.5 * pair[0], 1.0 / below + b / local, out=pair[1])
+        return pair
 
     def _mass(self, energies: Floats) -> tuple[Floats | float, Floats | float]:
         if self.inverse_gap == 0.0:
@@ -88,11 +90,12 @@ class System:
 
     def matrix_and_slope(self, energies: Floats) -> tuple[Matrix, Matrix]:
         """Return K and its exact derivative by E at each energy."""
-        value, slope = self.slices.elements_and_slopes(energies)
-        first, last = (
-            (None, None) if end is None else end.value_and_slope(energies) for end in self.outside
-        )
-        return assemble(value, first[0], last[0]), assemble(slope, first[1], last[1])
+        first, last = self.outside
+        return assemble(
+            self.slices.elements_and_slopes(energies),
+            None if first is None else first.value_and_slope(energies),
+            None if last is None else last.value_and_slope(energies),
+        ).split()
 
     def count(self, energies: npt.ArrayLike) -> Counts:
         """Return the number of levels below each energy."""
