@@ -37,6 +37,8 @@ STEPS = {"thickness": 0.02, "composition": 1e-3, "temperature": 1.0, "field": 1e
 SAME_LEVEL = 0.8
 #: a whole change is called linear if its shift is this near to it, relative or in eV
 LINEAR, LINEAR_EV = 0.25, 0.5e-3
+#: how far a level may rise in a change [eV]
+ROOM = 0.1
 #: the change of a layer with its own numbers, which has no monolayer [nm]
 OWN_STEP = 0.1
 
@@ -80,7 +82,8 @@ def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None)
     Returns
     -------
     DataFrame
-        ``what``, ``change``, ``shift_meV``, ``shift_um`` and ``sentence``; empty without a line.
+        ``what``, ``change``, ``shift_meV``, ``shift_um``, ``remark`` (a crossing, or a change too
+        large to be linear) and ``sentence``, all of it in words; empty without a line.
 
     Raises
     ------
@@ -121,7 +124,7 @@ def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None)
 def _table(line: Line | None, rows: Sequence[tuple[Change, float, str]]) -> pd.DataFrame:
     lengths = [_wavelength_shift(line, shift) for _, shift, _ in rows]
     sentences = [
-        f"{change.what}, {change.text}: {_signed(length)} um{remark}"
+        f"{change.what}, {change.text}: {_signed(length)} um" + (f"; {remark}" if remark else "")
         for (change, _, remark), length in zip(rows, lengths, strict=True)
     ]
     return frame(
@@ -130,9 +133,10 @@ def _table(line: Line | None, rows: Sequence[tuple[Change, float, str]]) -> pd.D
             "change": [change.text for change, _, _ in rows],
             "shift_meV": [shift * 1e3 for _, shift, _ in rows],
             "shift_um": lengths,
+            "remark": [remark or None for _, _, remark in rows],
             "sentence": sentences,
         },
-        texts=("what", "change", "sentence"),
+        texts=("what", "change", "remark", "sentence"),
     )
 
 
@@ -266,7 +270,7 @@ def _moved(stack: Stack, name: str, step: float) -> Stack:
 def _solved(levels: Levels, stack: Stack, line: Line) -> Levels:
     """Return the lowest levels of another stack, up to the upper one of a line."""
     group = _members(levels, line.lower if line.upper == CONTINUUM else int(line.upper))
-    below = max(levels.parts[-1].span.high, float(levels.energies[group].max()) + 0.1)
+    below = float(levels.energies[group].max()) + ROOM
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", BandwrightWarning)  # said about the stack itself already
         return solve(
@@ -301,24 +305,24 @@ def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
 def _checked(levels: Levels, line: Line, change: Change, shift: float, before: _Sample) -> str:
     """Return what must be said of a whole change beside its linear shift, '' if nothing."""
     if not math.isfinite(shift):
-        return "; the stack can't be solved a step away"
+        return "the stack can't be solved a step away"
     try:
         moved = _moved(levels.stack, change.parameter.name, change.amount)
         found = _solved(levels, moved, line)
         upper, lower = _ends(found, levels, line)
     except BandwrightError as error:
-        return f"; only for a smaller change: {error}"
+        return f"only for a smaller change: {error}"
     for number in (line.upper, line.lower):
         if number != CONTINUUM:
             kept = before.overlap(found, _members(levels, int(number)))
             if kept < SAME_LEVEL:
                 return (
-                    f"; level {number} crosses another on the way (overlap {kept:.2f}): compare"
+                    f"level {number} crosses another on the way (overlap {kept:.2f}): compare"
                     " the changed stack itself"
                 )
     whole = float(upper - lower) - line.energy_meV * 1e-3
     if abs(whole - shift) > max(LINEAR_EV, LINEAR * abs(shift)):
-        return f"; not linear, the whole change gives {_signed(_wavelength_shift(line, whole))} um"
+        return f"not linear, the whole change gives {_signed(_wavelength_shift(line, whole))} um"
     return ""
 
 

@@ -11,7 +11,7 @@ from bandwright.constants import H2M
 from bandwright.errors import StackError
 from bandwright.lines import CONTINUUM
 
-COLUMNS = ["what", "change", "shift_meV", "shift_um", "sentence"]
+COLUMNS = ["what", "change", "shift_meV", "shift_um", "remark", "sentence"]
 WELL = "30 nm Al0.28Ga0.72As {label left}, 8 nm GaAs {label well}, 30 nm Al0.28Ga0.72As"
 
 
@@ -160,6 +160,7 @@ def test_shifts_and_sentences_are_those_of_the_changed_stack(what, change, chang
     # a whole change is linear to some per cent
     assert found["shift_meV"] == pytest.approx(after.energy_meV - before.energy_meV, rel=0.06)
     assert found["shift_um"] == pytest.approx(after.wavelength_um - before.wavelength_um, rel=0.06)
+    assert found["remark"] is None
     assert found["sentence"] == f"{what}, {change}: {found['shift_um']:+.2g} um"
 
 
@@ -230,6 +231,7 @@ def test_a_crossing_is_said():
     found = row(lines_of(line).error_budget((3, 1)), "a", "+1 ML")
     assert "; level 3 crosses another on the way (overlap 0." in found["sentence"]
     assert found["sentence"].endswith(": compare the changed stack itself")
+    assert found["sentence"].endswith(found["remark"])
     other = row(lines_of(line).error_budget((3, 1)), "b", "+1 ML")
     assert "crosses" not in other["sentence"]
 

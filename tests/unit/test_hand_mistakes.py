@@ -9,10 +9,10 @@ from bandwright.cli import main
 from bandwright.errors import BandwrightError, MaterialError, QuantityError, StackError
 
 
-def printed(capsys, *words):
+def printed(capsys, *words, command="lines"):
     """What `bandwright lines` prints of a stack, spaces and line ends as single spaces."""
     capsys.readouterr()
-    assert main(["lines", *words]) == 0
+    assert main([command, *words]) == 0
     return " ".join(capsys.readouterr().out.split())
 
 
@@ -105,7 +105,7 @@ def test_own_numbers_mixed_with_materials_without_zero():
 )
 def test_thickness_in_the_wrong_unit(thickness, says, capsys):
     line = f"30 nm Al0.28Ga0.72As, {thickness} GaAs, 3 nm GaAs, 30 nm Al0.28Ga0.72As"
-    assert says in printed(capsys, line, "--at-most", "3")
+    assert says in printed(capsys, line, "--at-most", "3", command="levels")
 
 
 @pytest.mark.parametrize("thickness", ["6.2", "6.2 m2", "6,2 nm", "6.2 kV", "-6.2 nm", "0 nm"])

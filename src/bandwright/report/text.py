@@ -119,8 +119,9 @@ def budget_text(lines: Lines) -> list[str]:
         return []
     head = f"what moves {line.name}, {line.wavelength_um:.4f} um:"
     columns = columns_of(lines.error_budget(line))
-    columns.pop("sentence")  # says in words what its row says in numbers
-    return [head, *grid(columns)]
+    # a sentence says in words what its row says in numbers, and its remark
+    said = zip(columns.pop("sentence"), columns.pop("remark"), strict=True)
+    return [head, *grid(columns), *sheet(("note", text) for text, remark in said if remark)]
 
 
 def lines_text(lines: Lines) -> str:
