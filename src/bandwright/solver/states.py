@@ -214,7 +214,17 @@ class States:
     def clamped(self) -> Floats:
         """Probability where the two-band mass stands at its floor, (n_levels,)."""
         q = self._quadrature
-        return np.asarray(np.sum((q.u**2) * q.weight * q.clamped, axis=1))
+        total = np.sum((q.u**2) * q.weight * q.clamped, axis=1)
+        for tail in self._tails:
+            row = 0 if tail.outward < 0 else -1
+            section = self.system.slices.profile.sections[row]
+            depth = np.array([0.0 if row == 0 else section.thickness])
+            edge, mass, gap = (
+                float(c.at(depth)[0]) for c in (section.edge, section.mass, section.inverse_gap)
+            )
+            _, b = local_mass(self.energies, np.array(edge), np.array(mass), np.array(gap))
+            total = total + np.where((b == 0.0) & (gap > 0.0), tail.u**2 / (2.0 * tail.decay), 0.0)
+        return np.asarray(total)
 
     @property
     def wall_shifts(self) -> Floats:
