@@ -371,6 +371,16 @@ def test_warn_gives_what_needs_no_state_as_warnings():
     assert set(cautions.at_once(levels)) < set(levels.cautions)
 
 
+def test_solving_warns_at_the_line_that_asked():
+    stack = bw.parse_line(WELL, field="12 kV/cm")
+    with pytest.warns(bw.BandwrightWarning, match="the sign of the field") as caught:
+        bw.solve(stack)
+    assert {warning.filename for warning in caught} == {__file__}
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        solve(WELL)
+
+
 def test_words():
     assert numbered([2, 3, 5]) == "levels 2, 3, 5"
     assert numbered(np.array([1, 2, 3])) == "levels 1 to 3"

@@ -91,7 +91,11 @@ def solve(
         parts = _shoot(profile, spans, at_most, tolerance_eV)
     else:
         parts = _phase_only(profile, spans, at_most, phase_order)
-    return Levels(stack, profile, parts, tolerance_eV, group_eV, method, phase_order)
+    levels = Levels(stack, profile, parts, tolerance_eV, group_eV, method, phase_order)
+    from ..cautions import warn
+
+    warn(levels)
+    return levels
 
 
 def _check_choice(name: str, given: str, known: tuple[str, ...]) -> None:
