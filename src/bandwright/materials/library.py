@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable
+from copy import copy
 from functools import lru_cache
 from pathlib import Path
 from typing import Any, NamedTuple
@@ -77,6 +78,7 @@ class Library:
         self.catalogue = Catalogue(own)
         self._points: dict[object, BandPoint] = {}
         self._lattices: dict[str, float] = {}
+        self._every_lattice: float | None = None
 
     @staticmethod
     def shipped() -> Library:
@@ -98,6 +100,26 @@ class Library:
             If a file can't be read, or an entry is refused.
         """
         return _library(tuple((str(path), _stamp(path)) for path in paths))
+
+    def on_lattice(self, lattice_nm: float) -> Library:
+        """Return the same library with one lattice constant for whatever substrate is named.
+
+        Parameters
+        ----------
+        lattice_nm : float
+            Lattice constant of every substrate [nm].
+
+        Examples
+        --------
+        >>> free = Library.shipped()
+        >>> held = free.on_lattice(0.5660).properties(formula.parse("GaAs"), 300.0, "GaAs")
+        >>> print(f"exx {held.exx:.6f}")
+        exx 0.001194
+        """
+        view = copy(self)
+        view._points = {}
+        view._every_lattice = float(lattice_nm)
+        return view
 
     def names(self) -> tuple[str, ...]:
         """Return the names of all binaries, then the patterns of all alloys."""
@@ -216,6 +238,8 @@ class Library:
         return Mix(composition, self.catalogue)
 
     def _substrate_lattice(self, substrate: str) -> float:
+        if self._every_lattice is not None:
+            return self._every_lattice
         if substrate not in self._lattices:
             try:
                 self._lattices[substrate] = self.lattice(substrate)

@@ -13,7 +13,9 @@ from .layers import Built, build_layer
 from .sections import Profile, Section
 
 
-def build_profile(stack: Stack, bands: str | None = None) -> Profile:
+def build_profile(
+    stack: Stack, bands: str | None = None, *, substrate_lattice: float | None = None
+) -> Profile:
     """Return the profile of a stack.
 
     Parameters
@@ -21,6 +23,8 @@ def build_profile(stack: Stack, bands: str | None = None) -> Profile:
     stack : Stack
     bands : str, optional
         ``"one-band"`` or ``"two-band"`` instead of the stack's own choice.
+    substrate_lattice : float, optional
+        Lattice constant of the substrate [nm] instead of its material's own.
 
     Returns
     -------
@@ -35,6 +39,8 @@ def build_profile(stack: Stack, bands: str | None = None) -> Profile:
         If a material gives no number that is needed.
     """
     library = Library.with_files(stack.materials) if stack.materials else Library.shipped()
+    if substrate_lattice is not None:
+        library = library.on_lattice(substrate_lattice)
     every = stack.written()
     two_band = _choose_bands(every, bands or stack.bands)
     built: dict[int, Built] = {}

@@ -114,6 +114,8 @@ class States:
 
     @cached_property
     def _quadrature(self) -> _Quadrature:
+        if not len(self.energies):
+            return self._on(np.zeros(0), np.zeros(0))
         low, high = float(self.energies.min()), float(self.energies.max())
         return self._on(*_cells(self.system, low, high))
 
@@ -194,7 +196,8 @@ class States:
         density = (q.u**2 + q.p**2) * q.weight
         present, starts = np.unique(q.section, return_index=True)
         result = np.zeros((len(self.energies), sections))
-        result[:, present] = np.add.reduceat(density, starts, axis=1)
+        if len(present):
+            result[:, present] = np.add.reduceat(density, starts, axis=1)
         for tail in self._tails:
             row = 0 if tail.outward < 0 else -1
             partner = self._tail_partner(tail, row)
