@@ -3,6 +3,9 @@
 import numpy as np
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
+
+from bandwright.constants import H2M
+from bandwright.solver import solve_profile
 from physics.dense import count
 from physics.randomstacks import CLASSES, random_case
 from properties.profiles import (
@@ -15,9 +18,6 @@ from properties.profiles import (
     profiles,
     stretched,
 )
-
-from bandwright.constants import H2M
-from bandwright.solver import solve_profile
 
 TOLERANCE = 1e-9  # eV
 DIPOLE = 1e-4  # nm

@@ -9,11 +9,11 @@ import pandas as pd
 import pytest
 from hypothesis import HealthCheck, assume, example, given, settings
 from hypothesis import strategies as st
-from properties.strategies import entries, fraction, names, positive, stacks
 
 from bandwright import Layer, Repeat, Stack, parameters, stackfile
 from bandwright.stackframe import frame_from_stack, stack_from_frame
 from bandwright.stackline import line_text, parse_line
+from properties.strategies import entries, fraction, names, positive, stacks
 
 thorough = settings(max_examples=150, deadline=None, suppress_health_check=[HealthCheck.too_slow])
 quick = settings(thorough, max_examples=40)
