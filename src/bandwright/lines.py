@@ -14,6 +14,7 @@ import numpy.typing as npt
 from .constants import EV_CM, EV_PER_THZ, H2M, HC
 from .errors import QuantityError, StackError
 from .frames import frame
+from .gradients import LineGradient
 from .levels import Levels
 from .levels.ranges import open_edge
 from .quantities import as_length, show
@@ -89,7 +90,7 @@ def line_of(upper: int | str, lower: int, energy: float, dipole: float | None = 
     )
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Lines:
     """The lines between the levels of a stack; made by `Levels.lines`, worked out when asked.
 
@@ -198,6 +199,19 @@ class Lines:
 
         return error_budget(self, line)
 
+    def gradient(self, parameters: Sequence[str] | None = None) -> LineGradient:
+        """Return dE and d(wavelength) of each line by parameters of the stack, exactly.
+
+        See `bandwright.gradients.gradient_of`.
+
+        Parameters
+        ----------
+        parameters : sequence of str, optional
+            Names as ``"well.thickness"``; every one if absent.
+        """
+        pairs = [(line.upper, line.lower) for line in self.rows]
+        return self.levels.gradient(parameters).lines(pairs)
+
     @cached_property
     def cautions(self) -> tuple[str, ...]:
         """What a reader of these lines should know, one sentence each."""
@@ -220,6 +234,14 @@ class Lines:
                 " closed box are left out; lines(of_box=True) shows them"
             )
         return texts
+
+    def __repr__(self) -> str:
+        return f"<Lines: {len(self.rows)} of {self.levels!r}>"
+
+    def __str__(self) -> str:
+        from .report.text import lines_text
+
+        return lines_text(self)
 
     def _repr_html_(self) -> str:
         from .report.html import lines_html

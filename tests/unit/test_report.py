@@ -160,6 +160,13 @@ def test_failed_designs_are_told_below_the_table():
     assert "\ndesign 2   failed: " in said
 
 
+def test_print_shows_the_text_and_repr_one_line(flat):
+    assert str(flat) == text.levels_text(flat)
+    assert str(flat.lines()) == text.lines_text(flat.lines())
+    assert repr(flat) == "<Levels: 2 of a & b>"
+    assert repr(flat.lines()) == "<Lines: 3 of <Levels: 2 of a & b>>"
+
+
 def test_csv_reads_back_every_digit(curved):
     rows = list(csv.DictReader(io.StringIO(data.csv_text(data.columns_of(curved.table)))))
     assert [float(row["energy_meV"]) for row in rows] == curved.table["energy_meV"].tolist()

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING, Any, NamedTuple
@@ -22,6 +23,7 @@ from .states import AllStates
 if TYPE_CHECKING:
     import pandas as pd
 
+    from ..gradients import Gradient
     from ..lines import Lines
 
 Floats = npt.NDArray[np.float64]
@@ -39,7 +41,7 @@ class Part(NamedTuple):
     solution: Solution | None
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, repr=False)
 class Levels:
     """The levels of a stack below a limit, ascending.
 
@@ -266,6 +268,20 @@ class Levels:
         from ..lines import lines_of
 
         return lines_of(self, **filters)
+
+    def gradient(self, parameters: Sequence[str] | None = None) -> Gradient:
+        """Return dE by parameters of the stack; see `bandwright.gradients.gradient_of`."""
+        from ..gradients import gradient_of
+
+        return gradient_of(self, parameters)
+
+    def __repr__(self) -> str:
+        return f"<Levels: {len(self)} of {self.stack.name or 'a stack without a name'}>"
+
+    def __str__(self) -> str:
+        from ..report.text import levels_text
+
+        return levels_text(self)
 
     def _repr_html_(self) -> str:
         from ..report.html import levels_html
