@@ -70,8 +70,8 @@ def test_every_unit_suffix_of_our_tables_is_known(flat, curved):
     names = {str(name) for table in tables for name in table.columns}
     bare = {name for name in names if not grid.unit_of(name)[1]}
     assert bare == {
-        *("count_checked", "main_layer", "probability", "copies", "upper", "lower"),
-        *("oscillator_strength", "what", "change", "sentence", "levels", "name", "reason"),
+        *("count_checked", "main_layer", "probability", "copies", "upper", "lower", "levels"),
+        *("oscillator_strength", "what", "change", "remark", "sentence", "name", "reason"),
     }
 
 
