@@ -33,8 +33,10 @@ Floats = npt.NDArray[np.float64]
 TOLERANCE = 1e-9
 #: steps of the derivatives, in core units: their square is negligible, their noise too
 STEPS = {"thickness": 0.02, "composition": 1e-3, "temperature": 1.0, "field": 1e-5, "bias": 1e-3}
-#: a level that keeps less of itself (overlap) over a whole change has crossed another
-SAME_LEVEL = 0.8
+#: a level that keeps less of itself (probability) over a whole change has mixed with another
+SAME_LEVEL = 0.7
+#: levels looked at beyond the upper one, in case others pass
+PASSING = 4
 #: a whole change is called linear if its shift is this near to it, relative or in eV
 LINEAR, LINEAR_EV = 0.25, 0.5e-3
 #: how far a level may rise in a change [eV]
@@ -267,8 +269,8 @@ def _moved(stack: Stack, name: str, step: float) -> Stack:
     return moved
 
 
-def _solved(levels: Levels, stack: Stack, line: Line) -> Levels:
-    """Return the lowest levels of another stack, up to the upper one of a line."""
+def _solved(levels: Levels, stack: Stack, line: Line, more: int = 0) -> Levels:
+    """Return the lowest levels of another stack, up to the upper one of a line and ``more``."""
     group = _members(levels, line.lower if line.upper == CONTINUUM else int(line.upper))
     below = float(levels.energies[group].max()) + ROOM
     with warnings.catch_warnings():
@@ -276,7 +278,7 @@ def _solved(levels: Levels, stack: Stack, line: Line) -> Levels:
         return solve(
             stack,
             below=f"{below!r} eV",
-            at_most=group.stop,
+            at_most=group.stop + more,
             tolerance=f"{min(TOLERANCE, levels.tolerance)!r} eV",
             bands=levels.profile.bands,
         )
@@ -298,6 +300,8 @@ def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
             group = _members(levels, int(number))
             if group.stop > len(found):
                 raise SolveError(f"level {number} is no longer there")
+            if not found.count_checked[group].all():
+                raise SolveError(f"the counts do not agree around level {number}")
             ends.append(float(np.mean(found.energies[group])))
     return np.array(ends)
 
@@ -308,22 +312,30 @@ def _checked(levels: Levels, line: Line, change: Change, shift: float, before: _
         return "the stack can't be solved a step away"
     try:
         moved = _moved(levels.stack, change.parameter.name, change.amount)
-        found = _solved(levels, moved, line)
+        found = _solved(levels, moved, line, more=PASSING)
         upper, lower = _ends(found, levels, line)
     except BandwrightError as error:
         return f"only for a smaller change: {error}"
-    for number in (line.upper, line.lower):
-        if number != CONTINUUM:
-            kept = before.overlap(found, _members(levels, int(number)))
-            if kept < SAME_LEVEL:
-                return (
-                    f"level {number} crosses another on the way (overlap {kept:.2f}): compare"
-                    " the changed stack itself"
-                )
-    whole = float(upper - lower) - line.energy_meV * 1e-3
+    ends = {line.upper: upper, line.lower: lower}
+    renumbered = []
+    for number in ends:
+        if number == CONTINUUM:
+            continue
+        group = _members(levels, int(number))
+        places, kept = before.followed(found, group)
+        if kept < SAME_LEVEL:
+            return (
+                f"level {number} crosses another on the way and mixes with it (keeps {kept:.0%}):"
+                " compare the changed stack itself"
+            )
+        if places[0] != group.start:
+            renumbered.append(f"level {number} is level {places[0] + 1} then")
+        ends[number] = float(np.mean(found.energies[places]))
+    whole = ends[line.upper] - ends[line.lower] - line.energy_meV * 1e-3
     if abs(whole - shift) > max(LINEAR_EV, LINEAR * abs(shift)):
-        return f"not linear, the whole change gives {_signed(_wavelength_shift(line, whole))} um"
-    return ""
+        shown = _signed(_wavelength_shift(line, whole))
+        renumbered.insert(0, f"not linear, the whole change gives {shown} um")
+    return "; ".join(renumbered)
 
 
 class _Sample(NamedTuple):
@@ -348,10 +360,16 @@ class _Sample(NamedTuple):
         z = np.repeat(profile.faces[:-1], share) + inside * width
         return _Sample(share, levels.states.sample(z)[0] * np.sqrt(width))
 
-    def overlap(self, found: Levels, group: slice) -> float:
-        """Return how much of a group's subspace is the same in another solution, 0 to 1."""
+    def followed(self, found: Levels, group: slice) -> tuple[list[int], float]:
+        """Return which levels of another solution a group has become, and how surely.
+
+        The levels (indices from 0) that lie most in the group's subspace, and the least part of
+        them that does, 0 to 1.
+        """
         if len(found.profile.sections) != len(self.share):
-            return 0.0
+            return [group.start], 0.0
         other = _Sample.of(found, self.share).u
-        old, new = (np.linalg.svd(u[group], full_matrices=False)[2] for u in (self.u, other))
-        return float(np.linalg.svd(old @ new.T, compute_uv=False).min())
+        old = np.linalg.svd(self.u[group], full_matrices=False)[2]
+        parts = np.sum((old @ other.T) ** 2, axis=0) / np.sum(other**2, axis=1)
+        best = sorted(map(int, np.argsort(-parts, kind="stable")[: group.stop - group.start]))
+        return best, float(parts[best].min())
