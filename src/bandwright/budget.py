@@ -309,7 +309,7 @@ def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
 def _checked(levels: Levels, line: Line, change: Change, shift: float, before: _Sample) -> str:
     """Return what must be said of a whole change beside its linear shift, '' if nothing."""
     if not math.isfinite(shift):
-        return "the stack can't be solved a step away"
+        return "a step away the stack can't be solved, or not counted for sure"
     try:
         moved = _moved(levels.stack, change.parameter.name, change.amount)
         found = _solved(levels, moved, line, more=PASSING)
