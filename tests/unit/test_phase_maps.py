@@ -69,10 +69,9 @@ def test_edge_phase_against_integration_of_the_equation(k, kappa):
     path = solve_ivp(lambda y, f: [f[1], -q(y) * f[0]], (far, -far), [1.0, -kappa],
                      rtol=1e-11, atol=1e-14)
     u, p = path.y[:, -1]
-    seen = np.arctan2(u * k, -p)  # phase since the last node, walking towards the edge's left
+    theta = np.arctan2(u * k, -p)  # u = M sin(Theta), p = -cos(Theta) / M
     v = np.sqrt(q(-far))
     action = 2 * (k * 0.5 * np.log((k + v) ** 2 / (k * k - v * v)) - kappa * np.arctan(v / kappa))
     found = maps.edge_phase(np.array([k]), np.array([kappa]))[0]
-    off = (action + np.pi / 4 + found + seen) / np.pi
-    assert min(abs(off - round(off)), abs(off - 2 * seen / np.pi - round(off - 2 * seen / np.pi))
-               ) < 1e-4
+    turns = (action + np.pi / 4 + found - theta) / np.pi
+    assert turns == pytest.approx(round(turns), abs=1e-5)

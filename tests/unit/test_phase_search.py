@@ -10,6 +10,7 @@ import pytest
 import bandwright.phase
 from bandwright import phase
 from bandwright.errors import SolveError
+from bandwright.phase.joints import joined
 from bandwright.phase.pieces import pieces_of, turns
 from bandwright.phase.sections import Plan
 from bandwright.profile import Polynomial, Profile, Sampled, Section
@@ -63,6 +64,25 @@ def test_a_section_is_cut_where_its_edge_turns():
     assert sum(p.length for p in pieces) == pytest.approx(10.0)
     assert turns(section(10, 0.0, 0.0, 0.0, 0.001)) == []
     assert turns(section(10, 0.2, -0.02, 0.001)) == []  # level at the face, no turn inside
+
+
+def test_smooth_neighbours_are_one_section_and_others_are_not():
+    def parts(*sections):
+        return [s.thickness for s in joined(sections)]
+
+    bent = Section(4.0, Sampled(lambda z: 0.1 * np.cos(z)), Polynomial((0.067,)))
+    goes_on = Section(3.0, Sampled(lambda z: 0.1 * np.cos(z + 4.0)), Polynomial((0.067,)))
+    kinked = Section(3.0, Sampled(lambda z: 0.1 * np.cos(4.0 - z)), Polynomial((0.067,)))
+    assert parts(bent, goes_on) == [7.0]
+    assert parts(bent, kinked) == [4.0, 3.0]
+    assert parts(section(2, 0.1), section(3, 0.1)) == [5.0]
+    assert parts(section(2, 0.1), section(3, 0.1, mass=0.08)) == [2.0, 3.0]
+    assert parts(section(2, 0.1), section(3, 0.1, inverse_gap=0.5)) == [2.0, 3.0]
+    assert parts(section(2, 0.1), section(3, 0.1, 0.01)) == [2.0, 3.0]
+    assert parts(section(2, 0.1, 0.01), section(3, 0.12, 0.01)) == [5.0]
+    assert parts(section(2, 0.1, 0.01), section(3, 0.121, 0.01)) == [2.0, 3.0]
+    whole = joined((bent, goes_on))[0].edge.at(np.array([1.0, 6.0]))
+    assert whole == pytest.approx(0.1 * np.cos([1.0, 6.0]))
 
 
 def test_a_flat_stretch_in_a_sampled_edge_is_cut_in_its_middle():

@@ -78,7 +78,6 @@ class _Edge(NamedTuple):
 
 class _Part(NamedTuple):
     allowed: bool
-    layer: int
     start: float
     stop: float
     amount: float  # action or decay
@@ -124,8 +123,16 @@ def budget(profile: Profile, energy: float, ends: tuple[str, str] | None = None)
         found.append(_wells(parts, *_marches(elements, outside, column), plan.ends))
     before, here, after = found
     if len(before) == len(here) == len(after):
-        return [_timed(*wells) for wells in zip(before, here, after, strict=True)]
-    return here
+        here = [_timed(*wells) for wells in zip(before, here, after, strict=True)]
+    faces, numbers = profile.faces, [section.layer for section in profile.sections]
+    return [replace(well, layers=_layers(well, faces, numbers)) for well in here]
+
+
+def _layers(well: Well, faces: Floats, numbers: list[int]) -> tuple[int, ...]:
+    """Return the grown layers a well reaches into."""
+    least = 1e-9 * float(faces[-1])
+    inside = (faces[:-1] < well.stop_nm - least) & (faces[1:] > well.start_nm + least)
+    return tuple(sorted({numbers[i] for i in np.flatnonzero(inside)}))
 
 
 def _timed(before: Well, here: Well, after: Well) -> Well:
@@ -162,19 +169,18 @@ def _parts(plan: Plan, lists: list[Phases | None], energies: Floats, column: int
     parts: list[_Part] = []
     position = 0.0
     for i, ((kind, row, falls), piece) in enumerate(zip(plan.rows, plan.pieces, strict=True)):
-        layer = plan.profile.sections[plan.sections[i]].layer
         if kind == 0:
-            parts.append(_flat(piece, i, layer, position, float(energies[column])))
+            parts.append(_flat(piece, i, position, float(energies[column])))
         else:
             data = lists[kind - 1]
             assert data is not None
             turn = float(plan.turning(kind, energies)[row, column])
-            parts += _curved(data, row, column, turn, piece, i, layer, position, falls)
+            parts += _curved(data, row, column, turn, piece, i, position, falls)
         position += piece.length
     return parts
 
 
-def _flat(piece: Piece, i: int, layer: int, position: float, energy: float) -> _Part:
+def _flat(piece: Piece, i: int, position: float, energy: float) -> _Part:
     at = np.zeros(1)
     edge, mass, gap = (c.at(at) for c in (piece.section.edge, piece.section.mass,
                                           piece.section.inverse_gap))
@@ -182,11 +188,11 @@ def _flat(piece: Piece, i: int, layer: int, position: float, energy: float) -> _
     m = float(energy_mass(x, mass, gap)[0])
     k = float(np.sqrt(m * abs(x[0]) / H2M))
     square = m / max(k, 1e-300)
-    return _Part(bool(x[0] > 0), layer, position, position + piece.length, k * piece.length,
+    return _Part(bool(x[0] > 0), position, position + piece.length, k * piece.length,
                  _Edge(i, square), _Edge(i + 1, square))
 
 
-def _curved(data: Phases, row: int, column: int, turn: float, piece: Piece, i: int, layer: int,
+def _curved(data: Phases, row: int, column: int, turn: float, piece: Piece, i: int,
             position: float, falls: bool) -> list[_Part]:
     def edge(high: bool) -> _Edge:
         face = data.high if high else data.low
@@ -209,7 +215,7 @@ def _curved(data: Phases, row: int, column: int, turn: float, piece: Piece, i: i
     for allowed, a, b, amount, low, high in found:
         start, stop = (piece.length - b, piece.length - a) if falls else (a, b)
         left, right = (high, low) if falls else (low, high)
-        parts.append(_Part(allowed, layer, position + start, position + stop, amount, left, right))
+        parts.append(_Part(allowed, position + start, position + stop, amount, left, right))
     return parts[::-1] if falls else parts
 
 
@@ -256,7 +262,7 @@ def _well(group: list[_Part], forth: list[float], back: list[float], barrier_lef
     action = sum(p.amount for p in group)
     half_waves = float(action + end_left + steps + end_right) / np.pi
     return Well(
-        tuple(sorted({p.layer for p in group})), group[0].start, group[-1].stop,
+        (), group[0].start, group[-1].stop,
         float(action), end_left, end_right, steps, half_waves, round(half_waves),
         float("nan"), float("nan"), float(barrier_left), float(barrier_right))
 

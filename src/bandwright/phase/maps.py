@@ -48,9 +48,9 @@ class Face(NamedTuple):
 def _series(x: Floats, sign: float) -> tuple[Floats, Floats, Floats]:
     """Return the asymptotic series at x, ``sign`` -1 on the allowed side (DLMF 9.8.20, 9.8.22)."""
     c = sign * x**-3.0
-    factor = np.polynomial.polynomial.polyval(c, _MODULUS)
+    factor = np.asarray(np.polynomial.polynomial.polyval(c, _MODULUS), dtype=np.float64)
     derivative = -3 * np.polynomial.polynomial.polyval(c, [k * a for k, a in enumerate(_MODULUS)])
-    phase = 2 / 3 * x**1.5 * np.polynomial.polynomial.polyval(c, _PHASE)
+    phase: Floats = 2 / 3 * x**1.5 * np.polynomial.polynomial.polyval(c, _PHASE)
     return factor, (-0.5 + derivative / factor) / (2 * x), phase
 
 

@@ -17,6 +17,7 @@ from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile, Sampled, Section
 from ..solver.matrix import Elements
+from .joints import joined
 from .maps import (
     Face,
     airy_face,
@@ -103,11 +104,11 @@ class Plan:
                 "give ends = 'open' or 'wall'", "phase integral")
         self.rows: list[tuple[int, int, bool]] = []  # group, row there, read from high to low
         self.pieces: list[Piece] = []  # one an element, in growth order
-        self.sections: list[int] = []  # which section of the profile each element is part of
         groups: list[list[Piece]] = [[], [], [], []]  # flat, tilted, polynomial, sampled
         known: dict[tuple[object, ...], list[tuple[int, int, bool, Piece]]] = {}
-        final = len(profile.sections) - 1
-        for number, s in enumerate(profile.sections):
+        sections = joined(profile.sections)
+        final = len(sections) - 1
+        for number, s in enumerate(sections):
             walls = (number == 0 and self.ends[0] == "wall",
                      number == final and self.ends[1] == "wall")
             key = (s.thickness, s.edge, s.mass, s.inverse_gap, walls)
@@ -121,7 +122,6 @@ class Plan:
             for kind, row, falls, piece in parts if _in_growth_order(parts) else parts[::-1]:
                 self.rows.append((kind, row, falls))
                 self.pieces.append(piece)
-                self.sections.append(number)
         self.flats = groups[0]
         self.batches = [
             Batch(groups[1], 12) if groups[1] else None,
@@ -231,7 +231,8 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     scaled = np.where(top, high_q * batch.top**2, 0.0)
     a = np.where(high_q > 0, -scaled, 2 * decay / np.pi)
     theta = np.where(high_q > 0, -0.5 * np.pi * scaled, decay)
-    over = 1 - rise((np.abs(a) - 0.5) / 0.75) * (high_q > 0)  # a top well below the level
+    start, span = np.where(batch.alone, 0.0, 0.5), np.where(batch.alone, 0.5, 0.75)
+    over = 1 - rise((np.abs(a) - start) / span) * (high_q > 0)  # a top well below the level
     peak = np.where(below, 0.0, over * top_phase(a)) if top.any() else 0.0
     if order == 1:
         low, high = _between_walls(batch, energies, low, high)
@@ -241,7 +242,7 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
         total = total - np.where(inside & batch.plain[1][:, None], lost, 0.0)
     total = total + np.where(top, np.pi / 4 + peak, np.where(inside, np.pi / 4, -high.shift))
     high_exponent = np.where(top, over * top_exponent(theta), decay + _HALF_LN2 + high.shift)
-    height = np.where(inside, 2 * action / np.pi, np.abs(low_q) * batch.bottom**2)
+    height = np.where(inside, 2 * (action + peak) / np.pi, np.abs(low_q) * batch.bottom**2)
     round_, weight, phase = _smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
     larger = np.where(bottom, bottom_exponent(height), 0.0)
     larger = np.where(inside, larger * round_, larger)
@@ -250,7 +251,8 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     if order == 2:
         gain = next_order(batch, energies, inside, low_q > 0)
         near = np.where(inside, low.distance, np.minimum(low.distance, high.distance))
-        gain = np.clip(np.nan_to_num(gain), -0.5, 0.5) / (1 + 0.1 * near**-3.0)
+        trust = rise((near - 0.3) / 0.7) * rise((action - 0.15) / 0.35)
+        gain = np.clip(np.nan_to_num(gain), -0.5, 0.5) * trust
         total = total + (1 - weight) * gain
     exponent = np.where(below, decay + high.shift - low.shift + larger,
                         high_exponent - np.where(inside, larger, 0.0))
@@ -297,7 +299,7 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
     kappa = np.sqrt(np.maximum(-high_q, 0.0)) * width
     over = np.clip(1 - np.maximum(high_q, 0.0) / np.maximum(low_q, 1e-300), 0, 1)
     phase = np.where(low_q > 0, over * edge_phase(k, kappa), 0.0)
-    return np.clip(slant[0] + curved[0], 0, 1), weight, phase
+    return rise((slant[0] + curved[0]) / 0.7), weight, phase
 
 
 def _face(batch: Batch, end: int, energies: Floats) -> tuple[Floats, Face]:
