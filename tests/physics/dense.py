@@ -20,11 +20,11 @@ from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.polynomial import legendre
-from physics.elements import FLOOR, Mesh, basis, bottoms, clamp_cuts, curves, mass_at, split
 from scipy.linalg import cholesky, eigh, eigvalsh, solve_banded, solve_triangular
 
 from bandwright.constants import H2M
 from bandwright.profile import Profile
+from physics.elements import FLOOR, Mesh, basis, bottoms, clamp_cuts, curves, mass_at, split
 
 
 class NotSure(RuntimeError):

@@ -9,12 +9,12 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
-from physics.build import curved, flat, poly, profile, reference, scaled
-from physics.matching import check
 from scipy.optimize import brentq
 
 from bandwright.profile import Sampled
 from bandwright.solver import solve_profile
+from physics.build import curved, flat, poly, profile, reference, scaled
+from physics.matching import check
 
 TOLERANCE = 1e-9  # eV
 DIPOLE = 1e-4  # nm

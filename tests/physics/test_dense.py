@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from physics.build import curved, flat, poly, profile, reference, scaled
 from physics.dense import count, levels, mixed_levels
 from physics.matching import check

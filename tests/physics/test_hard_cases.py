@@ -6,14 +6,14 @@ warning is an error here.
 
 import numpy as np
 import pytest
-from physics.build import curved, flat, poly, profile, reference
-from physics.dense import levels
-from physics.matching import check
-from physics.randomstacks import clamps, lowest, tilt
 from scipy.optimize import brentq
 
 from bandwright.profile import Profile
 from bandwright.solver import solve_profile
+from physics.build import curved, flat, poly, profile, reference
+from physics.dense import levels
+from physics.matching import check
+from physics.randomstacks import clamps, lowest, tilt
 
 pytestmark = pytest.mark.filterwarnings("error")
 C = reference()[0]
@@ -87,7 +87,7 @@ def periodic_levels(times, well, barrier, high):
         target = np.cos(j * np.pi / times)
         value = np.array([0.5 * np.trace(m) - target for m in matrices])
         for i in np.flatnonzero(np.signbit(value[:-1]) != np.signbit(value[1:])):
-            found.append(brentq(lambda e: 0.5 * np.trace(matrix(e)) - target,  # noqa: B023
+            found.append(brentq(lambda e: 0.5 * np.trace(matrix(e)) - target,
                                 scan[i], scan[i + 1], xtol=1e-15))  # fmt: skip
     value = np.array([m[0, 1] for m in matrices])
     for i in np.flatnonzero(np.signbit(value[:-1]) != np.signbit(value[1:])):

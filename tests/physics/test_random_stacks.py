@@ -10,10 +10,10 @@ import warnings
 
 import numpy as np
 import pytest
-from physics.dense import NotSure, count, levels
-from physics.randomstacks import CLASSES, random_case
 
 from bandwright.solver import solve_profile
+from physics.dense import NotSure, count, levels
+from physics.randomstacks import CLASSES, random_case
 
 TOLERANCES = (1e-6, 1e-9)  # eV
 DIPOLE = 1e-4  # nm

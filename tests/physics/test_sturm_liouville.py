@@ -9,12 +9,12 @@ known to be wrong (problems 5, 36, 40, 53, each said below).
 
 import numpy as np
 import pytest
-from physics.build import liouville, poly, reference
-from physics.matching import check, last_digit
 
 from bandwright.constants import H2M
 from bandwright.profile import Profile, Section
 from bandwright.solver import solve_profile
+from physics.build import liouville, poly, reference
+from physics.matching import check, last_digit
 
 RECORDS = reference()[1]
 PRYCE = "Pryce 1993, standard problem set, problem"

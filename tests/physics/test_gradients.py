@@ -1,0 +1,213 @@
+"""Exact gradients against high-order differences of the solver itself, and against closed forms.
+
+A gradient solves nothing; the reference here solves the stack again, at 1e-11 eV, a step to both
+sides, and takes differences of fourth order. Two criteria: every entry to 1e-6 of its row's
+largest, rows being what a monolayer, a hundredth, ten kelvin, a kV/cm and so on do to a level; and
+every column to 1e-6 of its own largest entry, or to the rounding of the differences.
+"""
+
+import math
+
+import numpy as np
+import pytest
+
+import bandwright as bw
+from bandwright.constants import H2M, HC
+from bandwright.errors import BandwrightError
+from bandwright.parameters import read, replace
+from bandwright.profile.build import build_profile
+from bandwright.solver import solve_profile
+
+TOLERANCE = 1e-11  # eV, of the solutions that differences are taken of
+STEPS = {
+    "thickness": 0.05, "composition": 2e-3, "composition end": 2e-3, "substrate": 2e-3,
+    "edge": 2e-3, "edge end": 2e-3, "mass": 5e-4, "mass end": 5e-4, "gap": 0.01,
+    "gap end": 0.01, "nonparabolicity": 0.01, "internal field": 1e-4, "field": 5e-6, "bias": 1e-3,
+    "temperature": 3.0, "substrate lattice": 1e-4,
+}  # fmt: skip
+#: what a row compares: 0.3 nm, 0.01, 10 meV, 0.001 m0, 10 meV, 1 kV/cm, 10 mV, 10 K, 1e-4 nm
+CHANGES = {
+    "thickness": 0.3, "composition": 0.01, "composition end": 0.01, "substrate": 0.01,
+    "edge": 0.01, "edge end": 0.01, "mass": 1e-3, "mass end": 1e-3, "gap": 0.01, "gap end": 0.01,
+    "nonparabolicity": 0.01, "internal field": 1e-4, "field": 1e-4, "bias": 0.01,
+    "temperature": 10.0, "substrate lattice": 1e-4,
+}  # fmt: skip
+CENTRAL = {1: 2 / 3, -1: -2 / 3, 2: -1 / 12, -2: 1 / 12}
+FORWARD = {0: -137 / 60, 1: 5.0, 2: -5.0, 3: 10 / 3, 4: -5 / 4, 5: 1 / 5}
+
+
+def own(thickness, edge, mass, **more):
+    edge = edge if isinstance(edge, tuple | list) or callable(edge) else f"{edge} eV"
+    return bw.Layer(f"{thickness} nm", edge=edge, mass=mass, **more)
+
+
+def parabola(depth):
+    """A callable bottom [eV], 8 nm wide."""
+    return 0.012 * (depth - 4.0) ** 2
+
+
+WALL = "Al0.28Ga0.72As"
+GRADED = [
+    bw.Layer("9 nm", WALL, label="left"),
+    bw.Layer("5 nm", "AlxGa1-xAs", x=(0.02, 0.12), label="grade"),
+    bw.Layer("4 nm", "AlxGa1-xAs", x=(0.25, 0.05), grading="quadratic", label="bowl"),
+    bw.Layer("9 nm", WALL),
+]
+COUPLED = [
+    own(8, 0.26, 0.092, label="left"),
+    own(6, 0.0, 0.067, label="well"),
+    own(2, 0.22, 0.088, label="thin"),
+    own(4, 0.01, 0.069),
+    own(8, 0.25, 0.091, label="right"),
+]
+KANE = [
+    own(6, 0.52, 0.075, gap="1.53 eV"),
+    own(7, 0.0, 0.043, gap="0.816 eV", label="well"),
+    own(1.5, 0.45, 0.07, gap="1.4 eV", label="thin"),
+    own(4, 0.02, 0.044, gap="0.83 eV"),
+    own(6, 0.5, 0.074, gap="1.5 eV"),
+]
+ALPHA = [
+    own(5, 0.3, 0.09, nonparabolicity="0.5 / eV"),
+    own(6, ("0 meV", "60 meV"), (0.06, 0.07), nonparabolicity="1.1 / eV", label="tilt"),
+    own(5, 0.3, 0.09, nonparabolicity="0.5 / eV"),
+]
+POLAR = [
+    own(8, 0.4, 0.2),
+    own(3, 0.0, 0.2, field="0.3 MV/cm", label="well"),
+    own(8, 0.4, 0.2, field="-0.1 MV/cm"),
+]
+PERIOD = [
+    bw.Layer("4 nm", "Al0.3Ga0.7As", label="end"),
+    bw.Repeat(3, [bw.Layer("14 ML", "GaAs", label="well"), bw.Layer("5 ML", "Al0.3Ga0.7As")]),
+    bw.Layer("4 nm", "Al0.3Ga0.7As", label="end"),
+]
+STRAINED = [
+    bw.Layer("6 nm", "GaAs", label="wall"),
+    bw.Layer("20 ML", "In0.2Ga0.8As", label="well"),
+    bw.Layer("6 nm", "Al0.2Ga0.8As"),
+]
+QUATERNARY = [
+    bw.Layer("6 nm", "In0.52Al0.48As"),
+    bw.Layer("7 nm", "InxGayAl1-x-yAs", x=0.53, y=(0.4, 0.44), label="well"),
+    bw.Layer("6 nm", "In0.52Al0.48As"),
+]
+SHAPES = [
+    own(6, 0.3, 0.09),
+    own(8, parabola, 0.067, label="bowl"),
+    own(2, 0.3, 0.09),
+    own(7, [("0 nm", "90 meV"), ("2 nm", "10 meV"), ("7 nm", "40 meV")], 0.07, label="table"),
+    own(6, 0.3, 0.09),
+]
+MIXED = [
+    bw.Layer("8 nm", WALL),
+    bw.Layer("6 nm", "GaAs", label="well"),
+    own(8, 0.21, 0.085, gap="1.75 eV", label="own"),
+]
+DEEP = [
+    own(12, 0.8, 0.08, gap="0.5 eV", label="first"),
+    own(8, 0.0, 0.03, gap="0.4 eV", label="well"),
+    own(12, 0.8, 0.08, gap="0.5 eV"),
+]
+
+CASES = {
+    "one band, open": (bw.Stack(COUPLED), {}),
+    "one band, walls": (bw.Stack(COUPLED, ends="wall"), {}),
+    "one band, a wall and a field": (bw.Stack(COUPLED, ends=("wall", "open"), field="30 kV/cm"), {}),
+    "one band, box above open edges": (bw.Stack(COUPLED), {"below": "0.4 eV"}),
+    "two bands, open": (bw.Stack(KANE), {}),
+    "two bands as one": (bw.Stack(KANE), {"bands": "one-band"}),
+    "two bands, field": (bw.Stack(KANE, field="-60 kV/cm"), {}),
+    "two bands, bias": (bw.Stack(KANE, bias="150 mV"), {}),
+    "two bands, mass at its floor": (bw.Stack(DEEP, field="150 kV/cm"), {"at_most": 3}),
+    "nonparabolicity, mass graded, walls": (bw.Stack(ALPHA, ends="wall"), {}),
+    "nonparabolicity, mass graded, field": (bw.Stack(ALPHA, field="40 kV/cm"), {}),
+    "internal fields": (bw.Stack(POLAR), {}),
+    "internal fields and bias": (bw.Stack(POLAR, bias="-80 mV"), {}),
+    "graded alloys": (bw.Stack(GRADED, temperature="77 K"), {}),
+    "graded alloys, one band, field": (bw.Stack(GRADED, field="25 kV/cm", bands="one-band"), {}),
+    "graded alloys, bias, substrate": (bw.Stack(GRADED, bias="60 mV", substrate="GaAs"), {}),
+    "repeats in monolayers": (bw.Stack(PERIOD, field="20 kV/cm", substrate="GaAs"), {}),
+    "repeats in monolayers, relaxed": (bw.Stack(PERIOD, temperature="150 K"), {"at_most": 3}),
+    "strained": (bw.Stack(STRAINED, substrate="GaAs", zero="GaAs"), {}),
+    "strained to an alloy": (bw.Stack(STRAINED, substrate="In0.06Ga0.94As", field="9 kV/cm"), {}),
+    "quaternary": (bw.Stack(QUATERNARY, substrate="InP", temperature="10 K"), {"at_most": 2}),
+    "callable and table": (bw.Stack(SHAPES), {}),
+    "callable and table, bias": (bw.Stack(SHAPES, bias="0.1 V", zero="bowl"), {}),
+    "own numbers beside materials": (bw.Stack(MIXED, zero="well", substrate="GaAs"), {}),
+    "towards the surface": (
+        bw.Stack(GRADED, field="25 kV/cm", electrons_run="to surface", zero="left"), {},
+    ),
+}  # fmt: skip
+
+
+def energies(levels, profile):
+    """The same levels of another profile: between the same ends, by number."""
+    found = []
+    for part in levels.parts:
+        if len(part.energies):
+            count, first = len(part.energies), int(part.numbers[0])
+            solved = solve_profile(
+                profile, high=float(part.energies[-1]) + 0.03, at_most=count,
+                tolerance=TOLERANCE, ends=part.span.ends, skip=first,
+            )  # fmt: skip
+            assert solved.complete
+            assert len(solved.energies) == count
+            found.append(solved.energies)
+    return np.concatenate(found)
+
+
+def differences(levels, parameter):
+    """dE by a parameter from six or four solutions at 1e-11 eV, and their rounding."""
+    stack, bands = levels.stack, levels.profile.bands
+    if parameter.kind == "substrate lattice":
+        lattice = bw.Library.shipped().lattice(stack.substrate)
+
+        def moved(value):
+            return build_profile(stack, bands, substrate_lattice=value)
+
+    else:
+        lattice = None
+
+        def moved(value):
+            return build_profile(replace(stack, parameter.name, value), bands)
+
+    centre = read(stack, parameter.name) if lattice is None else lattice
+    step = STEPS[parameter.kind]
+    try:
+        ways = {k: moved(centre + k * step) for k in CENTRAL}
+        weights = CENTRAL
+    except BandwrightError:
+        step *= 0.5
+        ways, weights = {k: moved(centre + k * step) for k in FORWARD}, FORWARD
+    total = sum(weights[k] * energies(levels, profile) for k, profile in ways.items())
+    return total / step, 1e-13 / step
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_every_parameter_against_differences_of_the_solver(name):
+    stack, arguments = CASES[name]
+    levels = bw.solve(stack, tolerance=f"{TOLERANCE} eV", **arguments)
+    assert len(levels) >= 1
+    gradient = levels.gradient()
+    assert not gradient.mixed.any()
+    assert gradient.kinked == ()
+    expected, noise, change = [], [], []
+    for parameter in gradient.parameters:
+        column, rounding = differences(levels, parameter)
+        expected.append(column)
+        noise.append(rounding)
+        change.append(CHANGES[parameter.kind])
+    expected = np.array(expected).T
+    off = np.abs(gradient.energies - expected)
+    rows = np.max(np.abs(expected) * change, axis=1, keepdims=True)
+    columns = np.max(np.abs(expected), axis=0)
+    in_rows = off * change / rows
+    in_columns = off / np.maximum(columns, 1e6 * np.array(noise))
+    worst = gradient.names[int(np.argmax(in_columns.max(axis=0)))]
+    print(
+        f"\n{name}: {len(levels)} levels, {len(gradient.names)} parameters; of a row's largest"
+        f" entry {in_rows.max():.1e}, of a column's {in_columns.max():.1e} ({worst})"
+    )
+    assert in_rows.max() < 1e-6
+    assert in_columns.max() < 1e-6
