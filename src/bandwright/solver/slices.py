@@ -226,6 +226,7 @@ class _Tilted:
         h, edge, mass, inverse_gap, drop = (column[rows] for column in self.numbers)
         at = edge + _GAUSS[:, :, None] * drop
         local, b = local_mass(energies, at, mass, inverse_gap)
+        b = np.broadcast_to(b, local.shape)  # a row may touch its floor between Gauss points
         shape = (len(omega.a), len(energies))
         whole = [
             Exponent(*(np.array(np.broadcast_to(column, shape)) for column in one))
