@@ -17,6 +17,10 @@ from bandwright.constants import H2M
 NEWTON_STEPS = 12
 
 
+class TooFine(RuntimeError):
+    """No grid within reason holds the error asked."""
+
+
 def running(faces, powers, z):
     """Integral from the first face to each z, of a piecewise polynomial; z ascending."""
     thickness = np.diff(faces)
@@ -100,12 +104,12 @@ def solve_two_band(plain, cells, levels, *, tol=0.0):
     return energies
 
 
-def grid(question, tolerance, solver):
+def grid(question, tolerance, solver, most=1_000_000):
     """Return the fewest cells found whose true error over all levels stays within a tolerance.
 
-    ``solver(cells)`` returns the energies. First the grids on which faces at whole tenths of a
-    nanometre are nodes, from coarse to fine; then doubling and bisection; then smaller grids on
-    which the error may happen to be small. Not timed.
+    ``solver(cells)`` returns the energies. Doubling, on the way grids that have faces at whole
+    tenths of a nanometre as nodes; then bisection; then smaller grids on which the error may
+    happen to be small. Not timed.
     """
 
     def holds(cells):
@@ -113,18 +117,19 @@ def grid(question, tolerance, solver):
 
     length = float(question.plain.faces[-1])
     tenths = round(length * 10)
-    first = next((tenths * k for k in range(1, 40) if holds(tenths * k)), 0)
     fine = max(32, int(length / 0.5))
     while not holds(fine):
-        fine *= 2
-        if 0 < first <= fine:
-            fine = first
+        coarse, fine = fine, 2 * fine
+        whole = [tenths * k for k in range(coarse // tenths + 1, (fine - 1) // tenths + 1)][:8]
+        found = next((cells for cells in whole if holds(cells)), None)
+        if found:
+            fine = found
             break
-        if fine > 4_000_000:
-            raise RuntimeError(f"no grid below {fine} cells holds {tolerance} eV")
+        if fine > most:
+            raise TooFine(f"no grid below {most} cells holds {tolerance} eV")
     coarse = fine // 2
     while fine - coarse > 0.04 * fine:
         middle = (fine + coarse) // 2
         fine, coarse = (middle, coarse) if holds(middle) else (fine, middle)
     trials = [int(fine * share) for share in (0.97, 0.94, 0.9, 0.84, 0.77, 0.7, 0.6)]
-    return min([fine, *([first] if first else []), *(c for c in trials if holds(c))])
+    return min([fine, *(c for c in trials if holds(c))])
