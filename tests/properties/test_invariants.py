@@ -1,9 +1,13 @@
 """What must not change a level, or must change it in one direction, on arbitrary profiles."""
 
+from decimal import Decimal
+
 import numpy as np
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
+from bandwright import Layer, Stack
+from bandwright import solve as bw_solve
 from bandwright.constants import H2M
 from bandwright.solver import solve_profile
 from physics.dense import count
@@ -74,6 +78,35 @@ def test_mirror_with_the_field_reversed(drawn):
     keep = np.flatnonzero(lone(one.energies)[:number])
     here, there = (np.diag(f.dipoles())[keep] for f in (one, other))
     assert np.abs(here + there - profile.faces[-1]).max(initial=0.0) < DIPOLE
+
+
+tenths = st.integers(3, 140)
+
+
+@some
+@given(
+    st.lists(st.tuples(tenths, st.integers(0, 500)), min_size=1, max_size=5),
+    st.sampled_from(["Å", "Angstrom", "pm", "um"]),
+    st.sampled_from(["0 kV/cm", "-35 kV/cm"]),
+)
+def test_nm_against_angstrom(layers, unit, field):
+    """The same lengths in another unit are the same stack, and its levels the same floats."""
+    exponent = {"Å": 1, "Angstrom": 1, "pm": 3, "um": -3}[unit]
+
+    def stack(length):
+        return Stack(
+            [
+                Layer(length(tenth), edge=f"{edge} meV", mass=0.05 + edge * 1e-4, gap="1.2 eV")
+                for tenth, edge in layers
+            ],
+            field=field, ends=("wall", "wall"),
+        )  # fmt: skip
+
+    in_nm = stack(lambda tenth: f"{Decimal(tenth) / 10} nm")
+    other = stack(lambda tenth: f"{(Decimal(tenth) / 10).scaleb(exponent):f} {unit}")
+    assert in_nm == other
+    one, two = (bw_solve(s, below="1.5 eV") for s in (in_nm, other))
+    assert np.array_equal(one.energies, two.energies)
 
 
 @some
