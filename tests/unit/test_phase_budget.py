@@ -36,7 +36,9 @@ def test_times_of_a_well():
     speed = 2 * H2M * np.sqrt(0.067 * energy / H2M) / 0.067 / HBAR  # nm/fs
     assert well.round_trip_fs == pytest.approx(2 * 9 / speed, rel=1e-6)
     # the ends: the time the wave spends in the barriers
-    ratio = lambda e: np.sqrt(e / 0.067) / np.sqrt((0.25 - e) / 0.092)
+    def ratio(e):
+        return np.sqrt(e / 0.067) / np.sqrt((0.25 - e) / 0.092)
+
     rate = (np.arctan(ratio(energy + 1e-6)) - np.arctan(ratio(energy - 1e-6))) / 2e-6
     assert well.phase_time_fs == pytest.approx(well.round_trip_fs + 4 * HBAR * rate, rel=1e-5)
 

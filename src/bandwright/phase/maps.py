@@ -219,3 +219,15 @@ def edge_phase(k: Floats, kappa: Floats) -> Floats:
     far = (loggamma(kappa + 1j * k) + loggamma(1 + kappa + 1j * k) - loggamma(2j * k)).imag
     phase: Floats = np.pi / 4 - action - far
     return phase
+
+
+def trough_phase(depth: Floats, bend: Floats) -> Floats:
+    """Return what each side of a rounded trough between level flanks adds to its pi/4.
+
+    For Q = q - depth tanh^2(y/l), ``bend`` = sqrt(2 |Q''|) at the bottom: the exact levels of
+    Poeschl & Teller, Z. Phys. 83, 143 (1933), have l - 1/2 where the action alone gives
+    sqrt(l (l - 1)).
+    """
+    x = 2 * np.maximum(depth, 0.0) / np.maximum(bend, 1e-100)
+    phase: Floats = np.pi / 2 * 0.25 / (np.sqrt(0.25 + x * x) + x)
+    return phase

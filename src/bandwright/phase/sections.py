@@ -28,6 +28,7 @@ from .maps import (
     top_exponent,
     top_face,
     top_phase,
+    trough_phase,
 )
 from .pieces import Batch, Piece, energy_mass, pieces_of
 
@@ -281,7 +282,7 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
     """
     if batch.tilted:
         return np.ones_like(low_q), np.zeros_like(low_q), np.zeros_like(low_q)
-    slant, curved = [], []
+    slant, curved, bends = [], [], []
     for end, q, reach in ((0, low_q, action), (1, high_q, decay)):
         m = batch.at("mass", batch.ends[end][:, None])
         m = energy_mass(energies - batch.edge[end][:, None], m,
@@ -291,6 +292,7 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
         bend = np.sqrt(2 * np.abs(batch.curvature[end][:, None]) / (H2M * m**3))
         slant.append((1.5 * reach * slope / size**1.5) ** 2)
         curved.append((2 * reach / np.pi * bend / size) ** 2)
+        bends.append(bend)
     weight = (np.clip(1 - slant[0], 0, 1) * np.clip(1 - slant[1] - curved[1], 0, 1)) ** 2
     x = energies - batch.at("edge", batch.middle)
     m = energy_mass(x, batch.at("mass", batch.middle), batch.at("inverse_gap", batch.middle))
@@ -298,7 +300,9 @@ def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, hi
     k = np.sqrt(np.maximum(low_q, 0.0)) * width
     kappa = np.sqrt(np.maximum(-high_q, 0.0)) * width
     over = np.clip(1 - np.maximum(high_q, 0.0) / np.maximum(low_q, 1e-300), 0, 1)
-    phase = np.where(low_q > 0, over * edge_phase(k, kappa), 0.0)
+    hollow = np.clip(curved[0], 0, 1)
+    phase = (1 - hollow) * edge_phase(k, kappa) + hollow * trough_phase(low_q - high_q, bends[0])
+    phase = np.where(low_q > 0, over * phase, 0.0)
     return rise((slant[0] + curved[0]) / 0.7), weight, phase
 
 
