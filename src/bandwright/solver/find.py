@@ -57,18 +57,23 @@ def find(
     counts, pivots = system.count_and_pivot(scanned)
     if (counts[1:] < counts[:-1]).any():  # rounding at a level; a count never falls
         counts = np.maximum.accumulate(counts)
-    numbers = np.arange(max(skip, int(counts[0])), int(counts[-1]))[:at_most]
+    first, last = int(counts[0]), int(counts[-1])
+    numbers = np.arange(max(skip, first), last)[:at_most]
     if not len(numbers):
         return Found(numbers, np.zeros(0), np.zeros((system.nodes, 0)), np.zeros(0, dtype=bool))
-    place = np.searchsorted(counts, numbers, side="right")
+    before, after = int(numbers[0] > first), int(numbers[-1] < last - 1)
+    wide = np.arange(numbers[0] - before, numbers[-1] + 1 + after)  # the neighbours left out, too
+    place = np.searchsorted(counts, wide, side="right")
     lows, highs = scanned[place - 1], scanned[place]
     energies = _crossing(lows, highs, pivots[place - 1], pivots[place])
     single = _alone(lows, highs)
     if not single.all():
-        lows, highs = _isolate(system, numbers, lows, highs)
-        crowded = ~single
-        energies[crowded] = 0.5 * (lows + highs)[crowded]
+        lows, highs = _isolate(system, wide, lows, highs)
+        energies[~single] = 0.5 * (lows + highs)[~single]
         single = _alone(lows, highs)
+    if before or after:
+        inner = slice(before, len(wide) - after)
+        lows, highs, energies, single = lows[inner], highs[inner], energies[inner], single[inner]
     nodes = np.zeros((system.nodes, len(numbers)))
     done = np.zeros(len(numbers), dtype=bool)
     for _ in range(_ROUNDS):
@@ -163,7 +168,7 @@ def _bisect(
 
 
 @lru_cache(maxsize=64)
-def _random(nodes: int) -> Floats:
+def random_vector(nodes: int) -> Floats:
     """Return a random vector, the same each time: a symmetric start would miss odd levels."""
     rng = np.random.default_rng(20250101)
     return np.asarray(rng.uniform(0.5, 1.5, nodes) * rng.choice([-1.0, 1.0], nodes))
@@ -178,8 +183,10 @@ def _newton(
     neighbours. A level counts as reached if it stayed inside its bracket; a step that leaves it
     is a sign of a neighbour's vector.
     """
-    r = np.repeat(_random(system.nodes)[:, None], len(energies), axis=1)
-    narrow = _BENT + 4.0 / (highs - lows)
+    r = np.repeat(random_vector(system.nodes)[:, None], len(energies), axis=1)
+    width = highs - lows
+    narrow = _BENT + 4.0 / width
+    accurate = np.minimum(accuracy, 1e-4 * width)  # crowded levels to a part of their distance
     for turn in range(_NEWTON_STEPS):
         matrix, slope = system.matrix_and_slope(energies)
         z = solve_shifted(matrix, r)
@@ -195,6 +202,6 @@ def _newton(
         scale = np.sqrt(np.abs(rayleigh))
         z, r = z / scale, after / scale
         left = step * step * narrow
-        if turn and ((left < accuracy) | ~inside).all():
+        if turn and ((left < accurate) | ~inside).all():
             break
-    return energies, z, inside & (left < accuracy)
+    return energies, z, inside & (left < accurate)

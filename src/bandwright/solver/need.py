@@ -23,9 +23,10 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
 
     A flat outer section with an open end needs none: it goes on for ever from its inner face.
 
-    With k3 = (m F / h2m)^(1/3) of the steepest place, k4 likewise of the curvature, and the
-    largest wave number k: steps of a fixed share of 1/k3, 1/k4, 1/k; the share falls with the
-    sixth root of the tolerance. Flat sections only keep each slice below `PHASE_LIMIT`.
+    With k3 = (m F / h2m)^(1/3) of the steepest place and q the largest wave number or decay rate,
+    the 6th-order Magnus exponent leaves terms like (k3^3 q^4) h^7: slices of a fixed share of
+    (k3^3 q^4)^(-1/7), likewise for curvature and a varying mass; the share falls with the sixth
+    root of the tolerance. Flat sections only keep each slice below `PHASE_LIMIT`.
     """
     numbers = profile.numbers
     above = np.maximum(high - numbers.lowest, 0.0)
@@ -34,9 +35,11 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
     counts = np.ceil(wave * numbers.thickness / PHASE_LIMIT)
     if not numbers.all_flat:
         share = (max(tolerance, 1e-13) / 1e-6) ** (1 / 6)
-        steep = (numbers.mass * np.abs(numbers.edge[:, 1]) * (1.0 + above * numbers.inverse_gap)
-                 / H2M) ** (1 / 3)  # fmt: skip
-        rate = np.maximum(np.maximum(steep / 0.36, wave / 1.2) / share, 0.75 * wave)
+        slope = np.abs(numbers.edge[:, 1])
+        heavy = numbers.mass * (1.0 + above * numbers.inverse_gap) / H2M
+        depth = np.maximum(above, numbers.lowest - numbers.lowest.min())
+        rate = _mixed((heavy * slope) ** (1 / 3), np.sqrt(heavy * depth), 3) / (0.48 * share)
+        rate = np.maximum(rate, 0.75 * wave)
         counts = np.where(numbers.flat, counts, np.ceil(numbers.thickness * rate))
         for index in np.flatnonzero(numbers.curved):
             counts[index] = _curved_need(profile.sections[index], high, share)
@@ -64,9 +67,16 @@ def _curved_need(section: Section, high: float, share: float) -> int:
     heavy = np.maximum(mass, section.mass.at(points))
     steep = np.abs(np.gradient(edge, step))
     bent = np.abs(np.gradient(np.gradient(edge, step), step))
-    drift = float(np.max(np.abs(np.gradient(np.log(mass), step))))
-    k3 = float(np.max(heavy * steep / H2M)) ** (1 / 3)
-    k4 = float(np.max(heavy * bent / H2M)) ** (1 / 4)
-    wave = float(np.max(np.sqrt(np.maximum(mass * (high - edge), 0.0) / H2M)))
-    rate = max(k3 / 0.36, k4 / 0.5, wave / 1.2, drift / 1.0) / share
-    return int(np.ceil(section.thickness * max(rate, 0.75 * wave)))
+    drift = np.abs(np.gradient(np.log(mass), step))
+    k3 = (heavy * steep / H2M) ** (1 / 3)
+    k4 = (heavy * bent / H2M) ** (1 / 4)
+    wave = np.sqrt(mass * np.maximum(high - edge, 0.0) / H2M)
+    reach = np.sqrt(heavy * np.maximum(np.abs(high - edge), edge - edge.min()) / H2M)
+    rates = (_mixed(k3, reach, 3) / 0.48, _mixed(k4, reach, 4) / 0.5, _mixed(drift, reach, 1) / 0.5)
+    rate = max(float(np.max(r)) for r in rates) / share
+    return int(np.ceil(section.thickness * max(rate, 0.75 * float(wave.max()))))
+
+
+def _mixed(rate: Floats, reach: Floats, power: int) -> Floats:
+    """Return the rate of an error term rate^power reach^(7 - power) h^7."""
+    return np.asarray((rate**power * np.maximum(rate, reach) ** (7 - power)) ** (1 / 7))

@@ -76,12 +76,12 @@ def _room(energies: Floats, first: int, last: int) -> float:
 def _ritz(system: System, energies: Floats, room: float) -> Floats:
     """Separate a cluster: block inverse iterations with -K' as mass, then a small eigenproblem.
 
-    ``room`` is the distance to the nearest level outside the cluster [eV]. The shift stands just
-    below the cluster, so that K is linear in E across it and the members grow alike.
+    ``room`` is the distance to the nearest level outside the cluster [eV]. The shift stands off
+    the middle of the cluster, nearer to every member than to any other level.
     """
     size = len(energies)
     spread = float(energies[-1] - energies[0])
-    shift = float(energies[0]) - 0.5 * spread - min(1e-10, 0.1 * room)
+    shift = float(energies[0]) + 0.43 * spread - min(1e-11, 0.05 * room)
     matrix, slope = (_repeat(m, size) for m in system.matrix_and_slope(np.array([shift])))
     z = np.random.default_rng(11).uniform(-1.0, 1.0, (len(matrix.diagonal), size))
     before = np.full(size, np.inf)

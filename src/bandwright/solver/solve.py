@@ -10,12 +10,12 @@ import numpy.typing as npt
 
 from bandwright.errors import SolveError
 from bandwright.profile import Profile
-from bandwright.solver.find import Found, find
+from bandwright.solver.find import Found, find, random_vector
 from bandwright.solver.need import MOST_SLICES, needed
 from bandwright.solver.polish import polish
 from bandwright.solver.slices import cut
 from bandwright.solver.states import States
-from bandwright.solver.system import System, apply, chunks, solve_shifted
+from bandwright.solver.system import System, apply, chunks, open_ends, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -119,7 +119,8 @@ def solve_profile(
     if high is None:
         raise SolveError("the highest energy asked is missing; give high")
     floor = lowest_edge(profile) if low is None else low
-    top = high = max(high, floor + tolerance)
+    edges = [end.edge for end in open_ends(profile, ends) if end is not None]
+    top = high = max(floor, min([high, *edges]))  # nothing is bound above an open end's edge
     if at_most is not None:
         top = _top(System(cut(profile, needed(profile, high, 1e-4, ends)), ends), floor, high,
                    at_most + skip)  # fmt: skip
@@ -164,16 +165,13 @@ def lowest_edge(profile: Profile) -> float:
 
 def _top(system: System, low: float, high: float, wanted: int) -> float:
     """Return an energy above the level of this number, not far, or ``high``."""
-    if system.count([high])[0] <= wanted:
-        return high
-    bottom, top = low, high
-    while top - bottom > 0.02 * (top - low):
-        middle = 0.5 * (bottom + top)
-        if system.count([middle])[0] > wanted:
-            top = middle
-        else:
-            bottom = middle
-    return top
+    for _ in range(2):
+        trial = np.linspace(low, high, 33)
+        above = np.flatnonzero(system.count(trial) > wanted)
+        if not len(above) or not above[0]:
+            return high
+        low, high = float(trial[above[0] - 1]), float(trial[above[0]])
+    return high
 
 
 def _halving_error(fine: System, found: Found) -> Floats:
@@ -182,6 +180,7 @@ def _halving_error(fine: System, found: Found) -> Floats:
     for part in chunks(len(error), len(fine.slices)):
         matrix, slope = fine.matrix_and_slope(found.energies[part])
         z = _refine(fine, found.nodes[:, part])
+        z = np.where(found.single[part], z, random_vector(fine.nodes)[:, None])
         for _ in range(2):
             r = apply(slope, z)
             z = solve_shifted(matrix, r)

@@ -84,6 +84,8 @@ class States:
 
     def _inside(self, z: Floats, index: npt.NDArray[np.int64]) -> tuple[Floats, Floats]:
         """U and p at sorted positions z in slices ``index``, from u at the slices' faces."""
+        if not len(self.energies):
+            return np.zeros((0, len(z))), np.zeros((0, len(z)))
         slices = self.system.slices
         whole = slices.thickness[index]
         depth = np.clip(z - slices.faces[index], 1e-9 * whole, (1 - 1e-9) * whole)
@@ -233,6 +235,8 @@ class States:
     def wall_shifts(self) -> Floats:
         """dE/dwall = -h2m m(E) p_wall^2 / <i|i> [eV/nm] of the more sensitive wall, (n_levels,)."""
         shift = np.zeros(len(self.energies))
+        if not len(shift):
+            return shift
         slices = self.system.slices
         elements = slices.elements(self.energies)
         for end, row, inner in zip(self.system.ends, (0, -1), (1, -2), strict=True):

@@ -11,7 +11,7 @@ import numpy.typing as npt
 from scipy.linalg.lapack import dgtsv
 
 from bandwright.constants import H2M
-from bandwright.profile import Section
+from bandwright.profile import Profile
 from bandwright.solver.matrix import Counts, Matrix, assemble, count_and_pivot
 from bandwright.solver.propagation import local_mass
 from bandwright.solver.slices import Slices
@@ -68,11 +68,7 @@ class System:
     @cached_property
     def outside(self) -> tuple[OpenEnd | None, OpenEnd | None]:
         """What lies beyond both ends; None is a wall."""
-        sections = self.slices.profile.sections
-        return (
-            _open_end(sections[0], 0.0) if self.ends[0] == "open" else None,
-            _open_end(sections[-1], sections[-1].thickness) if self.ends[1] == "open" else None,
-        )
+        return open_ends(self.slices.profile, self.ends)
 
     @property
     def nodes(self) -> int:
@@ -115,9 +111,18 @@ class System:
         return np.pad(nodes, pad)
 
 
-def _open_end(section: Section, depth: float) -> OpenEnd:
-    curves = (section.edge, section.mass, section.inverse_gap)
-    return OpenEnd(*(curve.value(depth) for curve in curves))
+def open_ends(profile: Profile, ends: tuple[str, str]) -> tuple[OpenEnd | None, OpenEnd | None]:
+    """Return what lies beyond both ends of a profile; None is a wall."""
+    first, last = (
+        OpenEnd(*(c.value(depth) for c in (section.edge, section.mass, section.inverse_gap)))
+        if end == "open"
+        else None
+        for end, section, depth in (
+            (ends[0], profile.sections[0], 0.0),
+            (ends[1], profile.sections[-1], profile.sections[-1].thickness),
+        )
+    )
+    return first, last
 
 
 def chunks(columns: int, rows: int, cells: int = 2_000_000) -> list[slice]:
@@ -132,6 +137,8 @@ def solve_shifted(matrix: Matrix, right: Floats) -> Floats:
     All energies stand as one block-diagonal tridiagonal matrix, one LAPACK call.
     """
     n, m = matrix.diagonal.shape
+    if n == 1:
+        return np.asarray(right / np.where(matrix.diagonal == 0.0, 1e-300, matrix.diagonal))
     joint = np.zeros((m, n))
     joint[:, : n - 1] = matrix.off.T
     between = joint.reshape(-1)[:-1]
