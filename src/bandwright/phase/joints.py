@@ -43,6 +43,10 @@ def joined(sections: Sequence[Section]) -> list[Section]:
 
 def _whole(first: Section, second: Section) -> Section | None:
     at, beyond = first.thickness, second.thickness
+    for a, b in ((first.mass, second.mass), (first.edge, second.edge)):  # most end here
+        left, right = float(a.at(np.array([at]))[0]), float(b.at(np.zeros(1))[0])
+        if abs(left - right) > 1e-8 * (1 + abs(left)):
+            return None
     edge = _continued(first.edge, second.edge, at, beyond)
     mass = _continued(first.mass, second.mass, at, beyond) if edge else None
     gap = _continued(first.inverse_gap, second.inverse_gap, at, beyond) if mass else None

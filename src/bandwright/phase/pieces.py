@@ -150,8 +150,8 @@ class Batch:
         self.top = np.array([[p.top] for p in pieces])
         self.alone = np.array([[p.alone] for p in pieces])
         self.tilted = all(p.section.tilted for p in pieces)
-        self.plain = np.array([[w and not _linear(p.section) for p in pieces for w in p.walls]]
-                              ).reshape(-1, 2).T
+        self.plain = np.array([[w and p.alone and not _linear(p.section) for w in p.walls]
+                               for p in pieces]).T
         self._curves = {
             name: _Stacked([getattr(p.section, name) for p in pieces])
             for name in ("edge", "mass", "inverse_gap")

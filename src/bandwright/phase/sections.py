@@ -17,18 +17,17 @@ from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile, Sampled, Section
 from ..solver.matrix import Elements
+from .corrections import between_walls, next_order, smooth_edge
 from .joints import joined
 from .maps import (
     Face,
     airy_face,
     bottom_exponent,
     bottom_face,
-    edge_phase,
     rise,
     top_exponent,
     top_face,
     top_phase,
-    trough_phase,
 )
 from .pieces import Batch, Piece, energy_mass, pieces_of
 
@@ -236,7 +235,7 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     over = 1 - rise((np.abs(a) - start) / span) * (high_q > 0)  # a top well below the level
     peak = np.where(below, 0.0, over * top_phase(a)) if top.any() else 0.0
     if order == 1:
-        low, high = _between_walls(batch, energies, low, high)
+        low, high = between_walls(batch, energies, low, high)
     total = action + low.shift
     if order == 1 and batch.plain[1].any():  # joins the plain condition at the wall's own edge
         lost = np.pi / 12 * (1 - rise(high.distance / 0.5))
@@ -244,7 +243,7 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     total = total + np.where(top, np.pi / 4 + peak, np.where(inside, np.pi / 4, -high.shift))
     high_exponent = np.where(top, over * top_exponent(theta), decay + _HALF_LN2 + high.shift)
     height = np.where(inside, 2 * (action + peak) / np.pi, np.abs(low_q) * batch.bottom**2)
-    round_, weight, phase = _smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
+    round_, weight, phase = smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
     larger = np.where(bottom, bottom_exponent(height), 0.0)
     larger = np.where(inside, larger * round_, larger)
     weight = np.where(batch.alone & (high_q > 0), over * weight, weight)
@@ -258,52 +257,6 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     exponent = np.where(below, decay + high.shift - low.shift + larger,
                         high_exponent - np.where(inside, larger, 0.0))
     return Phases(action, decay, total, exponent, low, high)
-
-
-def _between_walls(batch: Batch, energies: Floats, low: Face, high: Face) -> tuple[Face, Face]:
-    """Take what the Airy models add to the phase at hard walls away, above the piece's edge.
-
-    There is no turning point there, and the condition is the plain one, action = n pi.
-    """
-    bottom, top = (edge[:, None] for edge in batch.edge)
-    near = rise((top - energies) / np.maximum(0.2 * (top - bottom), 1e-300))
-    wall = batch.plain[..., None]
-    plain_high = wall[1] & high.allowed
-    return (low._replace(shift=np.where(wall[0], near * low.shift, low.shift)),
-            high._replace(shift=np.where(plain_high, 0.0, high.shift)))
-
-
-def _smooth_edge(batch: Batch, energies: Floats, turn: Floats, low_q: Floats, high_q: Floats,
-                 action: Floats, decay: Floats) -> tuple[Floats, Floats, Floats]:
-    """Return how round the low side is (1 a parabola, 0 flat), and weight and phase of an edge.
-
-    Where the edge is flat on both sides of its rise, within the reach of the wave, the pi/4 of
-    a turning point is corrected by the smooth step that has its two levels and its slope.
-    """
-    if batch.tilted:
-        return np.ones_like(low_q), np.zeros_like(low_q), np.zeros_like(low_q)
-    slant, curved, bends = [], [], []
-    for end, q, reach in ((0, low_q, action), (1, high_q, decay)):
-        m = batch.at("mass", batch.ends[end][:, None])
-        m = energy_mass(energies - batch.edge[end][:, None], m,
-                        batch.at("inverse_gap", batch.ends[end][:, None]))
-        size = np.maximum(np.abs(q), 1e-100)
-        slope = np.abs(batch.slopes["edge"][end][:, None]) / (H2M * m * m)
-        bend = np.sqrt(2 * np.abs(batch.curvature[end][:, None]) / (H2M * m**3))
-        slant.append((1.5 * reach * slope / size**1.5) ** 2)
-        curved.append((2 * reach / np.pi * bend / size) ** 2)
-        bends.append(bend)
-    weight = (np.clip(1 - slant[0], 0, 1) * np.clip(1 - slant[1] - curved[1], 0, 1)) ** 2
-    x = energies - batch.at("edge", batch.middle)
-    m = energy_mass(x, batch.at("mass", batch.middle), batch.at("inverse_gap", batch.middle))
-    width = m * batch.local_width(energies, turn)
-    k = np.sqrt(np.maximum(low_q, 0.0)) * width
-    kappa = np.sqrt(np.maximum(-high_q, 0.0)) * width
-    over = np.clip(1 - np.maximum(high_q, 0.0) / np.maximum(low_q, 1e-300), 0, 1)
-    hollow = np.clip(curved[0], 0, 1)
-    phase = (1 - hollow) * edge_phase(k, kappa) + hollow * trough_phase(low_q - high_q, bends[0])
-    phase = np.where(low_q > 0, over * phase, 0.0)
-    return rise((slant[0] + curved[0]) / 0.7), weight, phase
 
 
 def _face(batch: Batch, end: int, energies: Floats) -> tuple[Floats, Face]:
@@ -351,46 +304,4 @@ def integral(batch: Batch, energies: Floats, begin: Floats, end: Floats,
     m = energy_mass(x, batch.at("mass", s), batch.at("inverse_gap", s))
     value = np.sqrt(np.abs(x) * m / H2M) * rate
     total: Floats = np.abs(end - begin) * (value * batch.weight).sum(axis=-1)
-    return total
-
-
-def next_order(batch: Batch, energies: Floats, inside: npt.NDArray[np.bool_],
-               any_allowed: npt.NDArray[np.bool_]) -> Floats:
-    """Return -1/48 of the finite part of the integral of Q'' Q^(-3/2) dy, the next correction.
-
-    Equal to (1/24) d/dl of the integral of Q'' / sqrt(Q + l) dy (Dunham, Phys. Rev. 41, 713,
-    1932); with dQ/dE = w, d/dE of the integral of (Q''/w) / sqrt(Q) dy is the same, and a
-    turning point is free to move. The faces' own terms are in their Airy models.
-    """
-    e = np.broadcast_to(energies[None, :], inside.shape)
-    low, high = batch.edge[0][:, None], batch.edge[1][:, None]
-    room = np.where(inside, np.minimum(e - low, high - e), np.where(any_allowed, e - high, 1.0))
-    step = 0.02 * np.maximum(room, 1e-9)
-    total = np.zeros(inside.shape)
-    for factor, at in ((1 / 12, -2), (-2 / 3, -1), (2 / 3, 1), (-1 / 12, 2)):
-        total += factor * _bent(batch, e, e + at * step)
-    return np.where(any_allowed, total / (24 * step), 0.0)
-
-
-def _bent(batch: Batch, base: Floats, energies: Floats) -> Floats:
-    """Return the integral of (Q''/w) / sqrt(Q) dy at ``energies``, Q''/w taken at ``base``."""
-    turn = batch.turning(energies)[..., None]
-    s = turn * (1 - batch.tau**2)
-    jacobian = 2 * turn * batch.tau
-    h = 3e-4 * batch.length[:, None, None]
-    centre = np.clip(s, h, batch.length[:, None, None] - h)
-    e = base[..., None]
-    q, rate, m = [], [], []
-    for at in (-1.0, 0.0, 1.0):
-        z = centre + at * h
-        x = e - batch.at("edge", z)
-        mass = batch.at("mass", z)
-        m.append(energy_mass(x, mass, batch.at("inverse_gap", z)))
-        q.append(x / (H2M * m[-1]))
-        rate.append(mass / (H2M * m[-1] ** 2))
-    q2 = 2 * ((q[2] - q[1]) / (m[2] + m[1]) - (q[1] - q[0]) / (m[1] + m[0])) / (h * h * m[1])
-    x = energies[..., None] - batch.at("edge", s)
-    mass = energy_mass(x, batch.at("mass", s), batch.at("inverse_gap", s))
-    root = np.sqrt(np.maximum(x / (H2M * mass), 1e-300))
-    total: Floats = (batch.weight * jacobian * q2 / rate[1] * mass / root).sum(axis=-1)
     return total
