@@ -32,7 +32,9 @@ def measure(build, sizes, tolerance=1e-6, seconds=4.0):
     for size in sizes:
         stack, asked = build(size)
         asked["tolerance"] = f"{tolerance} eV"
-        levels[size] = len(bw.solve(stack, **asked).energies)
+        found = bw.solve(stack, **asked)
+        assert found.complete, f"size {size}: the counts do not agree"
+        levels[size] = len(found.energies)
         competitors[size] = lambda stack=stack, asked=asked: bw.solve(stack, **asked).energies
     times = medians(competitors, seconds)
     return {size: (levels[size], 1e3 * times[size]) for size in sizes}
