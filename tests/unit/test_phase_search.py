@@ -119,6 +119,17 @@ def test_a_vanishing_tilt_is_a_flat_section():
         assert levels(tilt) == pytest.approx(levels(0.0), abs=20 * tilt + 1e-10)
 
 
+def test_a_barely_tilted_layer_at_a_wall_keeps_the_count_rising():
+    tilt = 1e-5
+    outer = (10.0, 0.2, tilt), (10.0, 0.2 + 25 * tilt, tilt)
+    sections = [section(*outer[0], inverse_gap=0.6), section(5, 10 * tilt, tilt, inverse_gap=0.9),
+                section(4, 0.2 + 15 * tilt, tilt, inverse_gap=0.6),
+                section(6, 19 * tilt, tilt, inverse_gap=0.9), section(*outer[1], inverse_gap=0.6)]
+    stack = Profile(tuple(sections), ("wall", "wall"))
+    counts = phase.count(stack, np.linspace(0.1995, 0.2015, 801))
+    assert (np.diff(counts) >= 0).all()
+
+
 def test_splittings_far_below_a_nanovolt_are_kept():
     def pair(width):
         barrier, well = section(60, 0.25, mass=0.092), section(6, 0.0)
