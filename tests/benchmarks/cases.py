@@ -117,7 +117,7 @@ def superlattice(v, periods=50, barrier=BARRIER, well=WELL):
 
 
 def superlattice_two_band(v):
-    return superlattice(v, 20, HIGH_2, NARROW_2)
+    return superlattice(v, 10, HIGH_2, NARROW_2)
 
 
 def parabolic(v):
@@ -176,6 +176,6 @@ CASES = {
         Case("nitride-open", nitride_open, {"below": "0.38 eV"}),
         Case("single, two-band", single_two_band, {"below": "0.5 eV"}, apart=True),
         Case("stage-20, two-band", stage_20_two_band, {"below": "0.4 eV"}, apart=True),
-        Case("superlattice-20, two-band", superlattice_two_band, {"below": "0.5 eV"}, apart=True),
+        Case("superlattice-10, two-band", superlattice_two_band, {"below": "0.5 eV"}, apart=True),
     )
 }

@@ -40,8 +40,8 @@ def yardsticks(asked, tolerance):
     """Return {name: function of no argument} and {name: cells}, each on its coarsest grid.
 
     "m" and "1/m" are the two means of `benchmarks.yardstick`, the latter left out where it needs
-    20 times as many cells; "loose" is "m" with LAPACK's bisection stopped at a tenth of the
-    tolerance.
+    20 times as many cells (4 times with many levels); "loose" is "m" with LAPACK's bisection
+    stopped at a tenth of the tolerance.
     """
     plain, high = asked.plain, asked.high
     solvers = {
@@ -52,9 +52,10 @@ def yardsticks(asked, tolerance):
     if plain.two_band:
         solvers = {"m": lambda n: yardstick.solve_two_band(plain, n, asked.levels)}
     cells = {"m": yardstick.grid(asked, tolerance, solvers["m"])}
+    most = (20 if asked.levels <= 20 else 4) * cells["m"]
     for name in list(solvers)[1:]:
         try:
-            cells[name] = yardstick.grid(asked, tolerance, solvers[name], most=20 * cells["m"])
+            cells[name] = yardstick.grid(asked, tolerance, solvers[name], most)
         except yardstick.TooFine:
             del solvers[name]
     return {name: (lambda f=f, n=cells[name]: f(n)) for name, f in solvers.items()}, cells
