@@ -240,7 +240,8 @@ class Levels:
             first, second = self.states.positions, self.states.squares
             for g in self.groups:
                 here = by_layer[g].mean(axis=0)
-                main.append(names[int(np.argmax(here))])
+                first_of_equals = int(np.argmax(here > here.max() * (1.0 - 1e-3)))
+                main.append(names[first_of_equals])
                 share.append(float(here.max()))
                 mean = float(first[g].mean())
                 position.append(mean)

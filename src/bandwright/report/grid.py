@@ -31,23 +31,23 @@ UNITS = {
 
 NARROW = 11  # no heading is wrapped to less
 
-# Digits after the point, or a format; anything else prints with six significant digits.
+# Digits that levels good to 1e-6 eV deserve; anything not named prints with six.
 DIGITS = {
-    "energy_meV": ".3f",
-    "phase_integral_meV": ".3f",
-    "difference_meV": "#.2g",
-    "largest_difference_meV": "#.2g",
-    "wall_shift_meV_per_nm": "#.2g",
+    "energy_meV": ".2f",
+    "phase_integral_meV": ".2f",
+    "difference_meV": ".3f",
+    "largest_difference_meV": ".3f",
+    "wall_shift_meV_per_nm": ".3f",
     "shift_meV": "+.3f",
     "shift_um": "+.4f",
     "probability": ".3f",
     "mean_position_nm": ".2f",
     "spread_nm": ".2f",
-    "wavelength_um": ".4f",
-    "wavenumber_per_cm": ".2f",
-    "frequency_THz": ".3f",
-    "dipole_nm": ".4f",
-    "oscillator_strength": ".4f",
+    "wavelength_um": ".3f",
+    "wavenumber_per_cm": ".1f",
+    "frequency_THz": ".2f",
+    "dipole_nm": ".3f",
+    "oscillator_strength": ".3f",
     "thickness_nm": ".3f",
     "gap_eV": ".4f",
     "edge_eV": ".4f",
@@ -58,6 +58,26 @@ DIGITS = {
     "monolayer_nm": ".6f",
     "strain_percent": ".3f",
 }
+
+
+# Columns that show more of them when levels are better than that.
+FINER = (
+    *("energy_meV", "phase_integral_meV", "difference_meV"),
+    *("wavelength_um", "wavenumber_per_cm", "frequency_THz"),
+)
+
+
+def digits_for(tolerance: float) -> dict[str, str]:
+    """Return the digits that levels good to a tolerance [eV] deserve.
+
+    Examples
+    --------
+    >>> digits_for(1e-6)["energy_meV"], digits_for(1e-9)["energy_meV"]
+    ('.2f', '.5f')
+    """
+    more = min(max(0, round(-6.0 - math.log10(tolerance))), 6)
+    finer = {name: f".{int(DIGITS[name][1]) + more}f" for name in FINER}
+    return {**DIGITS, **finer}
 
 
 def unit_of(name: str) -> tuple[str, str]:
@@ -82,7 +102,7 @@ def cell(name: str, value: Any, digits: Mapping[str, str] = DIGITS) -> str:
     Examples
     --------
     >>> cell("energy_meV", 61.23456), cell("of_box", False), cell("dipole_nm", float("nan"))
-    ('61.235', 'no', '-')
+    ('61.23', 'no', '-')
     """
     if value is None:
         return "-"
@@ -93,7 +113,7 @@ def cell(name: str, value: Any, digits: Mapping[str, str] = DIGITS) -> str:
     number = float(value)
     if math.isnan(number):
         return "-"
-    text = format(number, digits.get(name, ".6g")).removesuffix(".")
+    text = format(number, digits.get(name, ".6g"))
     return text.lstrip("+-") if float(text) == 0.0 else text
 
 
@@ -112,10 +132,10 @@ def grid(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGIT
     Examples
     --------
     >>> print("\n".join(grid({"level": [1, 2], "energy_meV": [61.2346, 140.1]})))
-    level   energy
-               meV
-        1   61.235
-        2  140.100
+    level  energy
+              meV
+        1   61.23
+        2  140.10
     """
     blocks = []
     for name, values in columns.items():

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from .data import columns_of
 from .facts import SAFETY, Fact, facts
-from .grid import DIGITS, cell, unit_of
+from .grid import DIGITS, cell, digits_for, unit_of
 from .text import level_columns, level_notes
 
 if TYPE_CHECKING:
@@ -22,7 +22,7 @@ def html_table(columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] =
     Examples
     --------
     >>> html_table({"energy_meV": [61.2346]})  # doctest: +ELLIPSIS
-    '<table><thead><tr><th>energy<br><small>meV</small></th></tr></thead>...>61.235</td></tr>...'
+    '<table><thead><tr><th>energy<br><small>meV</small></th></tr></thead>...>61.23</td></tr>...'
     """
     heads = []
     for name in columns:
@@ -65,4 +65,5 @@ def levels_html(levels: Levels) -> str:
 def lines_html(lines: Lines) -> str:
     """Return lines as HTML: the table, the cautions, the safety line."""
     said = [("caution", text) for text in lines.cautions] + [("safety", SAFETY)]
-    return html_table(columns_of(lines.table)) + html_facts(said)
+    table = html_table(columns_of(lines.table), digits_for(lines.levels.tolerance))
+    return table + html_facts(said)

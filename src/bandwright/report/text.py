@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 import re
 from collections.abc import Iterable, Sequence
 from textwrap import wrap
@@ -10,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from .data import Columns, columns_of
 from .facts import SAFETY, Fact, drive, facts, grown, held_at
-from .grid import DIGITS, grid
+from .grid import cell, digits_for, grid
 from .known import COMMON_SCALE, Known
 
 if TYPE_CHECKING:
@@ -76,18 +75,6 @@ def cautions_text(cautions: Sequence[str]) -> list[str]:
     return sheet(("caution", text) for text in cautions)
 
 
-def finer(tolerance: float) -> dict[str, str]:
-    """Return the digits that energies good to a tolerance [eV] deserve.
-
-    Examples
-    --------
-    >>> finer(1e-6)["energy_meV"], finer(1e-9)["energy_meV"]
-    ('.3f', '.6f')
-    """
-    places = min(max(3, math.ceil(-3 - math.log10(tolerance) - 1e-9)), 9)
-    return {**DIGITS, "energy_meV": f".{places}f", "phase_integral_meV": f".{places}f"}
-
-
 def level_columns(levels: Levels) -> tuple[Columns, dict[str, str]]:
     """Return the columns that say something about these levels, and the digits they deserve."""
     columns = columns_of(levels.table)
@@ -97,7 +84,7 @@ def level_columns(levels: Levels) -> tuple[Columns, dict[str, str]]:
             columns.pop(name, None)
     if levels.phase_exact and "difference_meV" in columns:
         columns["difference_meV"] = ["exact here"] * len(levels.table)
-    return columns, finer(levels.tolerance)
+    return columns, digits_for(levels.tolerance)
 
 
 def level_notes(levels: Levels) -> list[Fact]:
@@ -117,7 +104,8 @@ def budget_text(lines: Lines) -> list[str]:
     line = lines.main
     if line is None:
         return []
-    head = f"what moves {line.name}, {line.wavelength_um:.4f} um:"
+    wavelength = cell("wavelength_um", line.wavelength_um, digits_for(lines.levels.tolerance))
+    head = f"what moves {line.name}, {wavelength} um:"
     columns = columns_of(lines.error_budget(line))
     # a sentence says in words what its row says in numbers, and its remark
     said = zip(columns.pop("sentence"), columns.pop("remark"), strict=True)
@@ -126,7 +114,8 @@ def budget_text(lines: Lines) -> list[str]:
 
 def lines_text(lines: Lines) -> str:
     """Return the lines, beside the main one its error budget, cautions and the safety line."""
-    table = grid(columns_of(lines.table)) if len(lines.table) else ["no line"]
+    digits = digits_for(lines.levels.tolerance)
+    table = grid(columns_of(lines.table), digits) if len(lines.table) else ["no line"]
     return page(sheet(facts(lines.levels)), table, budget_text(lines), lines_notes(lines))
 
 
