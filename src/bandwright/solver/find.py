@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 from functools import lru_cache
-from typing import NamedTuple
+from typing import NamedTuple, Protocol
 
 import numpy as np
 import numpy.typing as npt
 
 from bandwright.constants import H2M
-from bandwright.errors import SolveError
-from bandwright.solver.system import System, apply, chunks, solve_shifted
+from bandwright.solver.matrix import Matrix
+from bandwright.solver.system import apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -22,91 +22,151 @@ _NEWTON_STEPS = 7
 _ROUNDS = 6
 # K is bent by about this much per eV: a Newton step s leaves an error of about s^2 times it [1/eV]
 _BENT = 20.0
+#: keeps the counts of different designs apart in one sorted array
+_APART = 1 << 32
+#: where a crowded bracket is counted
+_PARTS = np.arange(1, 8)[:, None] / 8.0
 
 
 class Found(NamedTuple):
     """Levels of a system, ascending: numbers from 0, energies (n,), rough u at the free faces.
 
     ``single`` says whether Newton reached the level alone; others are members of clusters.
+    ``owner`` is the design each level belongs to, 0 for a system of one.
     """
 
     numbers: Indices
     energies: Floats
     nodes: Floats
     single: Flags
+    owner: Indices
 
 
-def find(
-    system: System, low: float, high: float, skip: int, at_most: int | None, accuracy: float
-) -> Found:
-    """Return the levels between two energies.
+class Asked(NamedTuple):
+    """What is asked of each design of a system; arrays (n_designs,).
+
+    Levels between ``low`` and ``high`` [eV], those numbered below ``skip`` left out, at most
+    ``at_most`` of the rest. ``guess`` is about how many levels there are.
+    """
+
+    low: Floats
+    high: Floats
+    skip: Indices
+    at_most: Indices
+    guess: Indices
+
+
+class Solvable(Protocol):
+    """What levels are found in: one sliced design, or a family of designs of one pattern."""
+
+    @property
+    def nodes(self) -> int:
+        """Number of free faces."""
+        ...
+
+    @property
+    def rows(self) -> int:
+        """Number of slices."""
+        ...
+
+    def count_and_pivot(self, energies: Floats, owner: Indices) -> tuple[Indices, Floats]:
+        """Return how many levels of each energy's design lie below it, and K's last pivot."""
+        ...
+
+    def matrix_and_slope(self, energies: Floats, owner: Indices) -> tuple[Matrix, Matrix]:
+        """Return K of each energy's design, and its derivative by E."""
+        ...
+
+
+def find(system: Solvable, asked: Asked, accuracy: float) -> Found:
+    """Return the levels asked of a system, design after design.
 
     Parameters
     ----------
-    system : System
-    low, high : float
-        Bounds [eV].
-    skip : int
-        Level numbers below this one are left out.
-    at_most : int or None
-        Most levels returned, from the lowest.
+    system : Solvable
+    asked : Asked
     accuracy : float
         How well the zeros of K are met [eV].
     """
-    scanned = np.linspace(low, high, 5 * _guess(system, high) + 16)
-    counts, pivots = system.count_and_pivot(scanned)
-    if (counts[1:] < counts[:-1]).any():  # rounding at a level; a count never falls
-        counts = np.maximum.accumulate(counts)
-    first, last = int(counts[0]), int(counts[-1])
-    numbers = np.arange(max(skip, first), last)[:at_most]
-    if not len(numbers):
-        return Found(numbers, np.zeros(0), np.zeros((system.nodes, 0)), np.zeros(0, dtype=bool))
-    before, after = int(numbers[0] > first), int(numbers[-1] < last - 1)
-    wide = np.arange(numbers[0] - before, numbers[-1] + 1 + after)  # the neighbours left out, too
-    place = np.searchsorted(counts, wide, side="right")
-    lows, highs = scanned[place - 1], scanned[place]
-    energies = _crossing(lows, highs, pivots[place - 1], pivots[place])
-    single = _alone(lows, highs)
+    owner, numbers, inner, lows, highs, energies = _scan(system, asked)
+    single = _alone(owner, lows, highs)
     if not single.all():
-        lows, highs = _isolate(system, wide, lows, highs)
+        lows, highs = _isolate(system, owner, numbers, lows, highs)
         energies[~single] = 0.5 * (lows + highs)[~single]
-        single = _alone(lows, highs)
-    if before or after:
-        inner = slice(before, len(wide) - after)
-        lows, highs, energies, single = lows[inner], highs[inner], energies[inner], single[inner]
+        single = _alone(owner, lows, highs)
+    if not inner.all():
+        owner, numbers, lows, highs = owner[inner], numbers[inner], lows[inner], highs[inner]
+        energies, single = energies[inner], single[inner]
     nodes = np.zeros((system.nodes, len(numbers)))
     done = np.zeros(len(numbers), dtype=bool)
     for _ in range(_ROUNDS):
         todo = np.flatnonzero(single & ~done)
         if not len(todo):
             break
-        for part in chunks(len(todo), len(nodes)):
+        for part in chunks(len(todo), system.rows):
             some = todo[part]
             energies[some], nodes[:, some], done[some] = _newton(
-                system, energies[some], lows[some], highs[some], accuracy
+                system, owner[some], energies[some], lows[some], highs[some], accuracy
             )
         left = np.flatnonzero(single & ~done)
         if len(left):
-            lows[left], highs[left] = _bisect(system, numbers[left], lows[left], highs[left], 6)
+            lows[left], highs[left] = _bisect(
+                system, owner[left], numbers[left], lows[left], highs[left], 6
+            )
             energies[left] = 0.5 * (lows[left] + highs[left])
     rest = np.flatnonzero(~done)
     if len(rest):
-        lows[rest], highs[rest] = _bisect(system, numbers[rest], lows[rest], highs[rest], 60)
+        lows[rest], highs[rest] = _bisect(
+            system, owner[rest], numbers[rest], lows[rest], highs[rest], 60
+        )
         energies[rest] = 0.5 * (lows[rest] + highs[rest])
-    if (energies[1:] < energies[:-1]).any():
-        worst = float(np.max(energies[:-1] - energies[1:]))
-        if worst > 1e-9:
-            raise SolveError(f"levels came out of order by {worst:g} eV; please report this stack")
-        energies = np.maximum.accumulate(energies)
-    return Found(numbers, energies, nodes, done)
+    late = (energies[1:] < energies[:-1]) & (owner[1:] == owner[:-1])
+    if late.any():  # members of a cluster, apart by rounding
+        energies[1:][late] = energies[:-1][late]
+    return Found(numbers, energies, nodes, done, owner)
 
 
-def _guess(system: System, high: float) -> int:
-    """Return about how many levels lie below ``high``, from the phase across all slices."""
-    slices = system.slices
-    above = np.maximum(high - slices.edge, 0.0)
-    wave = np.sqrt(slices.mass * (1.0 + above * slices.inverse_gap) * above)
-    return int(np.dot(wave, slices.thickness) / (np.pi * np.sqrt(H2M))) + 1
+def guess_levels(
+    thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats, high: Floats | float
+) -> Indices:
+    """Return about how many levels lie below ``high``, from the phase across all slices.
+
+    Arrays have the slices along the last axis.
+    """
+    above = np.maximum(np.asarray(high)[..., None] - edge, 0.0)
+    wave = np.sqrt(mass * (1.0 + above * inverse_gap) * above)
+    phase = (wave * thickness).sum(axis=-1) / (np.pi * np.sqrt(H2M))
+    return np.atleast_1d(phase).astype(np.int64) + 1
+
+
+def _scan(system: Solvable, asked: Asked) -> tuple[Indices, Indices, Flags, Floats, Floats, Floats]:
+    """Count on a grid of each design, and bracket every level asked.
+
+    Returns owner, number, whether the level is wanted (neighbours just outside what is asked
+    come along, for crowded brackets to see them), bracket, and a first guess of the energy.
+    """
+    sizes = 5 * asked.guess + 16
+    ends = np.cumsum(sizes)
+    starts = ends - sizes
+    owner = np.repeat(np.arange(len(sizes)), sizes)
+    part = (np.arange(len(owner)) - starts[owner]) / (sizes - 1)[owner]
+    scanned = asked.low[owner] + (asked.high - asked.low)[owner] * part
+    counts, pivots = system.count_and_pivot(scanned, owner)
+    keys = np.maximum.accumulate(counts + _APART * owner)  # rounding at a level; none falls
+    first, last = keys[starts] % _APART, keys[ends - 1] % _APART
+    begin = np.maximum(asked.skip, first)
+    size = np.clip(last - begin, 0, asked.at_most)
+    before = (size > 0) & (begin > first)
+    after = (size > 0) & (begin + size < last)
+    begin, size = begin - before, size + before + after
+    owner = np.repeat(np.arange(len(size)), size)
+    place = np.arange(len(owner)) - (np.cumsum(size) - size)[owner]
+    numbers = begin[owner] + place
+    inner = ~((before[owner] & (place == 0)) | (after[owner] & (place == (size - 1)[owner])))
+    index = np.searchsorted(keys, numbers + _APART * owner, side="right")
+    lows, highs = scanned[index - 1], scanned[index]
+    energies = _crossing(lows, highs, pivots[index - 1], pivots[index])
+    return owner, numbers, inner, lows, highs, energies
 
 
 def _crossing(lows: Floats, highs: Floats, first: Floats, last: Floats) -> Floats:
@@ -117,51 +177,45 @@ def _crossing(lows: Floats, highs: Floats, first: Floats, last: Floats) -> Float
     return np.asarray(lows + part * (highs - lows))
 
 
-def _alone(lows: Floats, highs: Floats) -> Flags:
+def _alone(owner: Indices, lows: Floats, highs: Floats) -> Flags:
     """Return whether each bracket shares no energies with its neighbours'."""
     alone = np.ones(len(lows), dtype=bool)
-    shared = lows[1:] < highs[:-1]
+    shared = (lows[1:] < highs[:-1]) & (owner[1:] == owner[:-1])
     alone[1:] &= ~shared
     alone[:-1] &= ~shared
     return alone
 
 
 def _isolate(
-    system: System, numbers: Indices, lows: Floats, highs: Floats
+    system: Solvable, owner: Indices, numbers: Indices, lows: Floats, highs: Floats
 ) -> tuple[Floats, Floats]:
-    """Cut brackets that hold several levels, until each holds one or is narrower than a cluster.
-
-    Each round puts a few energies for each level into every such bracket and counts them all.
-    """
+    """Cut brackets that hold several levels, until each holds one or is narrower than a cluster."""
+    lows, highs = lows.copy(), highs.copy()
     for _ in range(60):
-        wide = np.flatnonzero(~_alone(lows, highs) & (highs - lows > 0.25 * CLUSTER))
-        if not len(wide):
+        wide = ~_alone(owner, lows, highs) & (highs - lows > 0.25 * CLUSTER)
+        some = np.flatnonzero(wide)
+        if not len(some):
             break
-        starts, first = np.unique(lows[wide], return_index=True)
-        stops = highs[wide][first]
-        holds = np.bincount(np.searchsorted(starts, lows[wide]), minlength=len(starts))
-        points = [
-            np.linspace(a, b, 3 * int(k) + 2)[1:-1]
-            for a, b, k in zip(starts, stops, holds, strict=True)
-        ]
-        trial = np.unique(np.concatenate(points))
-        counts = np.maximum.accumulate(system.count(trial))
-        place = np.searchsorted(counts, numbers[wide], side="right")
-        floor = np.append(-np.inf, trial)[place]
-        roof = np.append(trial, np.inf)[place]
-        lows[wide] = np.maximum(lows[wide], floor)
-        highs[wide] = np.minimum(highs[wide], roof)
+        for part in chunks(len(some), system.rows * len(_PARTS)):
+            here = some[part]
+            trial = lows[here] + _PARTS * (highs - lows)[here]
+            flat = np.broadcast_to(owner[here], trial.shape).reshape(-1)
+            counts = system.count_and_pivot(trial.reshape(-1), flat)[0].reshape(trial.shape)
+            above = np.maximum.accumulate(counts, axis=0) > numbers[here]
+            column = np.arange(len(here))
+            floor = len(_PARTS) - above.sum(axis=0)  # how many points lie at or below the level
+            ladder = np.vstack((lows[here], trial, highs[here]))
+            lows[here], highs[here] = ladder[floor, column], ladder[floor + 1, column]
     return lows, highs
 
 
 def _bisect(
-    system: System, numbers: Indices, lows: Floats, highs: Floats, times: int
+    system: Solvable, owner: Indices, numbers: Indices, lows: Floats, highs: Floats, times: int
 ) -> tuple[Floats, Floats]:
     lows, highs = lows.copy(), highs.copy()
     for _ in range(times):
         middle = 0.5 * (lows + highs)
-        points, where = np.unique(middle, return_inverse=True)
-        above = system.count(points)[where] > numbers
+        above = system.count_and_pivot(middle, owner)[0] > numbers
         highs = np.where(above, middle, highs)
         lows = np.where(above, lows, middle)
     return lows, highs
@@ -175,20 +229,25 @@ def random_vector(nodes: int) -> Floats:
 
 
 def _newton(
-    system: System, energies: Floats, lows: Floats, highs: Floats, accuracy: float
-) -> tuple[Floats, Floats, Flags]:
+    system: Solvable, owner: Indices, energies: Floats, lows: Floats, highs: Floats,
+    accuracy: float,
+) -> tuple[Floats, Floats, Flags]:  # fmt: skip
     """Newton on K(E) z = 0: mu = -(z.r)/(z.K'z) with z = K^-1 r, r = K'z of the step before.
 
     Its error after a step s is about s^2 times `_BENT` plus one over the distance to the
     neighbours. A level counts as reached if it stayed inside its bracket; a step that leaves it
-    is a sign of a neighbour's vector.
+    is a sign of a neighbour's vector. Each level stops on its own, whatever the others do.
     """
-    r = np.repeat(random_vector(system.nodes)[:, None], len(energies), axis=1)
+    energies = energies.copy()
     width = highs - lows
     narrow = _BENT + 4.0 / width
     accurate = np.minimum(accuracy, 1e-4 * width)  # crowded levels to a part of their distance
+    vectors = np.empty((system.nodes, len(energies)))
+    done = np.zeros(len(energies), dtype=bool)
+    act = np.arange(len(energies))
+    r = np.repeat(random_vector(system.nodes)[:, None], len(energies), axis=1)
     for turn in range(_NEWTON_STEPS):
-        matrix, slope = system.matrix_and_slope(energies)
+        matrix, slope = system.matrix_and_slope(energies[act], owner[act])
         z = solve_shifted(matrix, r)
         if turn == 0:
             r = apply(slope, z)
@@ -196,12 +255,19 @@ def _newton(
         after = apply(slope, z)
         rayleigh = (z * after).sum(axis=0)
         step = (z * r).sum(axis=0) / -rayleigh
-        moved = energies + step
-        inside = (moved >= lows) & (moved <= highs)
-        energies = np.where(inside, moved, energies)
+        moved = energies[act] + step
+        inside = (moved >= lows[act]) & (moved <= highs[act])
+        energies[act] = np.where(inside, moved, energies[act])
         scale = np.sqrt(np.abs(rayleigh))
         z, r = z / scale, after / scale
-        left = step * step * narrow
-        if turn and ((left < accurate) | ~inside).all():
+        if turn == 0:
+            continue
+        good = step * step * narrow[act] < accurate[act]
+        vectors[:, act] = z
+        done[act] = inside & good
+        going = inside & ~good
+        if not going.any():
             break
-    return energies, z, inside & (left < accurate)
+        if not going.all():
+            act, r = act[going], r[:, going]
+    return energies, vectors, done

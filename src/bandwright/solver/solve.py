@@ -10,7 +10,7 @@ import numpy.typing as npt
 
 from bandwright.errors import SolveError
 from bandwright.profile import Profile
-from bandwright.solver.find import Found, find, random_vector
+from bandwright.solver.find import Asked, Found, find, guess_levels, random_vector
 from bandwright.solver.need import MOST_SLICES, needed
 from bandwright.solver.polish import polish
 from bandwright.solver.slices import cut
@@ -133,7 +133,7 @@ def solve_profile(
             break
         system = System(cut(profile, counts), ends)
         fine = system if exact else system.halved()
-        found = find(system, floor, top, skip, at_most, accuracy)
+        found = find(system, _asked(system, floor, top, skip, at_most), accuracy)
         error = np.zeros(len(found.numbers)) if exact else _halving_error(fine, found)
         worst = float(error.max(initial=0.0))
         if worst <= 0.5 * tolerance:
@@ -150,6 +150,13 @@ def solve_profile(
         f" {tolerance:g} eV; is there a jump or kink inside a layer's shape? Split the layer"
         " there, or ask for a coarser tolerance"
     )
+
+
+def _asked(system: System, low: float, high: float, skip: int, at_most: int | None) -> Asked:
+    slices = system.slices
+    guess = guess_levels(slices.thickness, slices.edge, slices.mass, slices.inverse_gap, high)
+    most = np.iinfo(np.int64).max if at_most is None else at_most
+    return Asked(np.array([low]), np.array([high]), np.array([skip]), np.array([most]), guess)
 
 
 def lowest_edge(profile: Profile) -> float:

@@ -75,6 +75,11 @@ class System:
         """Number of free faces."""
         return len(self.slices) + 1 - self.ends.count("wall")
 
+    @property
+    def rows(self) -> int:
+        """Number of slices."""
+        return len(self.slices)
+
     def matrix(self, energies: Floats) -> Matrix:
         """Return K at each energy [eV]."""
         first, last = self.outside
@@ -84,7 +89,7 @@ class System:
             None if last is None else last.value(energies),
         )
 
-    def matrix_and_slope(self, energies: Floats) -> tuple[Matrix, Matrix]:
+    def matrix_and_slope(self, energies: Floats, owner: object = None) -> tuple[Matrix, Matrix]:
         """Return K and its exact derivative by E at each energy."""
         first, last = self.outside
         return assemble(
@@ -97,7 +102,7 @@ class System:
         """Return the number of levels below each energy."""
         return self.count_and_pivot(np.asarray(energies, dtype=float))[0]
 
-    def count_and_pivot(self, energies: Floats) -> tuple[Counts, Floats]:
+    def count_and_pivot(self, energies: Floats, owner: object = None) -> tuple[Counts, Floats]:
         """Return the number of levels below each energy, and the last pivot of K there."""
         parts = chunks(len(energies), len(self.slices))
         if len(parts) == 1:
