@@ -60,6 +60,11 @@ class Solvable(Protocol):
     """What levels are found in: one sliced design, or a family of designs of one pattern."""
 
     @property
+    def ends(self) -> tuple[str, str]:
+        """``"open"`` or ``"wall"`` at both ends."""
+        ...
+
+    @property
     def nodes(self) -> int:
         """Number of free faces."""
         ...

@@ -92,31 +92,36 @@ def local_mass(
 
 
 def tilted(
-    thickness: Floats, above: Floats, drop: Floats, mass: Floats, inverse_gap: Floats
-) -> tuple[Exponent, Exponent]:
-    """Return the 6th-order Magnus exponent of linear slices and its derivative by E.
+    thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats, drop: Floats
+) -> tuple[Floats, Floats, Floats, Floats, Floats, Floats, Floats]:
+    """Return the 6th-order Magnus exponent of linear slices as polynomials of E - V.
 
-    In closed form: with constant band-edge mass and gap everything is linear in z and in E, and
-    the commutator [A1, A2] is a constant. Only where the mass is off its floor.
+    With constant band-edge mass and gap everything is linear in z and in E, and the commutator
+    [A1, A2] is a constant. Only where the mass is off its floor.
 
     Parameters
     ----------
-    thickness, drop, mass, inverse_gap : array (n_slices, 1)
-        Thickness [nm], rise of the edge across the slice [eV], band-edge mass, 1/gap [1/eV].
-    above : array (n_slices, n_energies)
-        E - V at the slice's middle [eV].
+    thickness, edge, mass, inverse_gap, drop : array (n_slices, ...)
+        Thickness [nm], edge at the middle [eV], band-edge mass, 1/gap [1/eV], rise of the edge
+        across the slice [eV].
+
+    Returns
+    -------
+    tuple of array
+        x0, x1, a0, c0, c1, x2, a1: with e = E - V at the middle, x = x0 + x1 e + x2 e^2,
+        a = a0 + a1 e, c = c0 + c1 e; x2 and a1 are zero in the one-band model.
     """
-    da = thickness * mass * inverse_gap
-    a = thickness * mass + da * above
-    dc = -thickness / H2M
-    c = dc * above
-    twist = -dc * drop * thickness * mass
-    fall_a, fall_c = -da * drop, -dc * drop
-    x = (twist / -12.0) * (1.0 - a * c / 15.0)
-    small = twist / 120.0
+    a0 = thickness * mass
+    a1 = a0 * inverse_gap
+    c1 = -thickness / H2M
+    twist = -c1 * drop * a0
+    small = twist * drop / 120.0
     bent = 1.0 + twist * twist / 3600.0
-    value = Exponent(x, bent * a + small * fall_a, bent * c - small * fall_c)
-    return value, Exponent((twist / 180.0) * (da * c + a * dc), bent * da, bent * dc)
+    turn = twist / 180.0 * c1
+    return (
+        -twist / 12.0, turn * a0, bent * a0 - small * a1, small * c1, bent * c1, turn * a1,
+        bent * a1,
+    )  # fmt: skip
 
 
 def magnus(

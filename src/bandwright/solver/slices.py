@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from functools import cached_property
-from typing import NamedTuple
+from typing import Protocol
 
 import numpy as np
 import numpy.typing as npt
@@ -36,14 +36,17 @@ _GAUSS = 0.5 * np.sqrt(0.6) * np.array([[-1.0], [0.0], [1.0]])
 _MANY = 24
 
 
-class _Numbers(NamedTuple):
-    """Slices of one kind as columns: values at the middle, the edge's rise across each."""
+class Kind(Protocol):
+    """Evaluates slices of one kind, made from their numbers as columns."""
 
-    thickness: Floats
-    edge: Floats
-    mass: Floats
-    inverse_gap: Floats
-    drop: Floats
+    def __init__(self, *numbers: Floats) -> None: ...
+
+    def __call__(self, energies: Floats, slopes: bool, owner: Indices | None = None) -> Elements:
+        """Return the elements at each energy, stacked with their derivatives if ``slopes``.
+
+        ``owner`` gives each energy's column of the numbers; None is one column for all.
+        """
+        ...
 
 
 @dataclass(frozen=True)
@@ -101,34 +104,36 @@ class Slices:
 
     def _elements(self, energies: Floats, slopes: bool) -> Elements:
         energies = np.asarray(energies, dtype=float)
-        parts = [(rows, kind(energies, slopes)) for rows, kind in self._kinds]
-        if len(parts) == 1:
-            rows, found = parts[0]
-            return found if rows is None else found.rows(rows)
-        return _joined(parts, len(self))
+        parts = [(rows, kind(energies, slopes)) for rows, kind in self._evaluators]
+        return joined(parts, len(self))
 
     @cached_property
-    def _kinds(self) -> tuple[tuple[Indices | None, _Constant | _Tilted | _Curved], ...]:
-        """Evaluators of constant, linear and curved slices with their rows; None is every row."""
-        straight = ~self.curved & ~self.flat
+    def _evaluators(self) -> tuple[tuple[Indices | None, Kind], ...]:
+        return tuple((rows, kind(*arrays)) for rows, kind, arrays in self.kinds())
+
+    def kinds(self) -> list[tuple[Indices | None, type[Kind], tuple[Floats, ...]]]:
+        """Return the kinds of slices: their rows (None is every row), evaluator and numbers.
+
+        Numbers are columns (..., n_rows, 1). Where equal flat slices repeat, each is there once
+        and rows says where every slice finds its own.
+        """
         if self.profile.numbers.all_flat:
             first, back = self._distinct()
-            return ((back, _Constant(self._columns(first))),)
-        kinds: list[tuple[Indices | None, _Constant | _Tilted | _Curved]] = []
+            return [(back, _Constant, self._columns(first))]
+        straight = ~self.curved & ~self.flat
+        found: list[tuple[Indices | None, type[Kind], tuple[Floats, ...]]] = []
         for mask, kind in ((self.flat, _Constant), (straight, _Tilted)):
             if mask.any():
                 rows = np.flatnonzero(mask)
-                kinds.append((rows, kind(self._columns(rows))))
+                found.append((rows, kind, self._columns(rows)))
         if self.curved.any():
             rows = np.flatnonzero(self.curved)
-            kinds.append((rows, _Curved(self.thickness[rows, None], *self._gauss(rows))))
-        return tuple(kinds)
+            found.append((rows, _Curved, (self.thickness[rows, None], *self._gauss(rows))))
+        return found
 
-    def _columns(self, rows: Indices | slice) -> _Numbers:
-        return _Numbers(
-            *(v[rows, None] for v in (self.thickness, self.edge, self.mass, self.inverse_gap,
-                                      self.drop))
-        )  # fmt: skip
+    def _columns(self, rows: Indices | slice) -> tuple[Floats, ...]:
+        arrays = (self.thickness, self.edge, self.mass, self.inverse_gap, self.drop)
+        return tuple(v[rows, None] for v in arrays)
 
     def _distinct(self) -> tuple[Indices | slice, Indices | None]:
         """Return one row of each kind of equal flat slices, and where every slice finds its own."""
@@ -163,27 +168,32 @@ class Slices:
 
 
 class _Constant:
-    """Elements of constant slices."""
+    """Elements of constant slices: thickness, edge, mass, inverse gap, rise (zero)."""
 
-    def __init__(self, numbers: _Numbers) -> None:
-        self.numbers = numbers
-        h, _, mass, inverse_gap, _ = numbers
-        self.two_band = bool(inverse_gap.any())
-        self.square = h * h / H2M
-        self.one_band_rate = self.square * mass
-        self.one_band_a = h * mass
+    def __init__(self, *numbers: Floats) -> None:
+        h, self.edge, mass, inverse_gap, _ = numbers
+        self.a = h * mass
+        self.rate = h * self.a / H2M
+        self.inverse_gap = inverse_gap if inverse_gap.any() else None
 
-    def __call__(self, energies: Floats, slopes: bool) -> Elements:
-        h, edge, mass, inverse_gap, _ = self.numbers
+    def __call__(self, energies: Floats, slopes: bool, owner: Indices | None = None) -> Elements:
+        edge, a, rate = _taken(owner, self.edge, self.a, self.rate)
         above = energies - edge
-        if self.two_band:
-            local, b = local_mass(energies, edge, mass, inverse_gap)
-            a, da = h * local, h * b
-            t = (self.square * local) * above
-            dt = self.square * (b * above + local) if slopes else t
+        t = rate * above
+        da: Floats | None = None
+        if self.inverse_gap is not None:
+            (inverse_gap,) = _taken(owner, self.inverse_gap)
+            bracket = above * inverse_gap
+            bracket += 1.0
+            if bracket.min(initial=1.0) < MASS_FLOOR:
+                inverse_gap = np.where(bracket > MASS_FLOOR, inverse_gap, 0.0)
+                bracket = np.maximum(bracket, MASS_FLOOR)
+            dt = rate * bracket + t * inverse_gap if slopes else rate
+            da = a * inverse_gap if slopes else None
+            t *= bracket
+            a = a * bracket
         else:
-            a, da, dt = self.one_band_a, None, self.one_band_rate
-            t = dt * above
+            dt = rate
         f, g = half_wave_functions(t)
         if not slopes:
             f /= a
@@ -204,26 +214,39 @@ class _Constant:
 
 
 class _Tilted:
-    """Elements of slices with a linear edge, constant mass and gap."""
+    """Elements of slices with a linear edge, constant mass and gap; numbers as `_Constant`."""
 
-    def __init__(self, numbers: _Numbers) -> None:
+    def __init__(self, *numbers: Floats) -> None:
         self.numbers = numbers
+        self.edge = numbers[1]
+        self.coefficients = tilted(*numbers)
+        h, _, _, inverse_gap, drop = numbers
+        self.inverse_gap = inverse_gap if inverse_gap.any() else None
+        self.half_drop = 0.5 * np.abs(drop)
 
-    def __call__(self, energies: Floats, slopes: bool) -> Elements:
-        h, edge, mass, inverse_gap, drop = self.numbers
+    def __call__(self, energies: Floats, slopes: bool, owner: Indices | None = None) -> Elements:
+        edge, x0, x1, a0, c0, c1 = _taken(owner, self.edge, *self.coefficients[:5])
         above = energies - edge
-        omega, d_omega = tilted(h, above, drop, mass, inverse_gap)
-        bracket = 1.0 + (above - 0.5 * np.abs(drop)) * inverse_gap
-        if bracket.min() < MASS_FLOOR:
-            rows = np.flatnonzero(bracket.min(axis=1) < MASS_FLOOR)
-            omega, d_omega = self._floored(rows, energies, omega, d_omega)
+        if self.inverse_gap is None:
+            omega = Exponent(x0 + x1 * above, a0, c0 + c1 * above)
+            return _exponential(omega, Exponent(x1, np.zeros((1, 1)), c1), slopes)
+        x2, a1, inverse_gap, half_drop = _taken(
+            owner, *self.coefficients[5:], self.inverse_gap, self.half_drop
+        )
+        omega = Exponent(x0 + (x1 + x2 * above) * above, a0 + a1 * above, c0 + c1 * above)
+        d_omega = Exponent(x1 + 2.0 * x2 * above, a1, c1)
+        lowest = 1.0 + (above - half_drop) * inverse_gap
+        if lowest.min(initial=1.0) < MASS_FLOOR:
+            rows = np.flatnonzero(lowest.min(axis=1) < MASS_FLOOR)
+            omega, d_omega = self._floored(rows, energies, owner, omega, d_omega)
         return _exponential(omega, d_omega, slopes)
 
     def _floored(
-        self, rows: Indices, energies: Floats, omega: Exponent, d_omega: Exponent
-    ) -> tuple[Exponent, Exponent]:
+        self, rows: Indices, energies: Floats, owner: Indices | None, omega: Exponent,
+        d_omega: Exponent,
+    ) -> tuple[Exponent, Exponent]:  # fmt: skip
         """Take the exponents of rows whose mass reaches its floor from their Gauss points."""
-        h, edge, mass, inverse_gap, drop = (column[rows] for column in self.numbers)
+        h, edge, mass, inverse_gap, drop = _taken(owner, *(a[rows] for a in self.numbers))
         at = edge + _GAUSS[:, :, None] * drop
         local, b = local_mass(energies, at, mass, inverse_gap)
         b = np.broadcast_to(b, local.shape)  # a row may touch its floor between Gauss points
@@ -238,15 +261,23 @@ class _Tilted:
         return whole[0], whole[1]
 
 
+def _taken(owner: Indices | None, *columns: Floats) -> tuple[Floats, ...]:
+    """Return each design's numbers for every energy; one design's stay single columns."""
+    return columns if owner is None else tuple(column[..., owner] for column in columns)
+
+
 class _Curved:
-    """Elements of slices on which edge, mass or gap vary in any smooth way."""
+    """Elements of slices that vary in any smooth way: thickness; edge, mass, 1/gap at 3 points."""
 
-    def __init__(self, thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats) -> None:
-        self.thickness, self.edge, self.mass, self.inverse_gap = thickness, edge, mass, inverse_gap
+    def __init__(self, *numbers: Floats) -> None:
+        self.thickness, self.edge, self.mass, self.inverse_gap = numbers
 
-    def __call__(self, energies: Floats, slopes: bool) -> Elements:
-        local, b = local_mass(energies, self.edge, self.mass, self.inverse_gap)
-        return _exponential(*magnus(self.thickness, energies, self.edge, local, b), slopes)
+    def __call__(self, energies: Floats, slopes: bool, owner: Indices | None = None) -> Elements:
+        thickness, edge, mass, inverse_gap = _taken(
+            owner, self.thickness, self.edge, self.mass, self.inverse_gap
+        )
+        local, b = local_mass(energies, edge, mass, inverse_gap)
+        return _exponential(*magnus(thickness, energies, edge, local, b), slopes)
 
 
 def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> Elements:
@@ -271,8 +302,11 @@ def _exponential(omega: Exponent, d_omega: Exponent, slopes: bool) -> Elements:
     return Elements(left, right, off, None)
 
 
-def _joined(parts: list[tuple[Indices | None, Elements]], rows: int) -> Elements:
+def joined(parts: Sequence[tuple[Indices | None, Elements]], rows: int) -> Elements:
     """Return the elements of all kinds in the order of the slices."""
+    where, found = parts[0]
+    if len(parts) == 1:
+        return found if where is None else found.rows(where)
     *stack, _, columns = parts[0][1].left.shape
     shape = (*stack, rows, columns)
     left, right, off = np.empty(shape), np.empty(shape), np.empty(shape)

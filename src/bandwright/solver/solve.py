@@ -10,12 +10,13 @@ import numpy.typing as npt
 
 from bandwright.errors import SolveError
 from bandwright.profile import Profile
-from bandwright.solver.find import Asked, Found, find, guess_levels, random_vector
+from bandwright.solver.certificate import certify, halving_error
+from bandwright.solver.find import Asked, Found, find, guess_levels
 from bandwright.solver.need import MOST_SLICES, needed
 from bandwright.solver.polish import polish
 from bandwright.solver.slices import cut
 from bandwright.solver.states import States
-from bandwright.solver.system import System, apply, chunks, open_ends, solve_shifted
+from bandwright.solver.system import System, open_ends
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -134,13 +135,15 @@ def solve_profile(
         system = System(cut(profile, counts), ends)
         fine = system if exact else system.halved()
         found = find(system, _asked(system, floor, top, skip, at_most), accuracy)
-        error = np.zeros(len(found.numbers)) if exact else _halving_error(fine, found)
+        error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
         worst = float(error.max(initial=0.0))
         if worst <= 0.5 * tolerance:
             cut_short = at_most is not None and len(found.numbers) == at_most
-            solution = _certified(system, fine, found, error, floor, high, cut_short, tolerance)
-            if solution.complete or accuracy < 1e-13:
-                return solution
+            bound = float(found.energies[-1]) + tolerance if cut_short else high
+            proof = certify(fine, found, np.array([floor]), np.array([bound]), tolerance)
+            if proof.complete[0] or accuracy < 1e-13:
+                return Solution(system, found, error, proof.checked, bool(proof.complete[0]),
+                                floor, bound, tolerance)  # fmt: skip
             accuracy = 1e-14  # a Newton stopped too soon would show here: go on to rounding
             continue
         grow = max(1.3, 1.15 * (worst / (0.4 * tolerance)) ** (1 / 6))
@@ -179,56 +182,3 @@ def _top(system: System, low: float, high: float, wanted: int) -> float:
             return high
         low, high = float(trial[above[0] - 1]), float(trial[above[0]])
     return high
-
-
-def _halving_error(fine: System, found: Found) -> Floats:
-    """Estimate each error from one Rayleigh step on slices half as thick (factor 64/63)."""
-    error = np.empty(len(found.energies))
-    for part in chunks(len(error), len(fine.slices)):
-        matrix, slope = fine.matrix_and_slope(found.energies[part])
-        z = _refine(fine, found.nodes[:, part])
-        z = np.where(found.single[part], z, random_vector(fine.nodes)[:, None])
-        for _ in range(2):
-            r = apply(slope, z)
-            z = solve_shifted(matrix, r)
-            z, r = z / np.max(np.abs(z), axis=0), r / np.max(np.abs(z), axis=0)
-        error[part] = np.abs(np.sum(z * r, axis=0) / np.sum(z * apply(slope, z), axis=0))
-    return error * 64.0 / 63.0
-
-
-def _refine(fine: System, nodes: Floats) -> Floats:
-    """Carry u at the coarse free faces to those of halved slices, midpoints by the mean."""
-    first, last = (int(end == "wall") for end in fine.ends)
-    u = np.pad(nodes, [(first, last), (0, 0)])
-    full = np.empty((2 * len(u) - 1, u.shape[1]))
-    full[::2] = u
-    full[1::2] = 0.5 * (u[:-1] + u[1:])
-    return np.asarray(full[first : len(full) - last])
-
-
-def _certified(
-    system: System, fine: System, found: Found, error: Floats, low: float, high: float,
-    cut_short: bool, tolerance: float,
-) -> Solution:  # fmt: skip
-    """Count on halved slices below and above each level or cluster, and at both bounds."""
-    energies, numbers = found.energies, found.numbers
-    if not len(energies):
-        at_low, under = fine.count([low, high - tolerance])
-        none = np.zeros(0, dtype=bool)
-        return Solution(system, found, error, none, bool(under <= at_low), low, high, tolerance)
-    starts = np.empty(len(energies), dtype=bool)
-    starts[0] = True
-    np.greater(energies[1:] - energies[:-1], 2.0 * tolerance, out=starts[1:])
-    firsts = np.flatnonzero(starts)
-    lasts = np.append(firsts[1:], len(energies)) - 1
-    upper = float(energies[-1]) + tolerance if cut_short else high
-    asked = np.concatenate((energies[firsts] - tolerance, energies[lasts] + tolerance,
-                            [low, upper - tolerance, upper + tolerance]))  # fmt: skip
-    counted = fine.count(asked)
-    groups = len(firsts)
-    good = (counted[:groups] == numbers[firsts]) & (counted[groups:-3] == numbers[lasts] + 1)
-    checked = good[np.cumsum(starts) - 1]
-    at_low, under, over = counted[-3:]
-    bounded = at_low <= numbers[0] and under <= numbers[-1] + 1 <= over
-    complete = bool(checked.all() and bounded)
-    return Solution(system, found, error, checked, complete, low, upper, tolerance)

@@ -15,7 +15,7 @@ import numpy.typing as npt
 
 from bandwright.constants import H2M
 from bandwright.solver.matrix import Elements
-from bandwright.solver.propagation import local_mass
+from bandwright.solver.propagation import MASS_FLOOR, local_mass
 from bandwright.solver.sensitivity import Reach, Sensitivity, sensitivity, tail_reaches
 from bandwright.solver.slices import slice_at
 from bandwright.solver.system import System
@@ -119,7 +119,20 @@ class States:
         if not len(self.energies):
             return self._on(np.zeros(0), np.zeros(0))
         low, high = float(self.energies.min()), float(self.energies.max())
-        return self._on(*_cells(self.system, low, high))
+        return self._on(*_cells(self.system, low, high, self._floors))
+
+    @property
+    def _floors(self) -> Floats:
+        """Where the mass of each level meets its floor in a linear edge [nm]: dm/dE jumps there."""
+        profile = self.system.slices.profile
+        numbers = profile.numbers
+        rising = np.flatnonzero((numbers.edge[:, 1] != 0.0) & ~numbers.curved
+                                & (numbers.inverse_gap > 0.0))  # fmt: skip
+        edge, slope = numbers.edge[rising].T
+        top = self.energies[:, None] + (1.0 - MASS_FLOOR) / numbers.inverse_gap[rising]
+        depth = (top - edge) / slope
+        inside = (depth > 0.0) & (depth < numbers.thickness[rising])
+        return np.asarray((profile.faces[rising] + depth)[inside])
 
     def _on(self, z: Floats, weight: Floats) -> _Quadrature:
         """States at sorted points inside the structure."""
@@ -261,8 +274,13 @@ def _choose(
     return np.where(use_before[:, None], from_before, from_after)
 
 
-def _cells(system: System, low: float, high: float) -> tuple[Floats, Floats]:
-    """Return Gauss points and weights on cells in which no state turns or decays much."""
+def _cells(
+    system: System, low: float, high: float, cuts: npt.ArrayLike = ()
+) -> tuple[Floats, Floats]:
+    """Return Gauss points and weights on cells in which no state turns or decays much.
+
+    ``cuts`` are further positions [nm] between cells.
+    """
     slices = system.slices
     tilt = 0.5 * np.abs(slices.drop)
     heavy = slices.mass * (1.0 + np.maximum(0.0, high - slices.edge + tilt) * slices.inverse_gap)
@@ -272,6 +290,9 @@ def _cells(system: System, low: float, high: float) -> tuple[Floats, Floats]:
     width = np.repeat(slices.thickness / cells, cells)
     within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)
     begin = np.repeat(slices.faces[:-1], cells) + within * width
+    if np.size(cuts):
+        begin = np.unique(np.concatenate((begin, np.asarray(cuts))))
+        width = np.diff(begin, append=slices.faces[-1])
     z = (begin[:, None] + 0.5 * width[:, None] * (1.0 + _NODES)).reshape(-1)
     return z, (0.5 * width[:, None] * _WEIGHTS).reshape(-1)
 

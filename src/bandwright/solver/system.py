@@ -130,7 +130,7 @@ def open_ends(profile: Profile, ends: tuple[str, str]) -> tuple[OpenEnd | None, 
     return first, last
 
 
-def chunks(columns: int, rows: int, cells: int = 2_000_000) -> list[slice]:
+def chunks(columns: int, rows: int, cells: int = 60_000) -> list[slice]:
     """Return column ranges that keep each array of ``rows`` under ``cells`` numbers."""
     width = max(1, cells // max(rows, 1))
     return [slice(i, min(i + width, columns)) for i in range(0, columns, width)]
