@@ -6,6 +6,7 @@
 import contextlib
 import io
 import re
+import runpy
 import shlex
 import shutil
 
@@ -95,3 +96,11 @@ def test_developers_page_draws_the_house_that_is_tested(root):
     page = page.split("## Imports look down")[1].split("\n## ")[0]
     heads = [line.split("|")[1] for line in page.splitlines() if line.startswith("| `")]
     assert [room for head in heads for room in re.findall(r"`(\w+)`", head)] == house.HOUSE
+
+
+def test_the_demo_script_runs_from_anywhere(root, tmp_path, monkeypatch, capsys):
+    monkeypatch.chdir(tmp_path)
+    runpy.run_path(str(root / "demo" / "ammonia.py"), run_name="__main__")
+    out = capsys.readouterr().out
+    assert "wavelength_um" in out and "ammonia monitor, detector well" in out
+    assert "+1 ML" in out
