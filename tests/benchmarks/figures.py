@@ -93,8 +93,8 @@ def kernels(_, options):
         for name, slope in (("flat", 0.0), ("tilted", 0.004)):
             one = floor.measure(slices, energies, slope, options.seconds)
             rows.append([f"{slices} {name} slices, {energies} energies", one["ms"]["floor"],
-                         one["ms"]["kernel"], one["ratio"]])  # fmt: skip
-    say(table(("", "floor, ms", "kernel, ms", "x"), rows))
+                         one["ms"]["kernel"], one["ratio"]["floor"], one["ratio"]["bare"]])  # fmt: skip
+    say(table(("", "floor, ms", "kernel, ms", "x", "without allocation, x"), rows))
 
 
 def growths(_, options):
