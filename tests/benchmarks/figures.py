@@ -92,8 +92,9 @@ def kernels(_, options):
     for slices, energies in floor.SIZES[: 1 if options.quick else None]:
         for name, slope in (("flat", 0.0), ("tilted", 0.004)):
             one = floor.measure(slices, energies, slope, options.seconds)
-            rows.append([f"{slices} {name} slices, {energies} energies", one["ms"]["floor"],
-                         one["ms"]["kernel"], one["ratio"]["floor"], one["ratio"]["bare"]])  # fmt: skip
+            name = f"{slices} {name} slices, {energies} energies"
+            rows.append([name, one["ms"]["floor"], one["ms"]["kernel"], one["ratio"]["floor"],
+                         one["ratio"]["bare"]])  # fmt: skip
     say(table(("", "floor, ms", "kernel, ms", "x", "without allocation, x"), rows))
 
 
