@@ -119,7 +119,8 @@ def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None)
         for change, (up, down) in zip(every, slopes, strict=True):
             shift = float(up - down) * change.amount
             rows.append((change, shift, _checked(levels, chosen, change, shift, before)))
-    rows.sort(key=lambda row: -abs(row[1]) if math.isfinite(row[1]) else math.inf)
+    # equal to 1e-7 eV keeps the stack's order, whatever the rounding
+    rows.sort(key=lambda row: -round(abs(row[1]), 7) if math.isfinite(row[1]) else math.inf)
     return _table(chosen, rows)
 
 
