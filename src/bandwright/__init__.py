@@ -28,6 +28,8 @@ if TYPE_CHECKING:
     from .levels import Levels as Levels
     from .levels import solve as solve
     from .lines import Lines as Lines
+    from .many import Many as Many
+    from .many import solve_many as solve_many
     from .materials import Library as Library
     from .shapes import Points as Points
     from .stack import Layer as Layer
@@ -60,6 +62,7 @@ _ROOMS = {
     "materials": ("Library",),
     "levels": ("Levels", "solve"),
     "lines": ("Lines",),
+    "many": ("Many", "solve_many"),
     "comparison": ("compare",),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}

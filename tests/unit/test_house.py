@@ -29,6 +29,7 @@ HOUSE = [
     "solver",
     "phase",
     "levels",
+    "many",
     "gradients",
     "cautions",
     "lines",

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import NamedTuple
 
 import numpy as np
 
@@ -73,6 +74,43 @@ def solve(
     >>> [round(float(energy) * 1e3, 3) for energy in bw.solve(stack).energies]
     [30.539, 120.015, 243.967]
     """
+    request = read_request(below, at_most, tolerance, group, method, phase_order, bands)
+    profile = build_profile(stack, bands)
+    spans = span_of(profile, request)
+    if method == "shooting":
+        parts = shoot(profile, spans, at_most, request.tolerance)
+    else:
+        parts = _phase_only(profile, spans, at_most, phase_order)
+    levels = request.levels(stack, profile, parts)
+    from ..cautions import warn
+
+    warn(levels)
+    return levels
+
+
+class Request(NamedTuple):
+    """What is asked of a stack, as floats [eV]."""
+
+    below: float | None
+    at_most: int | None
+    tolerance: float
+    group: float
+    method: str
+    phase_order: int
+    bands: str | None
+
+    def levels(self, stack: Stack, profile: Profile, parts: tuple[Part, ...]) -> Levels:
+        """Return the result for a stack."""
+        return Levels(
+            stack, profile, parts, self.tolerance, self.group, self.method, self.phase_order
+        )
+
+
+def read_request(
+    below: object, at_most: int | None, tolerance: object, group: object, method: str,
+    phase_order: int, bands: str | None,
+) -> Request:  # fmt: skip
+    """Return the arguments of `solve` as floats, each checked."""
     tolerance_eV = _positive(as_energy(tolerance, "tolerance"), "tolerance")
     group_eV = as_energy(group, "group")
     if group_eV < 0.0:
@@ -85,17 +123,12 @@ def solve(
         raise SolveError(f"phase_order: got {phase_order!r}; 1 or 2 is due")
     if bands is not None:
         _check_choice("bands", bands, ("one-band", "two-band"))
-    profile = build_profile(stack, bands)
-    spans = ranges(profile, limit, at_most)
-    if method == "shooting":
-        parts = _shoot(profile, spans, at_most, tolerance_eV)
-    else:
-        parts = _phase_only(profile, spans, at_most, phase_order)
-    levels = Levels(stack, profile, parts, tolerance_eV, group_eV, method, phase_order)
-    from ..cautions import warn
+    return Request(limit, at_most, tolerance_eV, group_eV, method, phase_order, bands)
 
-    warn(levels)
-    return levels
+
+def span_of(profile: Profile, request: Request) -> tuple[Range, ...]:
+    """Return the parts of the spectrum that a request asks of a profile."""
+    return ranges(profile, request.below, request.at_most)
 
 
 def _check_choice(name: str, given: str, known: tuple[str, ...]) -> None:
@@ -111,9 +144,10 @@ def _positive(value: float, name: str) -> float:
     return value
 
 
-def _shoot(
+def shoot(
     profile: Profile, spans: Sequence[Range], at_most: int | None, tolerance: float
 ) -> tuple[Part, ...]:
+    """Return the levels of each part of the spectrum, by shooting."""
     parts: list[Part] = []
     found = 0
     for span in spans:

@@ -159,7 +159,7 @@ def _solve_pattern(
     results: list[Solution | None] = []
     for i in range(designs):
         own = slice(bounds[i], bounds[i + 1])
-        if not proof.complete[i] or error[own].max(initial=0.0) > 0.5 * tolerance:
+        if not proof.complete[i] or 3.0 * error[own].max(initial=0.0) > tolerance:
             results.append(None)
             continue
         alone = np.zeros(bounds[i + 1] - bounds[i], dtype=np.int64)

@@ -6,7 +6,8 @@ import numpy as np
 import numpy.typing as npt
 
 from bandwright.constants import H2M
-from bandwright.profile import Profile, Section
+from bandwright.errors import SolveError
+from bandwright.profile import Profile, Sampled, Section
 from bandwright.solver.propagation import local_mass
 
 Floats = npt.NDArray[np.float64]
@@ -42,7 +43,11 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
         rate = np.maximum(rate, 0.75 * wave)
         counts = np.where(numbers.flat, counts, np.ceil(numbers.thickness * rate))
         for index in np.flatnonzero(numbers.curved):
-            counts[index] = _curved_need(profile.sections[index], high, share)
+            section = profile.sections[index]
+            for curve in (section.edge, section.mass, section.inverse_gap):
+                if isinstance(curve, Sampled):
+                    _refuse_jump(curve, section.thickness, profile.name(int(index)))
+            counts[index] = _curved_need(section, high, share)
     counts = np.maximum(counts, 1).astype(np.int64)
     first, last = (
         int(end == "open" and numbers.flat[row]) for end, row in zip(ends, (0, -1), strict=True)
@@ -55,6 +60,24 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
     if counts.sum() == 1:  # a face between two walls, so that K has a row
         counts *= 2
     return counts
+
+
+def _refuse_jump(curve: Sampled, thickness: float, name: str) -> None:
+    """Raise `SolveError` if a curve jumps inside its section: slices would not see where."""
+    low, high = 0.0, thickness
+    for _ in range(6):  # ever closer around the steepest step
+        places = np.linspace(low, high, 129)
+        steps = np.abs(np.diff(curve.at(places)))
+        worst = int(np.argmax(steps))
+        if steps[worst] < 1e-9:
+            return
+        low, high = float(places[worst]), float(places[worst + 1])
+    if high - low < 1e-6 * thickness and steps[worst] > 1e-6:
+        raise SolveError(
+            f"the shape jumps by {steps[worst]:.4g} about {low:.6g} nm from the first face; write"
+            " two layers there",
+            name,
+        )
 
 
 def _curved_need(section: Section, high: float, share: float) -> int:

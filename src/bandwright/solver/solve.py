@@ -129,6 +129,7 @@ def solve_profile(
     flat = profile.numbers.flat
     exact = bool(flat.all())
     accuracy = min(1e-3 * tolerance, 1e-9)
+    size, before = int(counts.sum()), np.inf
     for _ in range(_ATTEMPTS):
         if counts.sum() > MOST_SLICES:
             break
@@ -137,7 +138,7 @@ def solve_profile(
         found = find(system, _asked(system, floor, top, skip, at_most), accuracy)
         error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
         worst = float(error.max(initial=0.0))
-        if worst <= 0.5 * tolerance:
+        if 3.0 * worst <= tolerance:
             cut_short = at_most is not None and len(found.numbers) == at_most
             bound = float(found.energies[-1]) + tolerance if cut_short else high
             proof = certify(fine, found, np.array([floor]), np.array([bound]), tolerance)
@@ -146,7 +147,11 @@ def solve_profile(
                                 floor, bound, tolerance)  # fmt: skip
             accuracy = 1e-14  # a Newton stopped too soon would show here: go on to rounding
             continue
-        grow = max(1.3, 1.15 * (worst / (0.4 * tolerance)) ** (1 / 6))
+        if counts.sum() > 4 * size and worst > 0.2 * before:
+            break  # four times the slices for a fifth of the error: no smooth shape does that
+        if counts.sum() > 4 * size:
+            size, before = int(counts.sum()), worst
+        grow = max(1.3, 1.15 * (worst / (0.25 * tolerance)) ** (1 / 6))
         counts = np.where(flat, counts, np.ceil(counts * min(grow, 4.0)).astype(np.int64))
     raise SolveError(
         f"{len(counts)} sections need more than {int(counts.sum())} slices for a tolerance of"
