@@ -40,8 +40,8 @@ def of_solve(numbers=(5, 10, 20, 40, 80, 160), states=False):
     return found
 
 
-def of_many(name="single", numbers=(250, 500, 1000, 2000, 4000)):
-    """Return {designs: bytes at most beyond what the results themselves keep}."""
+def of_many(name="single", numbers=(250, 500, 1000), chunk=250):
+    """Return {designs: (bytes at most, bytes at most beyond what the results keep)}."""
     case = CASES[name]
     family = case.family(max(numbers))
     found = {}
@@ -50,7 +50,7 @@ def of_many(name="single", numbers=(250, 500, 1000, 2000, 4000)):
         stacks = family[:designs]
         tracemalloc.start()
         try:
-            kept = bw.solve_many(stacks, **case.asked)
+            kept = bw.solve_many(stacks, chunk=chunk, **case.asked)
             in_use, most = tracemalloc.get_traced_memory()
             found[designs] = (most, most - in_use)
             del kept

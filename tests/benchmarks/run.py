@@ -15,8 +15,8 @@ def main():
     sys.path[:0] = [str(tests), str(tests.parent / "src")]
     from benchmarks import figures
 
-    figures.main()
+    return figures.main()
 
 
 if __name__ == "__main__":
-    main()
+    sys.exit(main())

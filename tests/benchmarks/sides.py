@@ -125,7 +125,7 @@ def many(case, tolerance, designs=1000, seconds=6.0, sampled=3):
 
     def batch():
         found = bw.solve_many(family, **wanted)
-        return found, [found.energies(i) for i in range(designs)]
+        return found, [levels.energies for levels in found]
 
     found, energies = batch()
     worst = 0.0
@@ -145,15 +145,7 @@ def many(case, tolerance, designs=1000, seconds=6.0, sampled=3):
     each = times["batch"] / designs
     return {"ms": 1e3 * each, "error": worst, "loop": times["loop"] / len(loop) / each,
             "ratio": {k: times[k] / len(sticks) / each for k in common},
-            "single_path": single_path_share(found, designs)}  # fmt: skip
-
-
-def single_path_share(found, designs):
-    """Return the share of a family that went down the single path; None if it is not told."""
-    told = getattr(found, "single_path", None)
-    if told is None:
-        return None
-    return float(np.sum(told)) / designs if np.ndim(told) else float(told)
+            "alone": found.share_alone}  # fmt: skip
 
 
 def summary(rows):

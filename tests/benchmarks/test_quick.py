@@ -88,8 +88,8 @@ def test_memory_at_most_levels_times_slices():
 
 @pytest.mark.skipif(not HAVE_MANY, reason="solve_many is not there")
 def test_memory_of_many_beyond_the_result_is_bounded():
-    found = memory.of_many(numbers=(200, 800))
-    assert found[800][1] < 2.5 * found[200][1], found
+    found = memory.of_many(numbers=(100, 400), chunk=100)
+    assert found[400][1] < 1.5 * found[100][1], found
 
 
 def test_breakdown_shares_add_up():
@@ -100,7 +100,7 @@ def test_breakdown_shares_add_up():
 
 @pytest.mark.parametrize("part", PARTS)
 def test_every_part_prints_a_table(part, capsys):
-    main(["--quick", "--case", "single", "--part", part])
+    assert not main(["--quick", "--case", "single", "--part", part])
     printed = capsys.readouterr().out
     assert "one BLAS thread" in printed and printed.count("\n") > 4
 
