@@ -14,6 +14,8 @@ def thicknesses(levels: Levels) -> list[str]:
     """Return layers whose thickness looks like a slip."""
     texts = []
     for fact in levels.profile.facts:
+        if THIN <= fact.thickness <= THICK and not fact.thickness < fact.monolayer * (1.0 - 1e-6):
+            continue
         length = f"{number_text(round(fact.thickness, 6))} nm"
         if fact.thickness > THICK:
             nm, tenth = (number_text(round(fact.thickness / by, 6)) for by in (1000, 10))
@@ -26,7 +28,7 @@ def thicknesses(levels: Levels) -> list[str]:
                 f"{fact.name} is {length} thick, thinner than any layer of atoms: is the unit"
                 " right?"
             )
-        elif fact.thickness < fact.monolayer * (1.0 - 1e-6):
+        else:
             texts.append(
                 f"{fact.name} is {length} thick, less than one monolayer"
                 f" ({fact.monolayer:.4f} nm): it can't be a layer of its own; write it in ML, or as"

@@ -66,17 +66,16 @@ def certify(fine: Solvable, found: Found, low: Floats, high: Floats, tolerance: 
     starts[1:] = (energies[1:] - energies[:-1] > 2.0 * tolerance) | (owner[1:] != owner[:-1])
     firsts = np.flatnonzero(starts)
     lasts = np.append(firsts[1:], len(energies))[: len(firsts)] - 1
-    asked = (
-        (energies[firsts] - tolerance, owner[firsts]),
-        (energies[lasts] + tolerance, owner[lasts]),
-        (low, designs), (high - tolerance, designs), (high + tolerance, designs),
-    )  # fmt: skip
     counted = fine.count_and_pivot(
-        np.concatenate([e for e, _ in asked]), np.concatenate([o for _, o in asked])
-    )[0]
-    below, above, at_low, under, over = np.split(
-        counted, np.cumsum([len(e) for e, _ in asked])[:-1]
-    )
+        np.concatenate(
+            (energies[firsts] - tolerance, energies[lasts] + tolerance,
+             low, high - tolerance, high + tolerance)
+        ),
+        np.concatenate((owner[firsts], owner[lasts], designs, designs, designs)),
+    )[0]  # fmt: skip
+    n, groups = len(low), len(firsts)
+    below, above = counted[:groups], counted[groups : 2 * groups]
+    at_low, under, over = counted[2 * groups :].reshape(3, n)
     good = (below == numbers[firsts]) & (above == numbers[lasts] + 1)
     checked = good[np.cumsum(starts) - 1]
     size = np.bincount(owner, minlength=len(low))
@@ -84,5 +83,5 @@ def certify(fine: Solvable, found: Found, low: Floats, high: Floats, tolerance: 
     begin[owner[firsts][::-1]] = numbers[firsts][::-1]
     end = begin + size
     complete = (at_low <= begin) & (under <= end) & ((end <= over) | (size == 0))
-    np.logical_and.at(complete, owner, checked)
+    complete[owner[~checked]] = False
     return Proof(checked, complete)

@@ -168,7 +168,7 @@ def _solve_pattern(
         )
         results.append(
             Solution(
-                System(family.members[i], family.ends), mine, error[own], proof.checked[own],
+                System.of(family.members[i], family.ends), mine, error[own], proof.checked[own],
                 True, float(low[i]), float(upper[i]), tolerance,
             )
         )  # fmt: skip

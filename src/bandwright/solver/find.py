@@ -157,7 +157,9 @@ def _scan(system: Solvable, asked: Asked) -> tuple[Indices, Indices, Flags, Floa
     part = (np.arange(len(owner)) - starts[owner]) / (sizes - 1)[owner]
     scanned = asked.low[owner] + (asked.high - asked.low)[owner] * part
     counts, pivots = system.count_and_pivot(scanned, owner)
-    keys = np.maximum.accumulate(counts + _APART * owner)  # rounding at a level; none falls
+    keys = counts + _APART * owner
+    if (keys[1:] < keys[:-1]).any():  # rounding at a level; a count never falls
+        keys = np.maximum.accumulate(keys)
     first, last = keys[starts] % _APART, keys[ends - 1] % _APART
     begin = np.maximum(asked.skip, first)
     size = np.clip(last - begin, 0, asked.at_most)
@@ -167,7 +169,9 @@ def _scan(system: Solvable, asked: Asked) -> tuple[Indices, Indices, Flags, Floa
     owner = np.repeat(np.arange(len(size)), size)
     place = np.arange(len(owner)) - (np.cumsum(size) - size)[owner]
     numbers = begin[owner] + place
-    inner = ~((before[owner] & (place == 0)) | (after[owner] & (place == (size - 1)[owner])))
+    inner = np.ones(len(owner), dtype=bool)
+    if before.any() or after.any():
+        inner = ~((before[owner] & (place == 0)) | (after[owner] & (place == (size - 1)[owner])))
     index = np.searchsorted(keys, numbers + _APART * owner, side="right")
     lows, highs = scanned[index - 1], scanned[index]
     energies = _crossing(lows, highs, pivots[index - 1], pivots[index])

@@ -120,20 +120,21 @@ def solve_profile(
     if high is None:
         raise SolveError("the highest energy asked is missing; give high")
     floor = lowest_edge(profile) if low is None else low
-    edges = [end.edge for end in open_ends(profile, ends) if end is not None]
+    outside = open_ends(profile, ends)
+    edges = [end.edge for end in outside if end is not None]
     top = high = max(floor, min([high, *edges]))  # nothing is bound above an open end's edge
     if at_most is not None:
-        top = _top(System(cut(profile, needed(profile, high, 1e-4, ends)), ends), floor, high,
-                   at_most + skip)  # fmt: skip
+        rough = System(cut(profile, needed(profile, high, 1e-4, ends)), ends, outside)
+        top = _top(rough, floor, high, at_most + skip)
     counts = needed(profile, top, tolerance, ends)
     flat = profile.numbers.flat
-    exact = bool(flat.all())
+    exact = profile.numbers.all_flat
     accuracy = min(1e-3 * tolerance, 1e-9)
     size, before = int(counts.sum()), np.inf
     for _ in range(_ATTEMPTS):
         if counts.sum() > MOST_SLICES:
             break
-        system = System(cut(profile, counts), ends)
+        system = System(cut(profile, counts), ends, outside)
         fine = system if exact else system.halved()
         found = find(system, _asked(system, floor, top, skip, at_most), accuracy)
         error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
@@ -171,6 +172,8 @@ def lowest_edge(profile: Profile) -> float:
     """Return an energy [eV] below every level: the lowest edge, less a hair."""
     numbers = profile.numbers
     least = float(numbers.lowest.min())
+    if numbers.all_flat:
+        return least - 1e-9
     for index in np.flatnonzero(numbers.curved):
         section = profile.sections[index]
         values = section.edge.at(np.linspace(0.0, section.thickness, 65))

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cached_property
 from typing import NamedTuple
 
 import numpy as np
@@ -56,19 +55,23 @@ class OpenEnd(NamedTuple):
 
 @dataclass(frozen=True)
 class System:
-    """One sliced profile between two ends, each ``"open"`` or ``"wall"``."""
+    """One sliced profile between two ends, each ``"open"`` or ``"wall"``.
+
+    ``outside`` is what lies beyond them; None is a wall.
+    """
 
     slices: Slices
     ends: tuple[str, str]
+    outside: tuple[OpenEnd | None, OpenEnd | None]
+
+    @classmethod
+    def of(cls, slices: Slices, ends: tuple[str, str]) -> System:
+        """Return the system of slices between these ends."""
+        return cls(slices, ends, open_ends(slices.profile, ends))
 
     def halved(self) -> System:
         """Return the same system on slices half as thick."""
-        return System(self.slices.halved(), self.ends)
-
-    @cached_property
-    def outside(self) -> tuple[OpenEnd | None, OpenEnd | None]:
-        """What lies beyond both ends; None is a wall."""
-        return open_ends(self.slices.profile, self.ends)
+        return System(self.slices.halved(), self.ends, self.outside)
 
     @property
     def nodes(self) -> int:
