@@ -1,8 +1,7 @@
 """Error budget of a line: what a monolayer, a per cent, ten kelvin and a field do to it.
 
-The shift of a row is a derivative times its change. `derivatives` is the one place that finds
-them, here by solving the stack again a small step to both sides; whether the whole change is
-still linear, and still the same two levels, is checked by one more solution at the whole change.
+The shift of a row is a derivative, exact from the states, times its change. Whether the whole
+change is still linear, and still the same two levels, is checked by one solution there.
 """
 
 from __future__ import annotations
@@ -29,10 +28,6 @@ if TYPE_CHECKING:
 
 Floats = npt.NDArray[np.float64]
 
-#: tolerance of the solutions that derivatives are taken from [eV]
-TOLERANCE = 1e-9
-#: steps of the derivatives, in core units: their square is negligible, their noise too
-STEPS = {"thickness": 0.02, "composition": 1e-3, "temperature": 1.0, "field": 1e-5, "bias": 1e-3}
 #: a level that keeps less of itself (probability) over a whole change has mixed with another
 SAME_LEVEL = 0.7
 #: levels looked at beyond the upper one, in case others pass
@@ -53,8 +48,6 @@ class Change(NamedTuple):
     parameter : Parameter
     amount : float
         How much, in the parameter's unit.
-    step : float
-        Step of the derivative, in the parameter's unit.
     what : str
         The layer, or ``"temperature"`` and the like.
     text : str
@@ -63,12 +56,13 @@ class Change(NamedTuple):
 
     parameter: Parameter
     amount: float
-    step: float
     what: str
     text: str
 
 
-def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None) -> pd.DataFrame:
+def error_budget(
+    lines: Lines, line: Line | tuple[int | str, int] | None = None, *, checked: bool = True
+) -> pd.DataFrame:
     """Return what small changes of the stack do to a line, the largest shift first.
 
     Changes: one monolayer more in each written layer (repeats, and layers of one label,
@@ -80,6 +74,8 @@ def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None)
     lines : Lines
     line : Line or (upper, lower), optional
         The strongest line if absent, or the first onset where no line joins two levels.
+    checked : bool
+        Whether to solve each changed stack as well, for the remarks; False solves nothing.
 
     Returns
     -------
@@ -115,7 +111,7 @@ def error_budget(lines: Lines, line: Line | tuple[int | str, int] | None = None)
             if chosen.upper != CONTINUUM or change.parameter.kind not in ("field", "bias")
         ]
         slopes = derivatives(levels, chosen, every)
-        before = _Sample.of(levels)
+        before = _Sample.of(levels) if checked else None
         for change, (up, down) in zip(every, slopes, strict=True):
             shift = float(up - down) * change.amount
             rows.append((change, shift, _checked(levels, chosen, change, shift, before)))
@@ -180,19 +176,18 @@ def changes(levels: Levels) -> list[Change]:
         what = f"{head} ({name})" if head != name and not name.startswith(head) else name
         layer = written[number].layer
         if kind == "thickness":
-            step = min(STEPS[kind], 0.02 * levels.profile.facts[number - 1].thickness)
             monolayer = monolayers[number]
             if parameter.unit == "ML":
-                found.append(Change(parameter, 1.0, step / monolayer, what, "+1 ML"))
+                found.append(Change(parameter, 1.0, what, "+1 ML"))
             elif math.isnan(monolayer):
-                found.append(Change(parameter, OWN_STEP, step, what, f"+{OWN_STEP:g} nm"))
+                found.append(Change(parameter, OWN_STEP, what, f"+{OWN_STEP:g} nm"))
             else:
-                found.append(Change(parameter, monolayer, step, what, "+1 ML"))
+                found.append(Change(parameter, monolayer, what, "+1 ML"))
         elif kind == "composition":
             which = key.removesuffix("_shift")
             if layer.material is not None and which not in ("x", "y"):
                 which = _first_element(layer.material, key)
-            found.append(Change(parameter, 0.01, STEPS[kind], what, f"+0.01 {which}"))
+            found.append(Change(parameter, 0.01, what, f"+0.01 {which}"))
     return found
 
 
@@ -200,11 +195,11 @@ def _of_stack(parameter: Parameter, materials: bool) -> list[Change]:
     """Return the change of a number of the whole stack; none of one that nothing follows."""
     kind = parameter.kind
     if kind == "temperature" and materials:
-        return [Change(parameter, 10.0, STEPS[kind], kind, "+10 K")]
+        return [Change(parameter, 10.0, kind, "+10 K")]
     if kind == "field":
-        return [Change(parameter, 1e-4, STEPS[kind], kind, "+1 kV/cm")]
+        return [Change(parameter, 1e-4, kind, "+1 kV/cm")]
     if kind == "bias":
-        return [Change(parameter, 0.01, STEPS[kind], kind, "+10 mV")]
+        return [Change(parameter, 0.01, kind, "+10 mV")]
     return []
 
 
@@ -223,44 +218,25 @@ def _first_element(formula: str, key: str) -> str:
 def derivatives(levels: Levels, line: Line, changes: Sequence[Change]) -> Floats:
     """Return dE of the upper and of the lower level by each parameter, (n_changes, 2).
 
-    Central differences of solutions to `TOLERANCE`; for an onset, and where one side can't be
-    solved (a fraction at 0 or 1, a temperature at 0 K), one-sided ones of second order, from
-    three steps. Levels are followed by number; a group of copies by its mean. In eV per unit of
-    the parameter; nan where neither side can be solved.
+    From the states, see `bandwright.gradients`; a group of copies by its mean. In eV per unit of
+    the parameter; nan where it can be moved to neither side.
 
     Parameters
     ----------
     levels : Levels
     line : Line
-        The upper level of an onset is the lower open edge.
+        The upper level of an onset is the lower open edge; where both edges are equal, towards
+        larger values.
     changes : sequence of Change
     """
     slopes = np.full((len(changes), 2), np.nan)
     for row, change in enumerate(changes):
-        up = _ends_at(levels, line, change, 1.0)
-        # an onset counts from the lower of two edges, which has a kink where they are equal
-        down = (
-            _ends_at(levels, line, change, -1.0) if line.upper != CONTINUUM or up is None else None
-        )
-        if up is not None and down is not None:
-            slopes[row] = (up - down) / (2.0 * change.step)
+        try:
+            gradient = levels.gradient([change.parameter.name])
+        except BandwrightError:
             continue
-        side = 1.0 if up is not None else -1.0
-        near = up if up is not None else down
-        far = [_ends_at(levels, line, change, side * times) for times in (2.0, 3.0)]
-        if near is not None and far[0] is not None and far[1] is not None:
-            # through f(h), f(2h), f(3h); f(0) may have other ends than a stack in a field
-            slopes[row] = side * (-5.0 * near + 8.0 * far[0] - 3.0 * far[1]) / (2.0 * change.step)
+        slopes[row] = [gradient.of_row(end)[0] for end in (line.upper, line.lower)]
     return slopes
-
-
-def _ends_at(levels: Levels, line: Line, change: Change, steps: float) -> Floats | None:
-    """Return (upper, lower) energy [eV] a number of steps away; None where that is no stack."""
-    try:
-        moved = _moved(levels.stack, change.parameter.name, steps * change.step)
-        return _ends(_solved(levels, moved, line), levels, line)
-    except BandwrightError:
-        return None
 
 
 def _moved(stack: Stack, name: str, step: float) -> Stack:
@@ -280,7 +256,7 @@ def _solved(levels: Levels, stack: Stack, line: Line, more: int = 0) -> Levels:
             stack,
             below=f"{below!r} eV",
             at_most=group.stop + more,
-            tolerance=f"{min(TOLERANCE, levels.tolerance)!r} eV",
+            tolerance=f"{levels.tolerance!r} eV",
             bands=levels.profile.bands,
         )
 
@@ -307,10 +283,17 @@ def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
     return np.array(ends)
 
 
-def _checked(levels: Levels, line: Line, change: Change, shift: float, before: _Sample) -> str:
-    """Return what must be said of a whole change beside its linear shift, '' if nothing."""
+def _checked(
+    levels: Levels, line: Line, change: Change, shift: float, before: _Sample | None
+) -> str:
+    """Return what must be said of a whole change beside its linear shift, '' if nothing.
+
+    Without ``before``, the states to be followed, nothing is solved.
+    """
     if not math.isfinite(shift):
-        return "a step away the stack can't be solved, or not counted for sure"
+        return "it can be moved to neither side"
+    if before is None:
+        return ""
     try:
         moved = _moved(levels.stack, change.parameter.name, change.amount)
         found = _solved(levels, moved, line, more=PASSING)

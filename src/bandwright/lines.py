@@ -185,7 +185,9 @@ class Lines:
         known = ", ".join(names[:12]) + (", ..." if len(names) > 12 else "")
         raise StackError(f"there is no line {upper} to {lower} here; lines are {known or 'none'}")
 
-    def error_budget(self, line: Line | tuple[int | str, int] | None = None) -> pd.DataFrame:
+    def error_budget(
+        self, line: Line | tuple[int | str, int] | None = None, *, checked: bool = True
+    ) -> pd.DataFrame:
         """Return what small changes of the stack do to a line, the largest first.
 
         See `bandwright.budget.error_budget`.
@@ -194,10 +196,12 @@ class Lines:
         ----------
         line : Line or (upper, lower), optional
             The strongest line if absent.
+        checked : bool
+            Whether to solve each changed stack as well, for the remarks; False solves nothing.
         """
         from .budget import error_budget
 
-        return error_budget(self, line)
+        return error_budget(self, line, checked=checked)
 
     def gradient(self, parameters: Sequence[str] | None = None) -> LineGradient:
         """Return dE and d(wavelength) of each line by parameters of the stack, exactly.

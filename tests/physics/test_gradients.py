@@ -1,7 +1,7 @@
 """Exact gradients against high-order differences of the solver itself, and against closed forms.
 
 A gradient solves nothing; the reference here solves the stack again, at 1e-11 eV, a step to both
-sides, and takes differences of fourth order. Two criteria: every entry to 1e-6 of its row's
+sides, and takes differences of sixth order (fifth on one side). Two criteria: every entry to 1e-6 of its row's
 largest, rows being what a monolayer, a hundredth, ten kelvin, a kV/cm and so on do to a level; and
 every column to 1e-6 of its own largest entry, or to the rounding of the differences.
 """
@@ -20,10 +20,10 @@ from bandwright.solver import solve_profile
 
 TOLERANCE = 1e-11  # eV, of the solutions that differences are taken of
 STEPS = {
-    "thickness": 0.05, "composition": 2e-3, "composition end": 2e-3, "substrate": 2e-3,
-    "edge": 2e-3, "edge end": 2e-3, "mass": 5e-4, "mass end": 5e-4, "gap": 0.01,
-    "gap end": 0.01, "nonparabolicity": 0.01, "internal field": 1e-4, "field": 5e-6, "bias": 1e-3,
-    "temperature": 3.0, "substrate lattice": 1e-4,
+    "thickness": 0.015, "composition": 6e-4, "composition end": 6e-4, "substrate": 6e-4,
+    "edge": 6e-4, "edge end": 6e-4, "mass": 1.5e-4, "mass end": 1.5e-4, "gap": 3e-3,
+    "gap end": 3e-3, "nonparabolicity": 3e-3, "internal field": 3e-5, "field": 3e-6,
+    "bias": 3e-4, "temperature": 1.0, "substrate lattice": 3e-5,
 }  # fmt: skip
 #: what a row compares: 0.3 nm, 0.01, 10 meV, 0.001 m0, 10 meV, 1 kV/cm, 10 mV, 10 K, 1e-4 nm
 CHANGES = {
@@ -32,7 +32,7 @@ CHANGES = {
     "nonparabolicity": 0.01, "internal field": 1e-4, "field": 1e-4, "bias": 0.01,
     "temperature": 10.0, "substrate lattice": 1e-4,
 }  # fmt: skip
-CENTRAL = {1: 2 / 3, -1: -2 / 3, 2: -1 / 12, -2: 1 / 12}
+CENTRAL = {1: 3 / 4, 2: -3 / 20, 3: 1 / 60, -1: -3 / 4, -2: 3 / 20, -3: -1 / 60}
 FORWARD = {0: -137 / 60, 1: 5.0, 2: -5.0, 3: 10 / 3, 4: -5 / 4, 5: 1 / 5}
 
 
@@ -105,9 +105,14 @@ MIXED = [
     own(8, 0.21, 0.085, gap="1.75 eV", label="own"),
 ]
 DEEP = [
-    own(12, 0.8, 0.08, gap="0.5 eV", label="first"),
+    own(8, 0.8, 0.08, gap="0.5 eV", label="first"),
     own(8, 0.0, 0.03, gap="0.4 eV", label="well"),
-    own(12, 0.8, 0.08, gap="0.5 eV"),
+    own(8, 0.8, 0.08, gap="0.5 eV"),
+]
+UPFIELD = [
+    own(10, 0.3, 0.08, gap="0.5 eV", label="first"),
+    own(8, 0.0, 0.03, gap="0.4 eV", label="well"),
+    own(16, 0.3, 0.08, gap="0.5 eV"),
 ]
 
 CASES = {
@@ -119,7 +124,8 @@ CASES = {
     "two bands as one": (bw.Stack(KANE), {"bands": "one-band"}),
     "two bands, field": (bw.Stack(KANE, field="-60 kV/cm"), {}),
     "two bands, bias": (bw.Stack(KANE, bias="150 mV"), {}),
-    "two bands, mass at its floor": (bw.Stack(DEEP, field="150 kV/cm"), {"at_most": 3}),
+    "two bands, mass at its floor in barriers": (bw.Stack(DEEP), {"at_most": 1}),
+    "two bands, mass at its floor upfield": (bw.Stack(UPFIELD, field="150 kV/cm"), {"at_most": 2}),
     "nonparabolicity, mass graded, walls": (bw.Stack(ALPHA, ends="wall"), {}),
     "nonparabolicity, mass graded, field": (bw.Stack(ALPHA, field="40 kV/cm"), {}),
     "internal fields": (bw.Stack(POLAR), {}),
@@ -158,7 +164,7 @@ def energies(levels, profile):
 
 
 def differences(levels, parameter):
-    """dE by a parameter from six or four solutions at 1e-11 eV, and their rounding."""
+    """dE by a parameter from six solutions at 1e-11 eV, and their rounding."""
     stack, bands = levels.stack, levels.profile.bands
     if parameter.kind == "substrate lattice":
         lattice = bw.Library.shipped().lattice(stack.substrate)
@@ -189,14 +195,17 @@ def test_every_parameter_against_differences_of_the_solver(name):
     stack, arguments = CASES[name]
     levels = bw.solve(stack, tolerance=f"{TOLERANCE} eV", **arguments)
     assert len(levels) >= 1
+    assert (levels.states.clamped.max() > 1e-9) == ("floor" in name)
     gradient = levels.gradient()
     assert not gradient.mixed.any()
     assert gradient.kinked == ()
+    # a mass that meets its floor inside a slice leaves energies as rough as their tolerance
+    rough = 100.0 if "upfield" in name else 1.0
     expected, noise, change = [], [], []
     for parameter in gradient.parameters:
         column, rounding = differences(levels, parameter)
         expected.append(column)
-        noise.append(rounding)
+        noise.append(rough * rounding)
         change.append(CHANGES[parameter.kind])
     expected = np.array(expected).T
     off = np.abs(gradient.energies - expected)

@@ -108,6 +108,21 @@ class Gradient:
         ]
         return frame(columns, index="level")
 
+    def of_row(self, end: int | str) -> Floats:
+        """Return the slopes of a row of ``levels.table``, or of the continuum's onset.
+
+        Parameters
+        ----------
+        end : int or str
+            A row's level number; text is the lower open edge. Its slope by a field is nan: a
+            field leaves no level bound.
+        """
+        if isinstance(end, str):
+            fields = [p.kind in ("field", "bias") for p in self.parameters]
+            return np.where(fields, np.nan, self.edges)
+        starts = [group.start + 1 for group in self.levels.groups]
+        return np.asarray(self.groups[starts.index(end)])
+
     def lines(self, pairs: Sequence[tuple[int | str, int]]) -> LineGradient:
         """Return the gradient of lines, each by its two levels' numbers.
 
@@ -123,19 +138,12 @@ class Gradient:
         photons = np.zeros(len(pairs))
         for place, (upper, lower) in enumerate(pairs):
             low = rows[lower]
+            slopes[place] = self.of_row(upper) - self.of_row(lower)
             if isinstance(upper, str):
-                slopes[place] = self._onset - self.groups[low]
                 photons[place] = _open_edge(self.levels) - means[low]
             else:
-                slopes[place] = self.groups[rows[upper]] - self.groups[low]
                 photons[place] = means[rows[upper]] - means[low]
         return LineGradient(tuple(pairs), self.parameters, photons, slopes)
-
-    @property
-    def _onset(self) -> Floats:
-        """Slopes of the open edge; nan by a field, which leaves no level bound."""
-        fields = [p.kind in ("field", "bias") for p in self.parameters]
-        return np.where(fields, np.nan, self.edges)
 
 
 @dataclass(frozen=True, eq=False)
