@@ -85,10 +85,13 @@ def periodic_levels(times, well, barrier, high):
     found = []
     for j in range(1, times):
         target = np.cos(j * np.pi / times)
+
+        def mismatch(energy, target=target):
+            return 0.5 * np.trace(matrix(energy)) - target
+
         value = np.array([0.5 * np.trace(m) - target for m in matrices])
         for i in np.flatnonzero(np.signbit(value[:-1]) != np.signbit(value[1:])):
-            found.append(brentq(lambda e: 0.5 * np.trace(matrix(e)) - target,
-                                scan[i], scan[i + 1], xtol=1e-15))  # fmt: skip
+            found.append(brentq(mismatch, scan[i], scan[i + 1], xtol=1e-15))
     value = np.array([m[0, 1] for m in matrices])
     for i in np.flatnonzero(np.signbit(value[:-1]) != np.signbit(value[1:])):
         found.append(brentq(lambda e: matrix(e)[0, 1], scan[i], scan[i + 1], xtol=1e-15))

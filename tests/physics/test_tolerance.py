@@ -16,10 +16,6 @@ CURVED = [
 ]  # fmt: skip
 
 
-def flat_bare(thickness, edge):
-    return Section(thickness, Polynomial((edge,)), Polynomial((0.067,)))
-
-
 @pytest.mark.parametrize("which", CURVED)
 def test_every_tolerance_is_kept(which):
     """1e-3 to 1e-10 eV; the reference itself is good to 1e-12."""
@@ -42,18 +38,46 @@ def test_every_tolerance_is_kept(which):
     assert errors[-1] < 1e-10
 
 
-@pytest.mark.parametrize("place", [3.217, 4.5, np.pi, 7.77])
-def test_a_jump_hidden_in_a_callable_is_an_error_or_a_right_level(place):
-    """Nothing says where it is, so it can't be cut: refused, never a silent wrong number."""
-    hidden = Section(9.0, Sampled(lambda s: np.where(s < place, 0.0, 0.31)), Polynomial((0.067,)))
-    walls = ("wall", "wall")
-    known = profile(flat_bare(place, 0.0), flat_bare(9.0 - place, 0.31), ends=walls)
+WALLS = ("wall", "wall")
+
+
+def curve(function):
+    return Profile((Section(9.0, Sampled(function), Polynomial((0.067,))),), WALLS)
+
+
+@pytest.mark.parametrize("place", [3.217, 4.5, 3.14159, 7.77])
+def test_a_jump_hidden_in_a_callable_is_refused(place):
+    """It can't be cut where it is: an error that says where, never a silent wrong number."""
+    hidden = curve(lambda s: np.where(s < place, 0.0, 0.31))
+    with pytest.raises(SolveError, match=rf"jumps by 0\.31 about {place} nm"):
+        solve_profile(hidden, high=0.6, tolerance=1e-6)
+
+
+@pytest.mark.parametrize("place", [3.217, 4.5, np.pi])
+def test_a_kink_hidden_in_a_callable_is_an_error_or_a_right_level(place):
+    """Continuous, its slope jumps: more slices help, the sixth order is lost."""
+    known = profile(
+        Section(place, Polynomial((0.0,)), Polynomial((0.067,))),
+        Section(9.0 - place, Polynomial((0.0, 0.08)), Polynomial((0.067,))), ends=WALLS,
+    )  # fmt: skip
+    hidden = curve(lambda s: 0.08 * np.maximum(s - place, 0.0))
     try:
-        found = solve_profile(Profile((hidden,), walls), high=0.6, tolerance=1e-6)
+        found = solve_profile(hidden, high=0.7, tolerance=1e-6)
     except SolveError as error:
         assert "jump or kink inside a layer's shape" in str(error)
     else:
-        assert np.abs(found.energies - levels(known, 0.6).energies).max() < 1e-6
+        assert np.abs(found.energies - levels(known, 0.7).energies).max() < 1e-6
+
+
+@pytest.mark.parametrize("width", [0.3, 0.1, 0.03])
+@pytest.mark.parametrize("place", [3.217, 4.5])
+def test_a_steep_but_smooth_callable_is_solved(place, width):
+    """Interfaces of one atom's width and less are no jumps."""
+    steep = curve(lambda s: 0.155 * (1 + np.tanh((s - place) / width)))
+    found = solve_profile(steep, high=0.6, tolerance=1e-8)
+    wanted = levels(steep, 0.6)
+    assert len(found.energies) == len(wanted.energies) > 1
+    assert np.abs(found.energies - wanted.energies).max() < 1e-8
 
 
 @pytest.mark.parametrize("which", [("coupled", "one-band", 1), ("polar", "two-band", 5)])
