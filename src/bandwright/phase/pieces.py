@@ -152,10 +152,12 @@ class Batch:
         self.tilted = all(p.section.tilted for p in pieces)
         self.plain = np.array([[w and p.alone and not _linear(p.section) for w in p.walls]
                                for p in pieces]).T
+        self.exact = np.array([[_linear(p.section)] for p in pieces])
         self._curves = {
             name: _Stacked([getattr(p.section, name) for p in pieces])
             for name in ("edge", "mass", "inverse_gap")
         }
+        self._sliced: dict[str, Floats] = {}
         self.ends = np.stack([np.zeros_like(self.length), self.length])  # (2, n_pieces)
         self.edge = np.stack([self.at("edge", s[:, None])[:, 0] for s in self.ends])
         self.slopes = {name: self._slopes(name) for name in self._curves}
@@ -175,6 +177,13 @@ class Batch:
         """Return edge [eV], mass or inverse_gap at s [nm from the low face], (n_pieces, ...)."""
         shape = (-1,) + (1,) * (s.ndim - 1)
         return self._curves[name](self.start.reshape(shape) + self.direction.reshape(shape) * s)
+
+    def slices(self, name: str, shares: Floats) -> Floats:
+        """Return the same at these shares of each piece's length, kept for the next call."""
+        if name not in self._sliced:
+            s = self.length.reshape((-1,) + (1,) * shares.ndim) * shares
+            self._sliced[name] = self.at(name, s)
+        return self._sliced[name]
 
     def local_width(self, energies: Floats, turn: Floats) -> Floats:
         """Return the width l [nm] of the smooth step with this edge's levels and slope at ``turn``.

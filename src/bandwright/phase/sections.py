@@ -17,6 +17,7 @@ from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile, Sampled, Section
 from ..solver.matrix import Elements
+from .brief import blended
 from .corrections import between_walls, next_order, smooth_edge
 from .joints import joined
 from .maps import (
@@ -212,8 +213,9 @@ def piece_elements(batch: Batch, energies: Floats, order: int = 1) -> Elements:
     off = np.where(none, link, link / across) / mean
     lost = np.where(both | none, 0.0, np.arctan(q))
     clamped = np.where(none, 0.0, np.floor((p.total - lost) / np.pi))
-    return Elements(left - p.low.slope, right + p.high.slope, off,
-                    np.maximum(clamped, 0.0).astype(np.int64))
+    found = Elements(left - p.low.slope, right + p.high.slope, off,
+                     np.maximum(clamped, 0.0).astype(np.int64))
+    return blended(batch, energies, p.action + p.decay, found)
 
 
 def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
