@@ -1,9 +1,9 @@
 """Exact gradients against high-order differences of the solver itself, and against closed forms.
 
 A gradient solves nothing; the reference here solves the stack again, at 1e-11 eV, a step to both
-sides, and takes differences of sixth order (fifth on one side). Two criteria: every entry to 1e-6 of its row's
-largest, rows being what a monolayer, a hundredth, ten kelvin, a kV/cm and so on do to a level; and
-every column to 1e-6 of its own largest entry, or to the rounding of the differences.
+sides, and takes differences of sixth order (fifth on one side). Two criteria: every entry to 1e-6
+of its row's largest, rows being what a monolayer, a hundredth, ten kelvin, a kV/cm and so on do to
+a level; and every column to 1e-6 of its own largest entry, or to the rounding of the differences.
 """
 
 import math
@@ -118,7 +118,7 @@ UPFIELD = [
 CASES = {
     "one band, open": (bw.Stack(COUPLED), {}),
     "one band, walls": (bw.Stack(COUPLED, ends="wall"), {}),
-    "one band, a wall and a field": (bw.Stack(COUPLED, ends=("wall", "open"), field="30 kV/cm"), {}),
+    "one band, a wall, a field": (bw.Stack(COUPLED, ends=("wall", "open"), field="30 kV/cm"), {}),
     "one band, box above open edges": (bw.Stack(COUPLED), {"below": "0.4 eV"}),
     "two bands, open": (bw.Stack(KANE), {}),
     "two bands as one": (bw.Stack(KANE), {"bands": "one-band"}),
@@ -220,3 +220,97 @@ def test_every_parameter_against_differences_of_the_solver(name):
     )
     assert in_rows.max() < 1e-6
     assert in_columns.max() < 1e-6
+
+
+def test_infinite_well():
+    """E_n = h2m/m (n pi / L)^2: dE/dL = -2 E/L, dE/dm = -E/m (any text on quantum mechanics)."""
+    stack = bw.Stack([own(10, 0.0, 0.067, label="well")], ends="wall")
+    levels = bw.solve(stack, at_most=5)
+    exact = H2M / 0.067 * (np.arange(1, 6) * math.pi / 10.0) ** 2
+    gradient = levels.gradient(["well.thickness", "well.mass", "field"])
+    found = gradient.energies / exact[:, None]
+    print(f"\nrelative {found[:, 0]} for {-0.2}, {found[:, 1]} for {-1 / 0.067}")
+    assert found[:, 0] == pytest.approx(np.full(5, -0.2), rel=1e-12)
+    assert found[:, 1] == pytest.approx(np.full(5, -1.0 / 0.067), rel=1e-12)
+    assert gradient.of("field") == pytest.approx(np.full(5, 5.0), rel=1e-12)  # <z>, zero at z = 0
+
+
+def test_two_band_infinite_well():
+    """m(E) E = m E (1 + E/Eg) = h2m (n pi / L)^2 =: k: dE/dL = -2k/(L m (1 + 2E/Eg)) and so on."""
+    mass, gap, width = 0.043, 0.8, 9.0
+    well = own(width, 0.0, mass, gap=f"{gap} eV", label="well")
+    levels = bw.solve(bw.Stack([well], ends="wall"), at_most=4, tolerance="1e-12 eV")
+    k = H2M * (np.arange(1, 5) * math.pi / width) ** 2
+    e = 0.5 * gap * (np.sqrt(1.0 + 4.0 * k / (mass * gap)) - 1.0)
+    inner = mass * (1.0 + 2.0 * e / gap)
+    exact = np.array([-2.0 * k / width / inner, -e * (1.0 + e / gap) / inner,
+                      e**2 / gap**2 * mass / inner]).T  # fmt: skip
+    found = levels.gradient(["well.thickness", "well.mass", "well.gap"]).energies
+    print(f"\nfound {found}\nexact {exact}")
+    assert found == pytest.approx(exact, rel=1e-11)
+
+
+def test_triangular_well():
+    """E_n = -(h2m/m)^(1/3) F^(2/3) a_n with Airy's zeros a_n (DLMF 9.9): dE/dF = 2E/(3F)."""
+    field = 0.01
+    layers = [own(60, 0.0, 0.067, field=f"{field} V/nm", label="ramp")]
+    levels = bw.solve(bw.Stack(layers, ends="wall", zero="ramp"), below="0.25 eV",
+                      tolerance="1e-11 eV")  # fmt: skip
+    found = levels.gradient(["ramp.field", "ramp.mass"]).energies[:3] / levels.energies[:3, None]
+    print(f"\nfound {found}, exact {2 / (3 * field)}, {-1 / (3 * 0.067)}")
+    assert found == pytest.approx(np.array([[2 / (3 * field), -1 / (3 * 0.067)]] * 3), rel=1e-9)
+
+
+def test_zero_moves_every_level_alike():
+    layers = [own(10, 0.3, 0.09), own(7, 0.1, 0.067, label="well"), own(10, 0.4, 0.09)]
+    gradient = bw.solve(bw.Stack(layers)).gradient(["well.edge"])
+    # energies count from the well, so only the barriers move, down
+    fixed = bw.solve(bw.Stack(layers, zero="well")).gradient(["well.edge"])
+    assert gradient.energies == pytest.approx(fixed.energies, rel=1e-12)
+    every = bw.solve(bw.Stack(layers)).gradient(["layer 1.edge", "layer 3.edge"])
+    assert gradient.energies[:, 0] == pytest.approx(-every.energies.sum(axis=1), rel=1e-11)
+
+
+def test_all_thicknesses_and_masses_scale():
+    """E = <T> + <V>; <T> goes with 1/(m L^2), so that sum L dE/dL = 2 sum m dE/dm = -2 <T>."""
+    layers = [own(9, 0.3, 0.09), own(6, 0.0, 0.06), own(2, 0.2, 0.08), own(5, 0.03, 0.065),
+              own(9, 0.28, 0.09)]  # fmt: skip
+    levels = bw.solve(bw.Stack(layers, ends="wall"), tolerance="1e-11 eV")
+    thickness = levels.gradient([f"layer {n}.thickness" for n in range(1, 6)]).energies
+    mass = levels.gradient([f"layer {n}.mass" for n in range(1, 6)]).energies
+    widths, masses = np.array([9, 6, 2, 5, 9]), np.array([0.09, 0.06, 0.08, 0.065, 0.09])
+    assert thickness @ widths == pytest.approx(2.0 * mass @ masses, rel=1e-11)
+    edges = levels.gradient([f"layer {n}.edge" for n in (1, 3, 4, 5)]).energies
+    heights = np.array([0.3, 0.2, 0.03, 0.28])
+    assert edges @ heights - mass @ masses == pytest.approx(levels.energies, rel=1e-10)
+
+
+def test_lines_and_wavelengths():
+    stack, _ = CASES["two bands, open"]
+    lines = bw.solve(stack, tolerance="1e-11 eV").lines()
+    gradient = lines.gradient(["well.thickness", "thin.edge", "layer 5.edge", "field"])
+    name, step = "well.thickness", 0.01
+    moved = [
+        {line.name: line for line in bw.solve(replace(stack, name, 7.0 + k * step),
+                                              tolerance="1e-11 eV").lines().rows}
+        for k in (-2, -1, 1, 2)
+    ]  # fmt: skip
+    for row, line in enumerate(lines.rows):
+        two, one, up, far = (m[line.name] for m in moved)
+        for attribute, found, unit in (
+            ("energy_meV", gradient.energies[row, 0], 1e-3),
+            ("wavelength_um", gradient.wavelengths[row, 0], 1e3),
+        ):
+            values = [getattr(m, attribute) * unit for m in (two, one, up, far)]
+            expected = (8.0 * (values[2] - values[1]) - (values[3] - values[0])) / (12.0 * step)
+            assert found == pytest.approx(expected, rel=1e-6, abs=1e-9 if unit < 1 else 1e-4)
+    assert gradient.photons == pytest.approx([line.energy_meV * 1e-3 for line in lines.rows])
+    onset = [i for i, pair in enumerate(gradient.pairs) if pair[0] == "continuum"]
+    assert onset and np.isnan(gradient.energies[onset, 3]).all()
+    assert np.isfinite(np.delete(gradient.energies, onset, axis=0)).all()
+    # the last layer's edge is the lower open one: it lifts all but what of the level is there
+    inside = lines.levels.states.probabilities[:, -1]
+    assert gradient.energies[onset, 2] == pytest.approx(1.0 - inside, abs=1e-9)
+    assert gradient.wavelengths[0, 0] == pytest.approx(
+        -HC / gradient.photons[0] ** 2 * gradient.energies[0, 0]
+    )
