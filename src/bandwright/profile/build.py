@@ -14,7 +14,11 @@ from .sections import Profile, Section
 
 
 def build_profile(
-    stack: Stack, bands: str | None = None, *, substrate_lattice: float | None = None
+    stack: Stack,
+    bands: str | None = None,
+    *,
+    substrate_lattice: float | None = None,
+    known: dict[object, Built] | None = None,
 ) -> Profile:
     """Return the profile of a stack.
 
@@ -25,6 +29,9 @@ def build_profile(
         ``"one-band"`` or ``"two-band"`` instead of the stack's own choice.
     substrate_lattice : float, optional
         Lattice constant of the substrate [nm] instead of its material's own.
+    known : dict, optional
+        Keeps layers once looked up, for profiles of stacks that share most of their layers and
+        their material files.
 
     Returns
     -------
@@ -44,11 +51,16 @@ def build_profile(
     every = stack.written()
     two_band = _choose_bands(every, bands or stack.bands)
     built: dict[int, Built] = {}
+    known = {} if known is None else known
+    around = (stack.temperature, stack.substrate, substrate_lattice, two_band)
     for one in every:
+        key = (one.layer, one.name, around)
         try:
-            built[one.number] = build_layer(one.layer, one.name, stack, library, two_band)
+            if key not in known:
+                known[key] = build_layer(one.layer, one.name, stack, library, two_band)
         except BandwrightError as error:
             raise error.at(one.name) from None
+        built[one.number] = known[key]
     facts = tuple(one.facts for one in built.values())
     if any(one.copies > 1 for one in every):
         written = tuple(number - 1 for _, number in stack.grown())

@@ -36,13 +36,17 @@ def straight(first: float, last: float, thickness: float) -> Polynomial:
     return Polynomial((first, (last - first) / thickness))
 
 
-def fitted(function: Callable[[Floats], Floats], thickness: float) -> Curve:
+def fit_depths(thickness: float) -> Floats:
+    """Return the depths [nm] at which `fitted` wants its values."""
+    return np.asarray(0.5 * thickness * (1.0 + _NODES))
+
+
+def fitted(values: Floats, thickness: float, function: Callable[[Floats], Floats]) -> Curve:
     """Return a smooth function of the depth as a polynomial, a Chebyshev series, or itself.
 
-    Degree two and less become polynomials; a function that a series of degree 24 does not hold
-    to rounding stays as it is.
+    ``values`` are the function's at `fit_depths`. Degree two and less become polynomials; a
+    function that a series of degree 24 does not hold to rounding stays as it is.
     """
-    values = np.asarray(function(0.5 * thickness * (1.0 + _NODES)), dtype=float)
     series = chebyshev.chebfit(_NODES, values, _DEGREE)
     size = float(np.max(np.abs(values))) or 1.0
     large = np.flatnonzero(np.abs(series) > _NEGLIGIBLE * size)

@@ -14,7 +14,7 @@ from ..formula import Value, parse
 from ..materials import BandPoint, Library
 from ..shapes import Face, Flat, Function, Linear, Points, Shape
 from ..stack import Layer, Stack
-from .curves import fitted, least, straight
+from .curves import fit_depths, fitted, least, straight
 from .sections import ZERO, Curve, Floats, LayerFacts, Polynomial, Sampled
 
 
@@ -142,7 +142,19 @@ class _Points:
         """Return the section from start to stop [nm] of the layer."""
         span = stop - start
         along = [_Along(self, which, start, thickness, face) for which in range(3)]
-        edge, mass, gap = (fitted(a, span) if smooth else Sampled(a) for a in along)
+        edge: Curve
+        mass: Curve
+        gap: Curve
+        if not smooth:
+            edge, mass, gap = (Sampled(a) for a in along)
+        else:
+            depth = fit_depths(span)
+            point = self.at(start + depth, thickness, face)
+            values = (point.edge, point.mass, _inverse(point.gap))
+            edge, mass, gap = (
+                fitted(np.array(np.broadcast_to(v, depth.shape)), span, a)
+                for v, a in zip(values, along, strict=True)
+            )
         return Piece(span, edge, mass, gap if two_band else ZERO)
 
 
@@ -243,4 +255,4 @@ def _own_curve(
     if shape.constant or (isinstance(shape, Linear | Points | Flat) and not invert):
         first, last = along(np.array([0.0, stop - start]))
         return straight(float(first), float(last), stop - start)
-    return fitted(along, stop - start)
+    return fitted(along(fit_depths(stop - start)), stop - start, along)

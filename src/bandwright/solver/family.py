@@ -6,7 +6,7 @@ agree to rounding.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 import numpy.typing as npt
@@ -19,7 +19,7 @@ from bandwright.solver.matrix import Counts, Elements, Matrix, assemble, count_a
 from bandwright.solver.need import needed
 from bandwright.solver.propagation import local_mass
 from bandwright.solver.slices import Kind, Slices, cut, joined
-from bandwright.solver.solve import Solution, lowest_edge
+from bandwright.solver.solve import ROUGH, Solution, lowest_edge, tops
 from bandwright.solver.system import System, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
@@ -120,19 +120,27 @@ def solve_family(
         [end.edge for end in open_ends(profile, ends) if end is not None] for profile in profiles
     ]
     top = np.array([max(a, min([h, *e])) for a, h, e in zip(low, high, edges, strict=True)])
+    if at_most is not None:
+        counts = [needed(p, float(t), ROUGH, ends) for p, t in zip(profiles, top, strict=True)]
+        for indices, family in _families(profiles, counts, ends):
+            top[indices] = tops(family, low[indices], top[indices], at_most)
     counts = [needed(p, float(t), tolerance, ends) for p, t in zip(profiles, top, strict=True)]
+    for indices, family in _families(profiles, counts, ends):
+        solved = _solve_pattern(family, low[indices], top[indices], at_most, tolerance)
+        for i, solution in zip(indices, solved, strict=True):
+            results[i] = solution
+    return results
+
+
+def _families(
+    profiles: Sequence[Profile], counts: Sequence[Indices], ends: tuple[str, str]
+) -> Iterator[tuple[list[int], Family]]:
+    """Yield the designs of each slice pattern, by index and as a family."""
     patterns: dict[bytes, list[int]] = {}
     for index, count in enumerate(counts):
         patterns.setdefault(count.tobytes(), []).append(index)
     for indices in patterns.values():
-        members = [cut(profiles[i], counts[i]) for i in indices]
-        family = Family(members, ends)
-        for i, solution in zip(
-            indices, _solve_pattern(family, low[indices], top[indices], at_most, tolerance),
-            strict=True,
-        ):  # fmt: skip
-            results[i] = solution
-    return results
+        yield indices, Family([cut(profiles[i], counts[i]) for i in indices], ends)
 
 
 def _solve_pattern(

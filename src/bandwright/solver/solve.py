@@ -11,7 +11,7 @@ import numpy.typing as npt
 from bandwright.errors import SolveError
 from bandwright.profile import Profile
 from bandwright.solver.certificate import certify, halving_error
-from bandwright.solver.find import Asked, Found, find, guess_levels
+from bandwright.solver.find import Asked, Found, Solvable, find, guess_levels
 from bandwright.solver.need import MOST_SLICES, needed
 from bandwright.solver.polish import polish
 from bandwright.solver.slices import cut
@@ -22,6 +22,8 @@ Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
 _ATTEMPTS = 12
+#: tolerance [eV] of the slices on which the energy to cut for is looked up
+ROUGH = 1e-4
 
 
 @dataclass(frozen=True)
@@ -124,8 +126,8 @@ def solve_profile(
     edges = [end.edge for end in outside if end is not None]
     top = high = max(floor, min([high, *edges]))  # nothing is bound above an open end's edge
     if at_most is not None:
-        rough = System(cut(profile, needed(profile, high, 1e-4, ends)), ends, outside)
-        top = _top(rough, floor, high, at_most + skip)
+        rough = System(cut(profile, needed(profile, high, ROUGH, ends)), ends, outside)
+        top = float(tops(rough, np.array([floor]), np.array([high]), at_most + skip)[0])
     counts = needed(profile, top, tolerance, ends)
     flat = profile.numbers.flat
     exact = profile.numbers.all_flat
@@ -181,12 +183,15 @@ def lowest_edge(profile: Profile) -> float:
     return least - 1e-9
 
 
-def _top(system: System, low: float, high: float, wanted: int) -> float:
-    """Return an energy above the level of this number, not far, or ``high``."""
+def tops(system: Solvable, low: Floats, high: Floats, wanted: int) -> Floats:
+    """Return an energy not far above each design's level of this number, or its ``high``."""
+    designs = np.arange(len(low))
+    part = np.linspace(0.0, 1.0, 33)
     for _ in range(2):
-        trial = np.linspace(low, high, 33)
-        above = np.flatnonzero(system.count(trial) > wanted)
-        if not len(above) or not above[0]:
-            return high
-        low, high = float(trial[above[0] - 1]), float(trial[above[0]])
+        trial = low[:, None] + (high - low)[:, None] * part
+        counts = system.count_and_pivot(trial.reshape(-1), np.repeat(designs, len(part)))[0]
+        above = counts.reshape(trial.shape) > wanted
+        place = np.where(above.any(axis=1), np.argmax(above, axis=1), len(part) - 1)
+        place = np.maximum(place, 1)
+        low, high = trial[designs, place - 1], trial[designs, place]
     return high
