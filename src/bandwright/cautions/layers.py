@@ -8,14 +8,18 @@ from .words import listed
 
 #: thinner [nm] or thicker [nm] layers look like a slip of the unit
 THIN, THICK = 0.1, 1000.0
+_SINGLY = 4
 
 
 def thicknesses(levels: Levels) -> list[str]:
     """Return layers whose thickness looks like a slip."""
-    texts = []
-    for fact in levels.profile.facts:
-        if THIN <= fact.thickness <= THICK and not fact.thickness < fact.monolayer * (1.0 - 1e-6):
-            continue
+    texts: list[str] = []
+    odd = [
+        fact
+        for fact in levels.profile.facts
+        if not THIN <= fact.thickness <= THICK or fact.thickness < fact.monolayer * (1.0 - 1e-6)
+    ]
+    for fact in odd[:_SINGLY]:
         length = f"{number_text(round(fact.thickness, 6))} nm"
         if fact.thickness > THICK:
             nm, tenth = (number_text(round(fact.thickness / by, 6)) for by in (1000, 10))
@@ -34,6 +38,8 @@ def thicknesses(levels: Levels) -> list[str]:
                 f" ({fact.monolayer:.4f} nm): it can't be a layer of its own; write it in ML, or as"
                 " an alloy"
             )
+    if len(odd) > _SINGLY:
+        texts.append(f"{len(odd) - _SINGLY} more layers are as odd in thickness")
     return texts
 
 
