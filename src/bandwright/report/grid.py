@@ -39,7 +39,7 @@ DIGITS = {
     "largest_difference_meV": ".3f",
     "wall_shift_meV_per_nm": ".3f",
     "shift_meV": "+.3f",
-    "shift_um": "+.4f",
+    "shift_um": "+.3f",
     "probability": ".3f",
     "mean_position_nm": ".2f",
     "spread_nm": ".2f",
