@@ -85,6 +85,13 @@ def test_few_values_are_worked_out_where_the_function_is_straight():
 
     slope(function, 1.0, 0.1)
     assert len(asked) == 5  # two steps to both sides, and the place itself
+    asked.clear()
+    assert slope(function, 1.0, 0.1, straight=True).value == pytest.approx([2.0], rel=1e-13)
+    assert len(asked) == 3
+    bent = slope(lambda x: np.array([np.exp(x)]), 1.0, 0.004, straight=True)
+    assert bent.value == pytest.approx([np.e], rel=1e-11)
+    tied = slope(lambda x: np.array([abs(x)]), 0.0, 0.1, straight=True)
+    assert tied.kinked
     assert max(differences._CENTRAL) == 6
 
 
@@ -238,6 +245,18 @@ def test_a_gradient_pickles():
 
 
 # -- a substrate's lattice as a number ------------------------------------------------------------
+
+
+def test_layers_once_looked_up_are_kept_apart_by_what_they_depend_on():
+    stack = bw.parse_line("9 nm GaAs, 6 nm In0.1Ga0.9As, 9 nm GaAs", substrate="GaAs")
+    known = {}
+    for moved in (stack, stack.replace(temperature="77 K"), stack.replace(substrate="InP")):
+        for lattice in (None, 0.57):
+            for bands in ("one-band", "two-band"):
+                fresh = build_profile(moved, bands, substrate_lattice=lattice)
+                kept = build_profile(moved, bands, substrate_lattice=lattice, known=known)
+                assert kept == fresh
+    assert len(known) == 2 * 3 * 2 * 3
 
 
 def test_a_substrate_of_any_lattice():

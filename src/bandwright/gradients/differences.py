@@ -43,7 +43,9 @@ class Slope(NamedTuple):
     kinked: bool
 
 
-def slope(function: Callable[[float], Floats], centre: float, step: float) -> Slope:
+def slope(
+    function: Callable[[float], Floats], centre: float, step: float, straight: bool = False
+) -> Slope:
     """Return the derivative of ``function`` at ``centre``.
 
     Parameters
@@ -52,6 +54,9 @@ def slope(function: Callable[[float], Floats], centre: float, step: float) -> Sl
         Of a float; returns an array, always of one shape. Raises `BandwrightError` where it is
         not defined.
     centre, step : float
+    straight : bool
+        Whether the function is linear if its value at ``centre`` is the mean of those a step
+        away: two values then give the derivative.
 
     Raises
     ------
@@ -67,7 +72,7 @@ def slope(function: Callable[[float], Floats], centre: float, step: float) -> Sl
     best: _Steps | None = None
     refused: BandwrightError | None = None
     for attempt in range(_TRIES):
-        steps = _Steps(function, centre, step / 8.0**attempt)
+        steps = _Steps(function, centre, step / 8.0**attempt, straight)
         try:
             rough = steps.best[1]
         except BandwrightError as error:
@@ -86,8 +91,11 @@ def slope(function: Callable[[float], Floats], centre: float, step: float) -> Sl
 class _Steps:
     """Values a few steps away, each worked out once, and the derivatives they give."""
 
-    def __init__(self, function: Callable[[float], Floats], centre: float, step: float) -> None:
+    def __init__(
+        self, function: Callable[[float], Floats], centre: float, step: float, straight: bool
+    ) -> None:
         self.function, self.centre, self.step = function, centre, step
+        self.straight = straight
         self.known: dict[int, Floats] = {}
 
     def at(self, steps: int) -> Floats:
@@ -109,7 +117,12 @@ class _Steps:
             return self._one_sided(-1)
 
     def _central(self) -> tuple[Floats, float]:
-        second, fourth = self._sum(_CENTRAL[2]), self._sum(_CENTRAL[4])
+        second = self._sum(_CENTRAL[2])
+        if self.straight:
+            bend = np.abs(self.at(1) + self.at(-1) - 2.0 * self.at(0)) / self.step
+            if not bend.size or float(bend.max()) <= self._noise:
+                return second, 0.0
+        fourth = self._sum(_CENTRAL[4])
         if self._apart(second, fourth, _AGREE[4]) == 0.0:
             return fourth, 0.0
         sixth = self._sum(_CENTRAL[6])

@@ -8,7 +8,7 @@ stacks a few small steps away, so that zero, bias, strain and monolayers come al
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -35,6 +35,9 @@ _STEPS = {
     SUBSTRATE_LATTICE: 2e-4,
 }  # fmt: skip
 _SHARE = 5e-3  # of the value, for thickness, mass, gap, nonparabolicity
+#: kinds that every number of a profile is linear in, but for kinks and a bias
+_STRAIGHT = ("thickness", "edge", "edge end", "mass", "mass end", "nonparabolicity",
+             "nonparabolicity end", "internal field", "field", "bias")  # fmt: skip
 #: open edges closer than this [eV] are one edge with a kink
 _TIE = 1e-12
 #: levels closer than this many energy errors are not told apart singly
@@ -94,8 +97,12 @@ def _by_number(levels: Levels, name: str) -> Parameter | None:
     return None
 
 
-def energy_slope(levels: Levels, parameter: Parameter) -> EnergySlope:
+def energy_slope(
+    levels: Levels, parameter: Parameter, known: dict[object, Any] | None = None
+) -> EnergySlope:
     """Return dE of every level by one parameter, exact to first order.
+
+    ``known`` keeps looked-up layers from one parameter to the next.
 
     Raises
     ------
@@ -105,30 +112,36 @@ def energy_slope(levels: Levels, parameter: Parameter) -> EnergySlope:
         If no stack a step away can be built on either side; the text says why.
     """
     weights = [states.sensitivity for states in levels.states.sets]
-    build, centre = _builder(levels, parameter)
+    build, centre = _builder(levels, parameter, {} if known is None else known)
 
     def answer(value: float) -> Floats:
         profile = build(value)
         _check_alike(levels.profile, profile, parameter.name)
         return np.concatenate([_weighed(one, profile) for one in weights] + [_outer(profile)])
 
-    found = slope(answer, centre, _step(parameter, centre))
+    straight = parameter.kind in _STRAIGHT
+    found = slope(answer, centre, _step(parameter, centre), straight)
     return EnergySlope(
         found.value[:-2], _open_edge_slope(levels.profile, found.value[-2:]), found.kinked
     )
 
 
-def _builder(levels: Levels, parameter: Parameter) -> tuple[Callable[[float], Profile], float]:
+def _builder(
+    levels: Levels, parameter: Parameter, known: dict[object, Any]
+) -> tuple[Callable[[float], Profile], float]:
     """Return the profile as a function of a parameter, and the parameter's value."""
     stack, bands = levels.stack, levels.profile.bands
     if parameter.kind == SUBSTRATE_LATTICE:
         library = Library.with_files(stack.materials) if stack.materials else Library.shipped()
         return (
-            lambda value: build_profile(stack, bands, substrate_lattice=value),
+            lambda value: build_profile(stack, bands, substrate_lattice=value, known=known),
             library.lattice(str(stack.substrate)),
         )
     name = parameter.name
-    return lambda value: build_profile(replace(stack, name, value), bands), read(stack, name)
+    return (
+        lambda value: build_profile(replace(stack, name, value), bands, known=known),
+        read(stack, name),
+    )
 
 
 def _step(parameter: Parameter, value: float) -> float:

@@ -232,7 +232,8 @@ def gradient_of(levels: Levels, parameters: Sequence[str] | None = None) -> Grad
     ['well.thickness_meV_per_nm', 'mixed']
     """
     found = parameters_of(levels, parameters)
-    slopes = [energy_slope(levels, parameter) for parameter in found]
+    known: dict[object, Any] = {}
+    slopes = [energy_slope(levels, parameter, known) for parameter in found]
     energies = np.zeros((len(levels), len(found)))
     for column, one in enumerate(slopes):
         energies[:, column] = one.energies
