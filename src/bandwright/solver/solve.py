@@ -22,6 +22,10 @@ Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
 _ATTEMPTS = 12
+#: states of levels farther apart than this [eV] are told apart
+NEAREST = 1e-7
+# ... to this part of each other at a tolerance of 1e-9 eV
+_MIXED = 1e-5
 #: tolerance [eV] of the slices on which the energy to cut for is looked up
 ROUGH = 1e-4
 
@@ -67,8 +71,27 @@ class Solution:
 
     @cached_property
     def states(self) -> States:
-        """The states of all levels."""
+        """The states of all levels.
+
+        Levels near each other mix by their energies' error over their distance; where that is too
+        much for the tolerance asked, the states are those of a finer solve.
+        """
+        finer = self._finer()
+        if finer is not None:
+            return States(finer.system, *polish(finer.system, finer.found))
         return States(self.system, *polish(self.system, self.found))
+
+    def _finer(self) -> Solution | None:
+        gaps = np.diff(self.energies)
+        close = float(np.min(gaps, initial=1.0, where=gaps > NEAREST))
+        aim = max(close * _MIXED * np.sqrt(max(self.tolerance / 1e-9, 1.0)), 3e-13)
+        if aim > float(self.error.max(initial=0.0)):
+            return None
+        finer = solve_profile(
+            self.system.slices.profile, self.low, self.high, len(self.energies), aim,
+            self.system.ends, int(self.numbers[0]),
+        )  # fmt: skip
+        return finer if len(finer.energies) == len(self.energies) else None
 
     def dipoles(self) -> Floats:
         """Return the matrix elements of z [nm], (n_levels, n_levels)."""
