@@ -6,6 +6,7 @@ of its row's largest, rows being what a monolayer, a hundredth, ten kelvin, a kV
 a level; and every column to 1e-6 of its own largest entry, or to the rounding of the differences.
 """
 
+import dataclasses
 import math
 
 import numpy as np
@@ -15,8 +16,11 @@ import bandwright as bw
 from bandwright.constants import H2M, HC
 from bandwright.errors import BandwrightError
 from bandwright.parameters import read, replace
+from bandwright.profile import Polynomial, Sampled
 from bandwright.profile.build import build_profile
 from bandwright.solver import solve_profile
+from bandwright.solver.sensitivity import numbers_at
+from physics.randomstacks import CLASSES, random_case
 
 TOLERANCE = 1e-11  # eV, of the solutions that differences are taken of
 STEPS = {
@@ -104,6 +108,11 @@ MIXED = [
     bw.Layer("6 nm", "GaAs", label="well"),
     own(8, 0.21, 0.085, gap="1.75 eV", label="own"),
 ]
+OUTER = [
+    own(3, ("330 meV", "240 meV"), (0.1, 0.08), gap="1.5 eV", label="first"),
+    own(6, 0.0, 0.05, gap="0.9 eV", label="well"),
+    own(3, ("260 meV", "300 meV"), (0.08, 0.09), gap=("1.3 eV", "1.5 eV"), label="last"),
+]
 DEEP = [
     own(8, 0.8, 0.08, gap="0.5 eV", label="first"),
     own(8, 0.0, 0.03, gap="0.4 eV", label="well"),
@@ -138,6 +147,7 @@ CASES = {
     "strained": (bw.Stack(STRAINED, substrate="GaAs", zero="GaAs"), {}),
     "strained to an alloy": (bw.Stack(STRAINED, substrate="In0.06Ga0.94As", field="9 kV/cm"), {}),
     "quaternary": (bw.Stack(QUATERNARY, substrate="InP", temperature="10 K"), {"at_most": 2}),
+    "graded outer layers": (bw.Stack(OUTER), {}),
     "callable and table": (bw.Stack(SHAPES), {}),
     "callable and table, bias": (bw.Stack(SHAPES, bias="0.1 V", zero="bowl"), {}),
     "own numbers beside materials": (bw.Stack(MIXED, zero="well", substrate="GaAs"), {}),
@@ -314,3 +324,71 @@ def test_lines_and_wavelengths():
     assert gradient.wavelengths[0, 0] == pytest.approx(
         -HC / gradient.photons[0] ** 2 * gradient.energies[0, 0]
     )
+
+
+def distorted(profile, direction, size):
+    """A profile along a random direction: thickness, edge, mass and gap of every section."""
+    sections = []
+    for section, (stretch, lift, heavy, light) in zip(profile.sections, direction, strict=True):
+        longer = 1.0 + size * stretch
+        edge, mass, gap = (
+            Polynomial(tuple(c * scale / longer**k for k, c in enumerate(curve.coefficients)))
+            if isinstance(curve, Polynomial)
+            else Sampled(lambda s, curve=curve, scale=scale, q=longer: scale * curve.at(s / q))
+            for curve, scale in (
+                (section.edge, 1.0), (section.mass, 1.0 + size * heavy),
+                (section.inverse_gap, 1.0 + size * light),
+            )
+        )  # fmt: skip
+        edge = edge.plus(0.1 * size * lift, 0.0)
+        sections.append(
+            dataclasses.replace(section, thickness=section.thickness * longer, edge=edge,
+                                mass=mass, inverse_gap=gap)
+        )  # fmt: skip
+    return dataclasses.replace(profile, sections=tuple(sections))
+
+
+@pytest.mark.parametrize(("kind", "bands"), [c for c in CLASSES if c[0] != "clamped"])
+def test_random_profiles_in_a_random_direction(kind, bands):
+    """Every class of random stacks, all their numbers moved at once; seeds fixed and printed."""
+    tried, worst = 0, 0.0
+    for seed in range(30):
+        case = random_case(kind, bands, seed)
+        if len(case.profile.sections) > 24:
+            continue
+        field = {"at_most": 8, "tolerance": TOLERANCE}
+        ends = tuple("wall" if kind == "field" else end for end in case.profile.ends)
+        found = solve_profile(case.profile, high=case.high, ends=ends, **field)
+        if not len(found.energies):
+            continue
+        gaps = np.diff(found.energies, prepend=-np.inf, append=case.high)
+        clear = (np.minimum(gaps[:-1], gaps[1:]) > 3e-3) & (found.states.clamped == 0.0)
+        if not clear[0]:
+            continue
+        last = int(np.argmin(clear)) if not clear.all() else len(clear)
+        rng = np.random.default_rng(seed)
+        direction = rng.uniform(-1.0, 1.0, (len(case.profile.sections), 4))
+        weights = found.states.sensitivity
+        stretch, lift, heavy, light = direction.T
+        _, mass, gap = numbers_at(case.profile, weights.section, weights.share)
+        at = weights.section
+        exact = (
+            weights.thickness @ (stretch * case.profile.numbers.thickness)
+            + weights.edge @ (0.1 * lift[at]) + weights.mass @ (heavy[at] * mass)
+            + weights.inverse_gap @ (light[at] * gap)
+        )[:last]  # fmt: skip
+        step = 5e-4
+        moved = {
+            k: solve_profile(distorted(case.profile, direction, k * step), high=case.high + 0.01,
+                             ends=ends, at_most=last, tolerance=TOLERANCE).energies
+            for k in CENTRAL
+        }  # fmt: skip
+        expected = sum(w * moved[k] for k, w in CENTRAL.items()) / step
+        off = np.max(np.abs(exact - expected)) / np.max(np.abs(expected))
+        print(f"seed {seed}: {last} levels, {len(case.profile.sections)} sections, {off:.1e}")
+        worst = max(worst, off)
+        tried += 1
+        if tried == 2:
+            break
+    assert tried == 2
+    assert worst < 1e-6

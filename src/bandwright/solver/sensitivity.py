@@ -88,7 +88,7 @@ def sensitivity(profile: Profile, energies: Floats, reaches: Sequence[Reach]) ->
     reaches : sequence of Reach
         Of the normalised states, the whole of the structure and what lies beyond open ends.
     """
-    reaches = sorted(reaches, key=lambda reach: int(reach.section[0]))
+    reaches = sorted(reaches, key=lambda reach: (reach.section[0], reach.section[-1]))
     section = np.concatenate([reach.section for reach in reaches])
     whole = profile.numbers.thickness
     share = np.concatenate([reach.depth for reach in reaches]) / whole[section]
