@@ -152,9 +152,9 @@ def solve_shifted(matrix: Matrix, right: Floats) -> Floats:
     between = joint.reshape(-1)[:-1]
     diagonal = matrix.diagonal.T.reshape(-1)
     _, _, _, z, info = dgtsv(between, diagonal, between, right.T.reshape(-1, 1))
-    if info > 0:  # an exact singularity: the next float is as good a shift
-        nudged = Matrix(np.nextafter(matrix.diagonal, np.inf), matrix.off, None)
-        return solve_shifted(nudged, right)
+    if info > 0:  # an exact singularity: a shift by the rounding of K is as good
+        size = np.abs(matrix.diagonal).max(axis=0) + np.abs(matrix.off).max(axis=0)
+        return solve_shifted(Matrix(matrix.diagonal + np.spacing(size), matrix.off, None), right)
     return np.asarray(z).reshape(m, n).T
 
 
