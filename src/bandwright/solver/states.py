@@ -66,13 +66,7 @@ class States:
         inside = np.clip(z[order], faces[0], faces[-1])
         index = np.clip(np.searchsorted(faces, inside, side="right") - 1, 0, len(faces) - 2)
         u, p = self._inside(inside, index)
-        for tail in self._tails:
-            depth = tail.outward * (z[order] - tail.position)
-            out = depth > 0
-            if out.any():
-                shrink = np.exp(-tail.decay[:, None] * depth[out])
-                u[:, out] = tail.u[:, None] * shrink
-                p[:, out] = tail.p[:, None] * shrink
+        self._set_tails(z[order], u, p)
         outside = (z[order] < faces[0]) | (z[order] > faces[-1])
         for end, out in zip(self.system.ends, (z[order] < faces[0], z[order] > faces[-1]),
                             strict=True):  # fmt: skip
@@ -81,6 +75,16 @@ class States:
         back = np.empty_like(order)
         back[order] = np.arange(len(order))
         return u[:, back], p[:, back]
+
+    def _set_tails(self, z: Floats, u: Floats, p: Floats) -> None:
+        """Set u and p at the positions that lie where the tails do: also in unsliced layers."""
+        for tail in self._tails:
+            depth = tail.outward * (z - tail.position)
+            out = depth > 0
+            if out.any():
+                shrink = np.exp(-tail.decay[:, None] * depth[out])
+                u[:, out] = tail.u[:, None] * shrink
+                p[:, out] = tail.p[:, None] * shrink
 
     def _inside(self, z: Floats, index: npt.NDArray[np.int64]) -> tuple[Floats, Floats]:
         """U and p at sorted positions z in slices ``index``, from u at the slices' faces."""
@@ -140,7 +144,9 @@ class States:
         index = np.searchsorted(slices.faces, z, side="right") - 1
         index = np.clip(index, 0, len(slices.thickness) - 1)
         u, p = self._inside(z, index)
-        section = slices.section[index]
+        self._set_tails(z, u, p)
+        section = np.searchsorted(slices.profile.faces, z, side="right") - 1
+        section = np.clip(section, 0, len(slices.counts) - 1)
         place = z - slices.profile.faces[section]
         here = slice_at(slices.profile, slices.counts, section, place, np.zeros_like(z))
         _, b = local_mass(self.energies[:, None], here.edge, here.mass, here.inverse_gap)
