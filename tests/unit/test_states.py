@@ -9,7 +9,7 @@ def own(thickness, edge):
 
 
 def test_dipoles_from_bound_levels_to_the_box_count_the_outer_layers():
-    """A flat outer layer has no slices of its own for bound levels; they live there all the same."""
+    """A flat outer layer has no slices for bound levels; they live there all the same."""
     levels = bw.solve(bw.Stack([own(8, 0.26), own(6, 0.0), own(8, 0.25)]), below="0.4 eV")
     boxed = levels.boxed
     assert boxed.any() and not boxed.all()
