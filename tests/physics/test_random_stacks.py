@@ -4,14 +4,17 @@ The normal run takes 6 stacks of each of the 25 classes, three with fixed and th
 seeds (printed in pytest's header, repeated by ``--stack-seed``); ``--all-stacks`` takes 80 of
 each, 2,000 in all. Each is solved at 1e-6 and at 1e-9 eV; dipoles are compared at 1e-9 eV for
 levels more than 1e-7 eV from their neighbours (closer ones are only promised as a subspace).
+Each is also solved in a family of two, which must change nothing.
 """
 
+import dataclasses
 import warnings
 
 import numpy as np
 import pytest
 
 from bandwright.solver import solve_profile
+from bandwright.solver.family import solve_family
 from physics.dense import NotSure, count, levels
 from physics.randomstacks import CLASSES, random_case
 
@@ -40,11 +43,35 @@ def asked(case):
     return found, high
 
 
+def in_company(profile, high, tolerance, found, where):
+    """Solve the stack beside a slightly thicker one; return how many were left to be solved alone.
+
+    What a family gives must be what each design gives alone, to 1e-10 eV.
+    """
+    thicker = dataclasses.replace(
+        profile,
+        sections=tuple(
+            dataclasses.replace(s, thickness=1.002 * s.thickness) for s in profile.sections
+        ),
+    )
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        own, other = solve_family([profile, thicker], [high, high], profile.ends, None, tolerance)
+        beside = solve_profile(thicker, high=high, tolerance=tolerance)
+    for one, expected in ((own, found), (other, beside)):
+        if one is not None:
+            assert len(one.energies) == len(expected.energies), where
+            gap = np.abs(one.energies - expected.energies).max(initial=0.0)
+            assert gap < 1e-10, f"{where}: {gap:.3g} eV from what it is alone"
+            assert one.count_checked.all() and one.complete, where
+    return (own is None) + (other is None)
+
+
 def compare(case):
-    """Return energy errors at each tolerance [eV], dipole error [nm], number of levels."""
+    """Return energy errors at each tolerance [eV], dipole error [nm], levels, solved alone."""
     reference, high = asked(case)
     wanted = reference.energies
-    errors = []
+    errors, alone = [], 0
     for tolerance in TOLERANCES:
         with warnings.catch_warnings():
             warnings.simplefilter("error")
@@ -58,6 +85,7 @@ def compare(case):
         assert errors[-1] < tolerance, f"{where}: off by {errors[-1]:.3g} eV"
         assert found.count_checked.all(), f"{where}: count_checked {found.count_checked}"
         assert found.complete, f"{where}: not complete"
+        alone += in_company(case.profile, high, tolerance, found, where)
     lone = np.minimum(np.diff(wanted, prepend=-9.0), np.diff(wanted, append=99.0)) > APART
     both = np.ix_(lone, lone)
     dipole = 0.0
@@ -68,7 +96,7 @@ def compare(case):
         gap = np.abs(np.abs(found_dipoles) - np.abs(reference.dipoles()))[both]
         dipole = float(gap.max())
         assert dipole < DIPOLE, f"{case} below {high!r} eV: a dipole is off by {dipole:.3g} nm"
-    return errors, dipole, len(wanted)
+    return errors, dipole, len(wanted), alone
 
 
 @pytest.mark.parametrize(("kind", "bands"), CLASSES)
@@ -76,20 +104,21 @@ def test_random_stacks(kind, bands, request):
     whole = request.config.getoption("--all-stacks")
     fresh = np.random.default_rng(request.config.getoption("--stack-seed"))
     seeds = [*range(ALL if whole else FIXED), *(int(s) for s in fresh.integers(1e3, 1e9, FRESH))]
-    worst, worst_dipole, total, unsure = np.zeros(len(TOLERANCES)), 0.0, 0, []
+    worst, worst_dipole, total, alone, unsure = np.zeros(len(TOLERANCES)), 0.0, 0, 0, []
     for seed in seeds:
         case = random_case(kind, bands, seed)
         try:
-            errors, dipole, number = compare(case)
+            errors, dipole, number, left = compare(case)
         except NotSure as doubt:
             unsure.append(f"{case}: {doubt}")
             continue
         worst, worst_dipole = np.maximum(worst, errors), max(worst_dipole, dipole)
         total += number
+        alone += left
     print(
         f"\n{kind}, {bands}: {len(seeds)} stacks, {total} levels, worst errors "
         + ", ".join(f"{e:.1e} eV at {t:g}" for e, t in zip(worst, TOLERANCES, strict=True))
-        + f", dipole {worst_dipole:.1e} nm"
+        + f", dipole {worst_dipole:.1e} nm, {alone} of {4 * len(seeds)} family members solved alone"
     )
     assert total > len(seeds) / 2
     assert len(unsure) <= max(1, len(seeds) // 50), unsure

@@ -95,7 +95,11 @@ def _curved_need(section: Section, high: float, share: float) -> int:
     k4 = (heavy * bent / H2M) ** (1 / 4)
     wave = np.sqrt(mass * np.maximum(high - edge, 0.0) / H2M)
     reach = np.sqrt(heavy * np.maximum(np.abs(high - edge), edge - edge.min()) / H2M)
-    rates = (_mixed(k3, reach, 3) / 0.48, _mixed(k4, reach, 4) / 0.5, _mixed(drift, reach, 1) / 0.5)
+    rates = (
+        _mixed(k3, reach, 3) / 0.42,
+        _mixed(k4, reach, 4) / 0.44,
+        _mixed(drift, reach, 1) / 0.42,
+    )
     rate = max(float(np.max(r)) for r in rates) / share
     return int(np.ceil(section.thickness * max(rate, 0.75 * float(wave.max()))))
 
