@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -148,34 +148,41 @@ def shoot(
     profile: Profile, spans: Sequence[Range], at_most: int | None, tolerance: float
 ) -> tuple[Part, ...]:
     """Return the levels of each part of the spectrum, by shooting."""
-    parts: list[Part] = []
-    found = 0
-    for span in spans:
-        left = None if at_most is None else at_most - found
-        if left == 0:
-            break
+
+    def one(span: Range, left: int | None, found: int) -> Part:
         solution = solve_profile(
             profile, high=span.high, at_most=left, tolerance=tolerance, ends=span.ends, skip=found
         )
-        parts.append(Part(span, solution.numbers, solution.energies, solution))
-        found += len(solution.energies)
-    return tuple(parts)
+        return Part(span, solution.numbers, solution.energies, solution)
+
+    return _each(spans, at_most, one)
 
 
 def _phase_only(
     profile: Profile, spans: Sequence[Range], at_most: int | None, order: int
 ) -> tuple[Part, ...]:
-    parts: list[Part] = []
-    found = 0
-    for span in spans:
-        left = None if at_most is None else at_most - found
-        if left == 0:
-            break
-        low = lowest_edge(profile)
+    """Return the levels of each part of the spectrum, by the phase integral alone."""
+    low = lowest_edge(profile)
+
+    def one(span: Range, left: int | None, found: int) -> Part:
         high = max(span.high, low)
         first, last = phase.count(profile, [low, high], span.ends, order)
         numbers = np.arange(max(found, int(first)), int(last))[:left]
         energies = phase.levels(profile, low, high, numbers, span.ends, order)
-        parts.append(Part(span, numbers, energies, None))
-        found += len(energies)
+        return Part(span, numbers, energies, None)
+
+    return _each(spans, at_most, one)
+
+
+def _each(
+    spans: Sequence[Range], at_most: int | None, one: Callable[[Range, int | None, int], Part]
+) -> tuple[Part, ...]:
+    """Solve part after part; each is told how many levels are left, and how many were found."""
+    parts: list[Part] = []
+    found = 0
+    for span in spans:
+        if at_most is not None and found == at_most:
+            break
+        parts.append(one(span, None if at_most is None else at_most - found, found))
+        found += len(parts[-1].energies)
     return tuple(parts)
