@@ -83,6 +83,11 @@ def curved(kind):
         return Profile((Section(26.0, edge, Polynomial((0.067,)), Polynomial((0.6,))),))
     if kind == "graded":
         return Profile((BARRIER, section(9, 0.0, 0.0, 0.002, inverse_gap=0.5), BARRIER))
+    if kind == "brief":
+        return Profile((BARRIER, section(9, 0.0), section(2, 0.0, 0.0, 0.01), BARRIER))
+    if kind == "brief inside":
+        return Profile((BARRIER, section(5, 0.0), section(1.5, 0.0, 0.0, 0.02, inverse_gap=0.7),
+                        section(4, 0.045), BARRIER))
     tilt = [section(4, 0.3 - 0.008 * 0, -0.008, inverse_gap=0.6),
             section(7, -0.032, -0.008, inverse_gap=0.9),
             section(3, 0.3 - 0.088, -0.008, inverse_gap=0.6),
@@ -90,7 +95,7 @@ def curved(kind):
     return Profile(tuple(tilt), ("wall", "wall"))
 
 
-@pytest.mark.parametrize("kind", ["trough", "graded", "tilt"])
+@pytest.mark.parametrize("kind", ["trough", "graded", "tilt", "brief", "brief inside"])
 def test_every_well_sums_to_whole_half_waves_at_a_level(kind):
     stack = curved(kind)
     energies = phase.levels(stack, -0.2, 0.24)

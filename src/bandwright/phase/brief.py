@@ -18,8 +18,8 @@ from .pieces import Batch, energy_mass
 
 Floats = npt.NDArray[np.float64]
 
-_SLICES = 12
-_BRIEF = (1.0, 2.0)  # action plus decay [rad]: below the first followed, above the second not
+_SLICES = 16
+_BRIEF = (1.5, 2.5)  # action plus decay [rad]: below the first followed, above the second not
 
 
 def blended(batch: Batch, energies: Floats, extent: Floats, elements: Elements) -> Elements:
@@ -34,6 +34,9 @@ def blended(batch: Batch, energies: Floats, extent: Floats, elements: Elements) 
         Action plus decay of each piece [rad].
     elements : Elements
         Elements of the phase integral, read from the low face to the high one.
+
+    Linear pieces of the one-band model stay with Airy functions, which are exact; a section that
+    is all there is between two walls keeps its plain condition, action = n pi.
     """
     share = 1 - rise((extent - _BRIEF[0]) / (_BRIEF[1] - _BRIEF[0]))
     share = np.where(batch.alone | batch.exact, 0.0, share)

@@ -36,7 +36,8 @@ class Well:
     start_nm, stop_nm : float
         Where it begins and ends, from the first-grown outer face [nm].
     action, end_left, end_right, steps : float
-        Integral of k dz, what each end adds, and what faces inside the region add [rad].
+        Integral of k dz, what each end adds, and what faces and pieces too brief for a phase
+        of their own add inside the region [rad].
     half_waves : float
         Their sum over pi: a whole number at a level, in the region that holds its state.
     n : int
@@ -258,6 +259,7 @@ def _well(group: list[_Part], forth: list[float], back: list[float], barrier_lef
         ratio = forth[b.left.face]
         jump = _angle(ratio, b.left, 1.0) - _angle(ratio, a.right, 1.0)
         steps += jump + a.right.shift + b.left.shift
+    steps += sum(_remainder(part, forth) for part in group)
     end_right = _end(group[-1].right, group[-1].left, group[-1], back, -1.0)
     action = sum(p.amount for p in group)
     half_waves = float(action + end_left + steps + end_right) / np.pi
@@ -265,6 +267,16 @@ def _well(group: list[_Part], forth: list[float], back: list[float], barrier_lef
         (), group[0].start, group[-1].stop,
         float(action), end_left, end_right, steps, half_waves, round(half_waves),
         float("nan"), float("nan"), float(barrier_left), float(barrier_right))
+
+
+def _remainder(part: _Part, forth: list[float]) -> float:
+    """Return what the phase gains across a part beyond its action and shifts, if it is brief."""
+    if part.left.face is None or part.right.face is None:
+        return 0.0
+    gain = _angle(forth[part.right.face], part.right, 1.0) - _angle(
+        forth[part.left.face], part.left, 1.0)
+    beyond = _near(gain - part.amount - part.left.shift - part.right.shift, 0.0)
+    return beyond if abs(beyond) > 1e-7 else 0.0  # else rounding
 
 
 def _end(edge: _Edge, other: _Edge, part: _Part, march: list[float], way: float) -> float:

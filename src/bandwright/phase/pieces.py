@@ -127,8 +127,7 @@ def _scale(section: Section, depth: float, cuts: list[float], index: int) -> flo
         return 0.0
     mass = float(section.mass.at(np.array([depth]))[0])
     bent = max(abs(curvature), 1e-9 * rise / reach**2)
-    widest = 0.5 * max(beside) * mass
-    return min(float((2 * bent / (H2M * mass**3)) ** -0.25), widest) if bent > 0.0 else widest
+    return float((2 * bent / (H2M * mass**3)) ** -0.25) if bent > 0.0 else 0.0
 
 
 class Batch:

@@ -2,8 +2,9 @@
 
 Flat sections are exact; linear ones in the one-band model are exact by Airy functions. All
 others use the action and the amplitude sqrt(m/k), with the pi/4 of a smooth turning point
-inside and the local Airy or parabolic model of `maps` at their faces. Cutting a section in two
-changes nothing, because both sides of the cut carry the same model.
+inside and the local Airy or parabolic model of `maps` at their faces; those much shorter than a
+wave are followed by slices (`brief`). Cutting a section in two changes nothing: smooth
+neighbours are joined first (`joints`).
 """
 
 from __future__ import annotations
@@ -248,7 +249,7 @@ def phases(batch: Batch, energies: Floats, order: int = 1) -> Phases:
     round_, weight, phase = smooth_edge(batch, energies, turn, low_q, high_q, action, decay)
     larger = np.where(bottom, bottom_exponent(height), 0.0)
     larger = np.where(inside, larger * round_, larger)
-    weight = np.where(batch.alone & (high_q > 0), over * weight, weight)
+    weight = np.where(high_q > 0, over * weight, weight)
     total = total + np.where(top | inside, weight * phase, 0.0)
     if order == 2:
         gain = next_order(batch, energies, inside, low_q > 0)
