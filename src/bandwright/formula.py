@@ -15,7 +15,7 @@ from functools import lru_cache
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.errors import MaterialError, close_matches
+from .errors import MaterialError, close_matches
 
 Value = float | npt.NDArray[np.float64]
 #: one sublattice: (element, fraction) in the order written

@@ -14,9 +14,9 @@ from decimal import Decimal
 from itertools import groupby
 from typing import TYPE_CHECKING, Any
 
-from bandwright import frames
-from bandwright.errors import StackFileError, close_matches
-from bandwright.quantities import (
+from . import frames
+from .errors import StackFileError, close_matches
+from .quantities import (
     as_density,
     as_energy,
     as_field,
@@ -25,9 +25,9 @@ from bandwright.quantities import (
     number_text,
     show,
 )
-from bandwright.stack import Layer, Repeat, Stack
-from bandwright.stackfile.keys import PLAIN, SHAPED, UNITS, column, entries_of, layer_from
-from bandwright.stackfile.shapetext import shape_text, shape_value
+from .stack import Layer, Repeat, Stack
+from .stackfile.keys import PLAIN, SHAPED, UNITS, column, entries_of, layer_from
+from .stackfile.shapetext import shape_text, shape_value
 
 if TYPE_CHECKING:
     import pandas as pd

@@ -14,13 +14,13 @@ import re
 from pathlib import Path
 from typing import Any
 
-from bandwright.errors import BandwrightError, MaterialError, StackFileError, close_matches
-from bandwright.formula import letters
-from bandwright.quantities import length_text
-from bandwright.stack import Layer, Repeat, Stack
-from bandwright.stackfile import read_stack
-from bandwright.stackfile.keys import LAYER_KEYS, SHAPED, entries_of, layer_from
-from bandwright.stackfile.shapetext import is_pair, shape_text, shape_value
+from .errors import BandwrightError, MaterialError, StackFileError, close_matches
+from .formula import letters
+from .quantities import length_text
+from .stack import Layer, Repeat, Stack
+from .stackfile import read_stack
+from .stackfile.keys import LAYER_KEYS, SHAPED, entries_of, layer_from
+from .stackfile.shapetext import is_pair, shape_text, shape_value
 
 _GROUP = re.compile(r"(?P<times>\S+?)\s*[x×*]\s*\((?P<inner>.*)\)", re.DOTALL)
 _LAYER = re.compile(

@@ -1,5 +1,5 @@
 """Materials: files, mixing of binaries to alloys, and the edge, mass and gap that follow."""
 
-from bandwright.materials.library import BandPoint, Library
+from .library import BandPoint, Library
 
 __all__ = ["BandPoint", "Library"]

@@ -6,9 +6,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-from bandwright import formula
-from bandwright.errors import MaterialError, close_matches
-from bandwright.materials.numbers import (
+from .. import formula
+from ..errors import MaterialError, close_matches
+from .numbers import (
     C11,
     C12,
     ENERGY,

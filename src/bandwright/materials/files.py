@@ -13,10 +13,10 @@ from importlib.resources.abc import Traversable
 from pathlib import Path
 from typing import Any
 
-from bandwright import formula
-from bandwright.errors import MaterialError, close_matches
-from bandwright.materials.entries import Alloy, Binary, read_alloy, read_binary
-from bandwright.materials.numbers import Reader
+from .. import formula
+from ..errors import MaterialError, close_matches
+from .entries import Alloy, Binary, read_alloy, read_binary
+from .numbers import Reader
 
 SHIPPED = "bandwright_materials"
 

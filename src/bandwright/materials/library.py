@@ -11,13 +11,13 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from bandwright import formula, strain
-from bandwright.errors import BandwrightError, MaterialError, UnknownName, close_matches
-from bandwright.formula import Composition, Value
-from bandwright.materials.entries import Route
-from bandwright.materials.files import Catalogue, Entries, read_file
-from bandwright.materials.listing import Row, Shown, direct_text, facts, route_text
-from bandwright.materials.mixing import Mix
+from .. import formula, strain
+from ..errors import BandwrightError, MaterialError, UnknownName, close_matches
+from ..formula import Composition, Value
+from .entries import Route
+from .files import Catalogue, Entries, read_file
+from .listing import Row, Shown, direct_text, facts, route_text
+from .mixing import Mix
 
 #: a composition with gaps closer than this at Gamma and at X or L is called direct [eV]
 _EVEN = 1e-9

@@ -7,12 +7,12 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from bandwright.materials.entries import QUANTITIES, Mixed, Route
-from bandwright.materials.mixing import Mix
-from bandwright.materials.numbers import Fit, Number
+from .entries import QUANTITIES, Mixed, Route
+from .mixing import Mix
+from .numbers import Fit, Number
 
 if TYPE_CHECKING:
-    from bandwright.materials.library import BandPoint
+    from .library import BandPoint
 
 
 class Row(NamedTuple):

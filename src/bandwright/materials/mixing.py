@@ -18,12 +18,12 @@ from itertools import combinations
 
 import numpy as np
 
-from bandwright import formula
-from bandwright.errors import MaterialError, UnknownName, close_matches
-from bandwright.formula import Composition, Value
-from bandwright.materials.entries import GAPS, Alloy, Binary, Mixed
-from bandwright.materials.files import Catalogue
-from bandwright.materials.numbers import Fit
+from .. import formula
+from ..errors import MaterialError, UnknownName, close_matches
+from ..formula import Composition, Value
+from .entries import GAPS, Alloy, Binary, Mixed
+from .files import Catalogue
+from .numbers import Fit
 
 _NEEDED = {
     **dict.fromkeys(("c11", "c12", "a_c", "a_v"), "to strain it to a substrate"),

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from decimal import Decimal
 from typing import Any
 
-from bandwright.errors import MaterialError, close_matches
+from ..errors import MaterialError, close_matches
 
 _TEXT = re.compile(r"([-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?)\s*([^\d\s.,].*)?")
 

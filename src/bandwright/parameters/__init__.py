@@ -24,10 +24,9 @@ import re
 from dataclasses import dataclass
 from decimal import Decimal
 
-from bandwright.errors import BandwrightError, StackError, UnknownName, close_matches
-from bandwright.quantities import field_text, temperature_text, voltage_text
-from bandwright.stack import Stack, Written
-
+from ..errors import BandwrightError, StackError, UnknownName, close_matches
+from ..quantities import field_text, temperature_text, voltage_text
+from ..stack import Stack, Written
 from .fractions import first_fraction, mixed_sites, with_fraction
 from .layers import finite, number_of, numbers_of, replaced
 

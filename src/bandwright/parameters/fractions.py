@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from decimal import Decimal
 
-from bandwright.errors import StackError
-from bandwright.formula import Sublattice, letters, parse
-from bandwright.quantities import number_text
+from ..errors import StackError
+from ..formula import Sublattice, letters, parse
+from ..quantities import number_text
 
 SITES = ("composition", "anion_composition")
 

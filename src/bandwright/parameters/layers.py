@@ -7,12 +7,11 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Any, NamedTuple
 
-from bandwright.errors import BandwrightError, StackError, UnknownName, close_matches
-from bandwright.formula import Sublattice
-from bandwright.quantities import Density, Length, field_text, number_text
-from bandwright.shapes import Flat, Linear, Quadratic, Shape
-from bandwright.stack import Layer, Written
-
+from ..errors import BandwrightError, StackError, UnknownName, close_matches
+from ..formula import Sublattice
+from ..quantities import Density, Length, field_text, number_text
+from ..shapes import Flat, Linear, Quadratic, Shape
+from ..stack import Layer, Written
 from .fractions import SITES, first_fraction, mixed_sites, with_fraction
 
 _UNITS = {"x": "", "y": "", "edge": "eV", "mass": "m0", "gap": "eV", "nonparabolicity": "1/eV"}

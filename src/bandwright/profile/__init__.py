@@ -1,6 +1,6 @@
 """Stack -> Profile: smooth sections of edge, mass and gap, the one thing solvers read."""
 
-from bandwright.profile.sections import (
+from .sections import (
     ZERO,
     Curve,
     LayerFacts,

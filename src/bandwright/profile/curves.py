@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.polynomial import chebyshev, polynomial
 
-from bandwright.profile.sections import Curve, Floats, Polynomial, Sampled
+from .sections import Curve, Floats, Polynomial, Sampled
 
 _DEGREE = 24
 _NODES = np.cos(np.pi * (np.arange(_DEGREE + 1) + 0.5) / (_DEGREE + 1))

@@ -12,9 +12,8 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
-from bandwright.errors import BandwrightError, StackFileError
-from bandwright.stack import Layer, Repeat, Stack
-
+from ..errors import BandwrightError, StackFileError
+from ..stack import Layer, Repeat, Stack
 from .keys import LAYER_KEYS, SHAPED, STACK_KEYS, check_keys, layer_from, place, settings
 from .points import joined, read_points, tabulated
 from .writer import dumps

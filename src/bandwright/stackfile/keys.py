@@ -9,10 +9,10 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from typing import Any
 
-from bandwright import quantities as q
-from bandwright.errors import StackFileError, close_matches
-from bandwright.shapes import Flat, Function, Points, Quadratic, Shape
-from bandwright.stack import Layer, Stack, numbered_layer
+from .. import quantities as q
+from ..errors import StackFileError, close_matches
+from ..shapes import Flat, Function, Points, Quadratic, Shape
+from ..stack import Layer, Stack, numbered_layer
 
 #: what may vary along a layer: key -> what writes one float of it
 SHAPED: Mapping[str, Callable[[float], str | float]] = {

@@ -8,10 +8,9 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from bandwright.errors import StackFileError, close_matches
-from bandwright.shapes import Function, Points
-from bandwright.stack import Layer, Stack, layer_name
-
+from ..errors import StackFileError, close_matches
+from ..shapes import Function, Points
+from ..stack import Layer, Stack, layer_name
 from .keys import UNITS, column
 
 

@@ -8,8 +8,7 @@ from __future__ import annotations
 import re
 from typing import Any
 
-from bandwright.quantities import number_text
-
+from ..quantities import number_text
 from .keys import GRADINGS
 
 

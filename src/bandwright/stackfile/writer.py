@@ -6,9 +6,8 @@ import os
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from bandwright.errors import StackFileError
-from bandwright.stack import Layer, Repeat, Stack
-
+from ..errors import StackFileError
+from ..stack import Layer, Repeat, Stack
 from .keys import entries_of, settings
 
 _ESCAPES = {'"': '\\"', "\\": "\\\\", "\b": "\\b", "\t": "\\t", "\n": "\\n", "\f": "\\f"}
