@@ -156,3 +156,23 @@ def test_accuracy_on_graded_faces(kind, order):
     assert len(errors) > 25
     assert median < 0.02
     assert most < 0.15
+
+
+@pytest.mark.parametrize("inverse_gap", [0.0, 0.7])
+@pytest.mark.parametrize("thickness", [1.0, 2.0, 4.0])
+def test_cutting_a_short_grade_changes_nothing(thickness, inverse_gap):
+    outer, well = flat(10, 0.35, 0.09, 2.0), flat(6, 0.0, 0.067, 1.2)
+    c = 0.3 / thickness**2
+
+    def part(start, stop):
+        return Section(stop - start, poly(c * start**2, 2 * c * start, c), poly(0.07),
+                       poly(inverse_gap))
+
+    cuts = [0.0, 0.3 * thickness, 0.55 * thickness, thickness]
+    parts = [part(a, b) for a, b in zip(cuts[:-1], cuts[1:], strict=True)]
+    for order in (1, 2):
+        whole = phase.levels(profile(outer, well, part(0, thickness), outer), 0, 0.34,
+                             phase_order=order)
+        again = phase.levels(profile(outer, well, *parts, outer), 0, 0.34, phase_order=order)
+        assert len(whole) >= 2
+        assert again == pytest.approx(whole, abs=2e-9)
