@@ -41,6 +41,25 @@ def test_a_plain_well_needs_none():
 # -- layers -----------------------------------------------------------------------------------
 
 
+def test_nothing_bound_names_the_outer_layer_that_lets_electrons_out():
+    capped = solve(f"{WELL}, 10 nm GaAs", {"substrate": "GaAs"})
+    text = said(capped, "nothing is bound")
+    assert "above 0 meV, the edge of layer 4 (GaAs), leaves through it" in text
+    assert "leave out a cap or buffer" in text and "ends = 'wall'" in text
+    buffered = solve(f"10 nm GaAs, {WELL}", {"substrate": "GaAs"})
+    assert "the edge of layer 1 (GaAs)" in said(buffered, "nothing is bound")
+    for mended in (WELL, f"{WELL}, 10 nm GaAs"):
+        ends = "open" if mended == WELL else "wall"
+        assert said(solve(mended, {"substrate": "GaAs", "ends": ends}), "is bound") is None
+
+
+def test_no_level_under_the_limit_asked():
+    assert "no level below 5 meV; to look higher" in said(solve(WELL, below="5 meV"), "no level")
+    in_field = solve(WELL, {"field": "20 kV/cm"}, below="5 meV")
+    assert "no level below 5 meV" in said(in_field, "no level")
+    assert said(solve(WELL, below="0.1 eV"), "no level") is None
+
+
 def test_a_layer_over_a_micrometre():
     text = said(solve("30 nm Al0.28Ga0.72As, 6.2 um GaAs, 30 nm Al0.28Ga0.72As", at_most=2), "unit")
     assert text == (

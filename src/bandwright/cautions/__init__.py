@@ -11,7 +11,7 @@ import warnings
 from ..errors import BandwrightWarning
 from ..levels import Levels
 from .layers import charges, directions, materials, thicknesses
-from .states import boxes, clusters, counts, phases, tops, two_band
+from .states import boxes, clusters, counts, nothing, phases, tops, two_band
 from .strained import critical_thickness, strains
 
 __all__ = ["at_once", "collect", "critical_thickness", "warn"]
@@ -26,6 +26,7 @@ def at_once(levels: Levels) -> tuple[str, ...]:
     """
     return (
         *counts(levels),
+        *nothing(levels),
         *thicknesses(levels),
         *materials(levels),
         *strains(levels),

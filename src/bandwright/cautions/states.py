@@ -7,6 +7,7 @@ from itertools import groupby
 import numpy as np
 
 from ..levels import Levels
+from ..levels.ranges import open_edge
 from ..profile import Profile
 from .words import listed, numbered
 
@@ -44,6 +45,29 @@ def counts(levels: Levels) -> list[str]:
             " finer tolerance, or move below away from a level"
         )
     return texts
+
+
+def nothing(levels: Levels) -> list[str]:
+    """Return why there is no level, and how to get one."""
+    if len(levels.energies):
+        return []
+    profile, high = levels.profile, levels.parts[-1].span.high
+    edge = open_edge(profile)
+    if edge is None or profile.field != 0.0 or abs(high - edge) > _ROUNDING:
+        return [
+            f"there is no level below {high * 1e3:.4g} meV; to look higher up, give a higher"
+            " below"
+        ]
+    first, last = profile.sections[0], profile.sections[-1]
+    at_first = profile.ends[0] == "open" and first.edge.value(0.0) <= edge + _ROUNDING
+    name = profile.name(0 if at_first else len(profile.sections) - 1)
+    face = first.edge.value(0.0) if at_first else last.edge.value(last.thickness)
+    return [
+        f"nothing is bound: an electron above {face * 1e3:.4g} meV, the edge of {name}, leaves"
+        " through it, as the outer layer goes on for ever at an open end; put a barrier outside,"
+        " leave out a cap or buffer that is no part of the problem, or say ends = 'wall' or how"
+        " high to look, below"
+    ]
 
 
 def boxes(levels: Levels) -> list[str]:
