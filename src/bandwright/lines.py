@@ -235,7 +235,7 @@ class Lines:
         if left_out and not self.of_box:
             texts.append(
                 f"lines of the {left_out} level{'s' if left_out > 1 else ''} that belong to the"
-                " closed box are left out; lines(of_box=True) shows them"
+                " closed box are left out; lines(of_box=True) shows them, in the shell --of-box"
             )
         return texts
 
@@ -279,6 +279,8 @@ def lines_of(
     ------
     QuantityError
         If ``window`` is no pair of wavelengths, or ``strength`` no number from 0.
+    SolveError
+        If the levels were found by the phase integral, which gives energies only.
 
     Examples
     --------
@@ -289,7 +291,10 @@ def lines_of(
     >>> [line.name for line in levels.lines(window=("8 um", "12 um"), strength=0.5).rows]
     ['3 to 2']
     """
-    return Lines(levels, read_window(window), read_strength(strength), bool(of_box))
+    lines = Lines(levels, read_window(window), read_strength(strength), bool(of_box))
+    if levels.method == "phase-integral":
+        _ = levels.states  # raises here, not first where the lines are read
+    return lines
 
 
 def read_window(window: Sequence[object] | None) -> tuple[float | None, float | None]:

@@ -160,6 +160,7 @@ def test_levels_of_the_box_are_left_out_unless_asked():
     number = int(levels.of_box.sum())
     assert [t for t in lines.cautions if t.startswith(f"lines of the {number} level")]
     assert not [t for t in levels.lines(of_box=True).cautions if t.startswith("lines of the")]
+    assert levels.lines().cautions[-1].endswith("shows them, in the shell --of-box")
 
 
 def test_window_and_strength():
@@ -213,7 +214,7 @@ def test_a_line_that_is_not_there_names_those_that_are():
 def test_the_phase_integral_alone_has_no_lines():
     levels = bw.solve(well(), method="phase-integral")
     with pytest.raises(SolveError, match="lines need method = 'shooting'"):
-        _ = levels.lines().table
+        levels.lines()  # here, not first where a table or a text is made of them
 
 
 def test_nothing_is_made_before_it_is_asked():

@@ -150,6 +150,28 @@ def test_lines_text_names_the_line_of_the_budget_and_ends_in_safety(flat):
 def test_lines_text_without_a_line(flat):
     said = text.lines_text(flat.lines(window=("1 um", "1.1 um")))
     assert "\nno line\n" in said and "what moves" not in said
+    assert "free-electron mass" not in said
+
+
+def test_lines_say_whose_mass_an_oscillator_strength_is_with(flat):
+    note = "oscillator strengths are with the free-electron mass, wavelengths in vacuum"
+    assert f"\nnote       {note}\n" in text.lines_text(flat.lines())
+    assert f"<b>note</b> {note}" in html.lines_html(flat.lines())
+
+
+def test_html_of_lines_has_what_was_solved_and_the_budget(flat):
+    page = html.lines_html(flat.lines())
+    assert page.startswith(html.html_facts(facts.facts(flat)))
+    head, *_ = text.budget_text(flat.lines())
+    assert head.startswith("what moves 2 to 1") and f"<div>{head}</div><table>" in page
+    assert "+1 ML" in page
+    assert "what moves" not in html.lines_html(flat.lines(window=("1 um", "1.1 um")))
+
+
+def test_phase_integral_alone_claims_no_count(flat):
+    said = str(bw.solve(flat.stack, method="phase-integral"))
+    assert "2 levels below" in said and "by the phase integral alone, none counted" in said
+    assert "approximates nothing" in said and "the count is" not in said
 
 
 def test_failed_designs_are_told_below_the_table():

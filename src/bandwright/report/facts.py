@@ -93,7 +93,8 @@ def completeness(levels: Levels) -> str:
     count = len(levels.energies)
     noun = "level" if count == 1 else "levels"
     if levels.method != "shooting":
-        return f"{count} {noun} below {high} by the {levels.method} alone, none counted"
+        by = levels.method.replace("-", " ")
+        return f"{count} {noun} below {high} by the {by} alone, none counted"
     proof = "none missing by count" if levels.complete else "the counts do not prove it complete"
     return f"{count} {noun} between {low} and {high}, {proof}"
 

@@ -7,9 +7,9 @@ from html import escape
 from typing import TYPE_CHECKING, Any
 
 from .data import columns_of
-from .facts import SAFETY, Fact, facts
+from .facts import Fact, facts
 from .grid import DIGITS, cell, digits_for, unit_of
-from .text import level_columns, level_notes
+from .text import budget_parts, level_columns, level_notes, line_notes
 
 if TYPE_CHECKING:
     from ..levels import Levels
@@ -63,7 +63,8 @@ def levels_html(levels: Levels) -> str:
 
 
 def lines_html(lines: Lines) -> str:
-    """Return lines as HTML: the table, the cautions, the safety line."""
-    said = [("caution", text) for text in lines.cautions] + [("safety", SAFETY)]
+    """Return lines as HTML: what was solved, the table, the error budget, what to beware of."""
     table = html_table(columns_of(lines.table), digits_for(lines.levels.tolerance))
-    return table + html_facts(said)
+    head, columns, notes = budget_parts(lines)
+    budget = f"<div>{escape(head)}</div>{html_table(columns)}{html_facts(notes)}" if head else ""
+    return html_facts(facts(lines.levels)) + table + budget + html_facts(line_notes(lines))

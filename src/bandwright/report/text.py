@@ -24,6 +24,11 @@ ONE_MATRIX = (
     "exact here: on this stack phase integral and shooting are one and the same matrix, so that "
     "their agreement is no evidence; the count is."
 )
+NO_APPROXIMATION = (
+    "exact here: on this stack the phase integral is the very matrix that shooting solves, and "
+    "approximates nothing."
+)
+FREE_MASS = "oscillator strengths are with the free-electron mass, wavelengths in vacuum"
 
 
 def paragraph(label: str, text: str) -> list[str]:
@@ -89,7 +94,8 @@ def level_columns(levels: Levels) -> tuple[Columns, dict[str, str]]:
 
 def level_notes(levels: Levels) -> list[Fact]:
     """Return what must be read with the levels: where there is no evidence, and the cautions."""
-    note = [("note", ONE_MATRIX)] if levels.phase_exact and len(levels.table) else []
+    exact = ONE_MATRIX if levels.method == "shooting" else NO_APPROXIMATION
+    note = [("note", exact)] if levels.phase_exact and len(levels.table) else []
     return note + [("caution", text) for text in levels.cautions]
 
 
@@ -99,17 +105,26 @@ def levels_text(levels: Levels) -> str:
     return page(sheet(facts(levels)), table, sheet(level_notes(levels)))
 
 
-def budget_text(lines: Lines) -> list[str]:
-    """Return the error budget of the main line, with its name above."""
+def budget_parts(lines: Lines) -> tuple[str, Columns, list[Fact]]:
+    """Return the error budget of the main line: its heading, its columns, its remarks.
+
+    All three are empty where there is no line.
+    """
     line = lines.main
     if line is None:
-        return []
+        return "", {}, []
     wavelength = cell("wavelength_um", line.wavelength_um, digits_for(lines.levels.tolerance))
-    head = f"what moves {line.name}, {wavelength} um:"
     columns = columns_of(lines.error_budget(line))
     # a sentence says in words what its row says in numbers, and its remark
     said = zip(columns.pop("sentence"), columns.pop("remark"), strict=True)
-    return [head, *grid(columns), *sheet(("note", text) for text, remark in said if remark)]
+    notes = [("note", text) for text, remark in said if remark]
+    return f"what moves {line.name}, {wavelength} um:", columns, notes
+
+
+def budget_text(lines: Lines) -> list[str]:
+    """Return the error budget of the main line, with its name above."""
+    head, columns, notes = budget_parts(lines)
+    return [head, *grid(columns), *sheet(notes)] if head else []
 
 
 def lines_text(lines: Lines) -> str:
@@ -119,9 +134,15 @@ def lines_text(lines: Lines) -> str:
     return page(sheet(facts(lines.levels)), table, budget_text(lines), lines_notes(lines))
 
 
+def line_notes(lines: Lines) -> list[Fact]:
+    """Return what must be read with the lines: whose mass, the cautions, the safety line."""
+    note = [("note", FREE_MASS)] if lines.strongest else []
+    return [*note, *(("caution", text) for text in lines.cautions), ("safety", SAFETY)]
+
+
 def lines_notes(lines: Lines) -> list[str]:
-    """Return the cautions of lines and the safety line."""
-    return cautions_text(lines.cautions) + sheet([("safety", SAFETY)])
+    """Return `line_notes` as text."""
+    return sheet(line_notes(lines))
 
 
 def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
