@@ -9,14 +9,15 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from .errors import BandwrightError, SolveError
+from .errors import BandwrightError, SolveError, StackError
 from .frames import frame
 from .levels import Levels
 from .levels.ranges import Range
 from .levels.result import Part
-from .levels.solving import Request, read_request, shoot, span_of
+from .levels.solving import Request, check_stack, read_request, shoot, span_of
 from .profile import Profile
 from .profile.build import build_profile
+from .quantities import show
 from .solver import Solution
 from .solver.family import solve_family
 from .stack import Stack
@@ -134,6 +135,8 @@ def solve_many(
     ------
     QuantityError, SolveError
         If an argument is wrong for every stack. What is wrong with one stack is its result.
+    StackError
+        If ``stacks`` is no list of stacks, or holds something else.
 
     Examples
     --------
@@ -150,7 +153,10 @@ def solve_many(
     results: list[Levels | BandwrightError] = []
     alone = 0
     batch: list[Stack] = []
-    for stack in stacks:
+    if isinstance(stacks, Stack | str) or not isinstance(stacks, Iterable):
+        raise StackError(f"stacks: got {show(stacks)}; give a list of stacks, [stack, ...]")
+    for number, stack in enumerate(stacks):
+        check_stack(stack, f"stack {number}")
         batch.append(stack)
         if len(batch) == chunk:
             alone += _solve_batch(batch, request, results)

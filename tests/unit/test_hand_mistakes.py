@@ -121,6 +121,18 @@ def test_a_bare_number_shows_the_fix():
         bw.Layer(6.2, "GaAs")
 
 
+def test_text_where_a_stack_is_due():
+    with pytest.raises(StackError, match=r"stack: got '5 nm GaAs'; .*parse_line\(text\) from a"):
+        bw.solve("5 nm GaAs")
+    with pytest.raises(StackError, match=r"stacks: got '5 nm GaAs'; give a list of stacks"):
+        bw.solve_many("5 nm GaAs")
+    stack = bw.parse_line("9 nm AlAs, 5 nm GaAs, 9 nm AlAs")
+    with pytest.raises(StackError, match=r"stacks: got Stack\(.*; give a list of stacks"):
+        bw.solve_many(stack)
+    with pytest.raises(StackError, match=r"stack 1: got 'x.toml'; .*read_stack\(path\) reads"):
+        bw.solve_many([stack, "x.toml"])
+
+
 def test_indirect_barrier(capsys):
     out = printed(capsys, "30 nm AlAs, 6.2 nm GaAs, 30 nm AlAs", "--substrate", "GaAs")
     assert "caution layer 1 (AlAs), layer 3 (AlAs): indirect gap; the edge at X lies" in out

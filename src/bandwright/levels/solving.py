@@ -8,10 +8,10 @@ from typing import NamedTuple
 import numpy as np
 
 from .. import phase
-from ..errors import SolveError, close_matches
+from ..errors import SolveError, StackError, close_matches
 from ..profile import Profile
 from ..profile.build import build_profile
-from ..quantities import as_energy
+from ..quantities import as_energy, show
 from ..solver import lowest_edge, solve_profile
 from ..stack import Stack
 from .ranges import Range, ranges
@@ -74,6 +74,7 @@ def solve(
     >>> [round(float(energy) * 1e3, 3) for energy in bw.solve(stack).energies]
     [30.539, 120.015, 243.967]
     """
+    check_stack(stack, "stack")
     request = read_request(below, at_most, tolerance, group, method, phase_order, bands)
     profile = build_profile(stack, bands)
     spans = span_of(profile, request)
@@ -124,6 +125,15 @@ def read_request(
     if bands is not None:
         _check_choice("bands", bands, ("one-band", "two-band"))
     return Request(limit, at_most, tolerance_eV, group_eV, method, phase_order, bands)
+
+
+def check_stack(stack: object, name: str) -> None:
+    """Raise a `StackError` if something else is given as a stack."""
+    if not isinstance(stack, Stack):
+        raise StackError(
+            f"{name}: got {show(stack)}; a Stack is due: read_stack(path) reads one from a file,"
+            " parse_line(text) from a line"
+        )
 
 
 def span_of(profile: Profile, request: Request) -> tuple[Range, ...]:
