@@ -25,6 +25,8 @@ if TYPE_CHECKING:
     from .errors import StackError as StackError
     from .errors import StackFileError as StackFileError
     from .errors import UnknownName as UnknownName
+    from .gradients import Gradient as Gradient
+    from .gradients import LineGradient as LineGradient
     from .levels import Levels as Levels
     from .levels import solve as solve
     from .lines import Lines as Lines
@@ -63,6 +65,7 @@ _ROOMS = {
     "levels": ("Levels", "solve"),
     "lines": ("Lines",),
     "many": ("Many", "solve_many"),
+    "gradients": ("Gradient", "LineGradient"),
     "comparison": ("compare",),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}

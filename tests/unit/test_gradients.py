@@ -244,6 +244,13 @@ def test_a_gradient_pickles():
     assert again.energies.tolist() == gradient.energies.tolist()
 
 
+def test_repr_is_one_line():
+    levels = solved(name="pair")
+    gradient = levels.gradient(["well.thickness", "temperature"])
+    assert repr(gradient) == "<Gradient: 2 parameters of <Levels: 2 of pair>>"
+    assert repr(gradient.lines([(2, 1)])) == "<LineGradient: 2 parameters of 1 lines>"
+
+
 # -- a substrate's lattice as a number ------------------------------------------------------------
 
 

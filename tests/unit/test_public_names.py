@@ -56,4 +56,4 @@ def test_version():
 
 def test_an_unknown_name():
     with pytest.raises(AttributeError, match="module 'bandwright' has no attribute 'solv'"):
-        bw.solv  # noqa: B018
+        _ = bw.solv

@@ -32,7 +32,7 @@ _STEPS = {
 }  # fmt: skip
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Gradient:
     """dE of every level by parameters of the stack, exact to first order.
 
@@ -58,6 +58,9 @@ class Gradient:
     energies: Floats
     edges: Floats
     kinked: tuple[str, ...]
+
+    def __repr__(self) -> str:
+        return f"<Gradient: {len(self.parameters)} parameters of {self.levels!r}>"
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -146,7 +149,7 @@ class Gradient:
         return LineGradient(tuple(pairs), self.parameters, photons, slopes)
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class LineGradient:
     """dE and d(wavelength) of lines by parameters of the stack, exact to first order.
 
@@ -167,6 +170,9 @@ class LineGradient:
     parameters: tuple[Parameter, ...]
     photons: Floats
     energies: Floats
+
+    def __repr__(self) -> str:
+        return f"<LineGradient: {len(self.parameters)} parameters of {len(self.pairs)} lines>"
 
     @property
     def names(self) -> tuple[str, ...]:
