@@ -179,13 +179,30 @@ def test_options_do_what_python_does(words, run):
         assert option[1] != plain[1]
 
 
-def test_field_takes_the_place_of_the_bias_a_file_has(run, tmp_path):
-    path = tmp_path / "biased.toml"
+@pytest.mark.parametrize(
+    ("has", "option", "says"),
+    [
+        ('bias = "50 mV"', ("--field", "3 kV/cm"), "to the substrate (3 kV/cm)"),
+        ('field = "3 kV/cm"', ("--bias", "36 mV"), "to the surface (20 kV/cm)"),
+        (
+            'bias = "50 mV"\nelectrons_run = "to surface"',
+            ("--field", "3 kV/cm"),
+            "to the surface (3 kV/cm)",
+        ),
+        (
+            'field = "3 kV/cm"\nelectrons_run = "to substrate"',
+            ("--bias", "36 mV"),
+            "to the substrate (20 kV/cm)",
+        ),
+    ],
+)
+def test_field_and_bias_take_the_place_of_what_a_file_has(run, tmp_path, has, option, says):
+    path = tmp_path / "driven.toml"
     path.write_text(
-        '[stack]\nbias = "50 mV"\n[[layers]]\nmaterial = "GaAs"\nthickness = "9 nm"\n'
+        f'[stack]\n{has}\n[[layers]]\nmaterial = "GaAs"\nthickness = "9 nm"\n'
         '[[layers]]\nmaterial = "Al0.3Ga0.7As"\nthickness = "9 nm"\n',
         encoding="utf-8",
     )
-    status, out, _ = run("levels", path, "--field", "3 kV/cm", "--format", "json")
+    status, out, _ = run("levels", path, *option, "--format", "json")
     assert status == 0
-    assert json.loads(out)["electrons_run"] == "to the substrate (3 kV/cm)"
+    assert json.loads(out)["electrons_run"] == says
