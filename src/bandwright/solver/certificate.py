@@ -7,8 +7,8 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.solver.find import Found, Solvable, random_vector
-from bandwright.solver.system import apply, chunks, solve_shifted
+from .find import Found, Solvable, random_vector
+from .system import apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Flags = npt.NDArray[np.bool_]

@@ -11,16 +11,16 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.profile import Profile
-from bandwright.solver.certificate import certify, halving_error
-from bandwright.solver.find import Asked, Found, find, guess_levels
-from bandwright.solver.matrix import Counts, Elements, Matrix, assemble, count_and_pivot
-from bandwright.solver.need import needed
-from bandwright.solver.propagation import local_mass
-from bandwright.solver.slices import Kind, Slices, cut, joined
-from bandwright.solver.solve import ROUGH, Solution, lowest_edge, tops
-from bandwright.solver.system import System, chunks, open_ends
+from ..constants import H2M
+from ..profile import Profile
+from .certificate import certify, halving_error
+from .find import Asked, Found, find, guess_levels
+from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
+from .need import needed
+from .propagation import local_mass
+from .slices import Kind, Slices, cut, joined
+from .solve import ROUGH, Solution, lowest_edge, tops
+from .system import System, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

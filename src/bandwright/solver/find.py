@@ -8,9 +8,9 @@ from typing import NamedTuple, Protocol
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.solver.matrix import Matrix
-from bandwright.solver.system import apply, chunks, solve_shifted
+from ..constants import H2M
+from .matrix import Matrix
+from .system import apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

@@ -5,10 +5,10 @@ from __future__ import annotations
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.errors import SolveError
-from bandwright.profile import Profile, Sampled, Section
-from bandwright.solver.propagation import local_mass
+from ..constants import H2M
+from ..errors import SolveError
+from ..profile import Profile, Sampled, Section
+from .propagation import local_mass
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

@@ -6,11 +6,11 @@ import numpy as np
 import numpy.typing as npt
 from scipy.linalg import eigh
 
-from bandwright.constants import H2M
-from bandwright.errors import SolveError
-from bandwright.solver.find import CLUSTER, Found
-from bandwright.solver.matrix import Matrix
-from bandwright.solver.system import System, apply, chunks, solve_shifted
+from ..constants import H2M
+from ..errors import SolveError
+from .find import CLUSTER, Found
+from .matrix import Matrix
+from .system import System, apply, chunks, solve_shifted
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

@@ -12,7 +12,7 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
+from ..constants import H2M
 
 Floats = npt.NDArray[np.float64]
 

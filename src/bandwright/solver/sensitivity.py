@@ -19,9 +19,9 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.profile import Profile
-from bandwright.solver.propagation import MASS_FLOOR
+from ..constants import H2M
+from ..profile import Profile
+from .propagation import MASS_FLOOR
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

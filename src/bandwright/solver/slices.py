@@ -15,10 +15,10 @@ from typing import Protocol
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.profile import Profile
-from bandwright.solver.matrix import Elements
-from bandwright.solver.propagation import (
+from ..constants import H2M
+from ..profile import Profile
+from .matrix import Elements
+from .propagation import (
     MASS_FLOOR,
     Exponent,
     half_wave_functions,

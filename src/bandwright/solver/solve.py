@@ -8,15 +8,15 @@ from functools import cached_property
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.errors import SolveError
-from bandwright.profile import Profile
-from bandwright.solver.certificate import certify, halving_error
-from bandwright.solver.find import Asked, Found, Solvable, find, guess_levels
-from bandwright.solver.need import MOST_SLICES, needed
-from bandwright.solver.polish import polish
-from bandwright.solver.slices import cut
-from bandwright.solver.states import States
-from bandwright.solver.system import System, open_ends
+from ..errors import SolveError
+from ..profile import Profile
+from .certificate import certify, halving_error
+from .find import Asked, Found, Solvable, find, guess_levels
+from .need import MOST_SLICES, needed
+from .polish import polish
+from .slices import cut
+from .states import States
+from .system import System, open_ends
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]

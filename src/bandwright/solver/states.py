@@ -13,12 +13,12 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from bandwright.constants import H2M
-from bandwright.solver.matrix import Elements
-from bandwright.solver.propagation import MASS_FLOOR, local_mass
-from bandwright.solver.sensitivity import Reach, Sensitivity, sensitivity, tail_reaches
-from bandwright.solver.slices import slice_at
-from bandwright.solver.system import System
+from ..constants import H2M
+from .matrix import Elements
+from .propagation import MASS_FLOOR, local_mass
+from .sensitivity import Reach, Sensitivity, sensitivity, tail_reaches
+from .slices import slice_at
+from .system import System
 
 Floats = npt.NDArray[np.float64]
 

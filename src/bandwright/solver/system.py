@@ -9,11 +9,11 @@ import numpy as np
 import numpy.typing as npt
 from scipy.linalg.lapack import dgtsv
 
-from bandwright.constants import H2M
-from bandwright.profile import Profile
-from bandwright.solver.matrix import Counts, Matrix, assemble, count_and_pivot
-from bandwright.solver.propagation import local_mass
-from bandwright.solver.slices import Slices
+from ..constants import H2M
+from ..profile import Profile
+from .matrix import Counts, Matrix, assemble, count_and_pivot
+from .propagation import local_mass
+from .slices import Slices
 
 Floats = npt.NDArray[np.float64]
 
