@@ -17,7 +17,6 @@ from benchmarks.timing import table, text
 
 QUICK = ("single", "stage-20", "graded-alloy", "single, two-band")
 STICKS = ("m", "1/m", "loose", "spectral")
-HAVE_MANY = hasattr(bw, "solve_many")
 
 
 def say(line="", *cells):
@@ -79,9 +78,6 @@ def with_states(cases, options):
 
 
 def families(cases, options):
-    if not HAVE_MANY:
-        say("\nsolve_many: not there")
-        return
     sticks = STICKS[:3]
     for tolerance in options.tolerance:
         say(f"\nsolve_many, {options.designs} neighbours of each case, per design, true error"
@@ -134,13 +130,12 @@ def memories(_, options):
         found = memory.of_solve(numbers, states)
         rows = [[n, k, s, most / 1e6, arrays] for n, (k, s, most, arrays) in found.items()]
         say(table(("periods", "levels", "slices", "MB", "arrays of levels x slices"), rows))
-    if HAVE_MANY:
-        say("\npeak memory of solve_many, single wells")
-        rows = []
-        for chunk in (50, 100) if options.quick else (250, 1000):
-            found = memory.of_many(chunk=chunk, numbers=tuple(chunk * k for k in (1, 2, 4)))
-            rows += [[chunk, n, most / 1e6, more / 1e6] for n, (most, more) in found.items()]
-        say(table(("chunk", "designs", "MB", "MB beyond the result"), rows))
+    say("\npeak memory of solve_many, single wells")
+    rows = []
+    for chunk in (50, 100) if options.quick else (250, 1000):
+        found = memory.of_many(chunk=chunk, numbers=tuple(chunk * k for k in (1, 2, 4)))
+        rows += [[chunk, n, most / 1e6, more / 1e6] for n, (most, more) in found.items()]
+    say(table(("chunk", "designs", "MB", "MB beyond the result"), rows))
 
 
 def rooms(cases, options):

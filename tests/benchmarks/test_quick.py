@@ -8,7 +8,7 @@ import pytest
 
 from benchmarks import breakdown, floor, growth, memory, sides, spectral, yardstick
 from benchmarks.cases import CASES, Vary
-from benchmarks.figures import HAVE_MANY, PARTS, main
+from benchmarks.figures import PARTS, main
 from benchmarks.plain import question
 from benchmarks.timing import medians, table
 
@@ -60,7 +60,6 @@ def test_neighbours_are_seeded_and_differ():
         assert case.build(Vary()) == case.stack
 
 
-@pytest.mark.skipif(not HAVE_MANY, reason="solve_many is not there")
 @pytest.mark.parametrize("name", ["single", "stage-20", "graded-alloy", "single, two-band"])
 def test_many_agrees_with_solve_and_truth(name):
     found = sides.many(CASES[name], 1e-6, designs=12, sampled=2, **short)
@@ -86,7 +85,6 @@ def test_memory_at_most_levels_times_slices():
     assert all(arrays <= MOST_ARRAYS for *_, arrays in found.values()), found
 
 
-@pytest.mark.skipif(not HAVE_MANY, reason="solve_many is not there")
 def test_memory_of_many_beyond_the_result_is_bounded():
     found = memory.of_many(numbers=(100, 400), chunk=100)
     assert found[400][1] < 1.5 * found[100][1], found
