@@ -320,7 +320,7 @@ def read_strength(strength: object) -> float | None:
     if strength is None:
         return None
     try:
-        value = float(strength)  # type: ignore[arg-type]
+        value = float(strength)  # type: ignore[arg-type]  # what has no float raises, below
     except (TypeError, ValueError):
         value = math.nan
     if not (math.isfinite(value) and value >= 0.0) or isinstance(strength, bool):
