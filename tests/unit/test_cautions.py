@@ -60,6 +60,19 @@ def test_no_level_under_the_limit_asked():
     assert said(solve(WELL, below="0.1 eV"), "no level") is None
 
 
+def test_own_numbers_that_look_like_a_slip():
+    line = "20 nm {{edge {top}, mass 0.09}}, 7 nm {{edge 0 meV, mass {mass}, label well}}, " \
+           "20 nm {{edge 200 meV, mass 0.09}}"  # fmt: skip
+    slip = solve(line.format(top="200 meV", mass=67), at_most=1)
+    assert said(slip, "decimal point").startswith("well: a mass of 67 times the free electron's")
+    slip = solve(line.format(top="235 eV", mass=0.067), at_most=1)
+    assert said(slip, "eV or meV?").startswith("layer 1 (own numbers): an edge 235 eV above")
+    plain = solve(line.format(top="200 meV", mass=0.067), at_most=1)
+    assert plain.cautions == ()
+    in_field = solve(line.format(top="0.2 eV", mass=0.067), {"field": "4000 kV/cm"}, at_most=1)
+    assert said(in_field, "eV or meV?") is None
+
+
 def test_a_layer_over_a_micrometre():
     text = said(solve("30 nm Al0.28Ga0.72As, 6.2 um GaAs, 30 nm Al0.28Ga0.72As", at_most=2), "unit")
     assert text == (

@@ -10,7 +10,7 @@ import warnings
 
 from ..errors import BandwrightWarning
 from ..levels import Levels
-from .layers import charges, directions, materials, thicknesses
+from .layers import charges, directions, materials, own_numbers, thicknesses
 from .states import boxes, clusters, counts, nothing, phases, tops, two_band
 from .strained import critical_thickness, strains
 
@@ -54,6 +54,7 @@ def collect(levels: Levels) -> tuple[str, ...]:
     """
     return (
         *at_once(levels),
+        *own_numbers(levels),
         *boxes(levels),
         *clusters(levels),
         *tops(levels),

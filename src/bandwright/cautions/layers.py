@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from ..levels import Levels
 from ..quantities import number_text
 from .words import listed
 
 #: thinner [nm] or thicker [nm] layers look like a slip of the unit
 THIN, THICK = 0.1, 1000.0
+#: own masses [free electron's] and edges above the lowest [eV] that look like one
+HEAVY, HIGH = 5.0, 10.0
 _SINGLY = 4
 
 
@@ -40,6 +44,37 @@ def thicknesses(levels: Levels) -> list[str]:
             )
     if len(odd) > _SINGLY:
         texts.append(f"{len(odd) - _SINGLY} more layers are as odd in thickness")
+    return texts
+
+
+def own_numbers(levels: Levels) -> list[str]:
+    """Return own masses and edges that look like a slip."""
+    profile = levels.profile
+    own = {fact.name for fact in profile.facts if fact.own}
+    if not own:
+        return []
+    lowest, masses, tops = np.inf, dict.fromkeys(own, 0.0), dict.fromkeys(own, -np.inf)
+    for index, (start, section) in enumerate(zip(profile.faces, profile.sections, strict=False)):
+        depth = np.linspace(0.0, section.thickness, 2 if section.tilted else 17)
+        bare = section.edge.at(depth) - profile.field * (start + depth)
+        lowest = min(lowest, float(bare.min()))
+        name = profile.name(index)
+        if name in own:
+            masses[name] = max(masses[name], float(section.mass.at(depth).max()))
+            tops[name] = max(tops[name], float(bare.max()))
+    heavy = {name: mass for name, mass in masses.items() if mass > HEAVY}
+    high = {name: top - lowest for name, top in tops.items() if top - lowest > HIGH}
+    texts = []
+    if heavy:
+        texts.append(
+            f"{listed(sorted(heavy))}: a mass of {max(heavy.values()):.4g} times the free"
+            " electron's: is the decimal point right?"
+        )
+    if high:
+        texts.append(
+            f"{listed(sorted(high))}: an edge {max(high.values()):.4g} eV above the lowest: is the"
+            " unit right, eV or meV?"
+        )
     return texts
 
 
