@@ -296,7 +296,9 @@ def _format(args: argparse.Namespace) -> str:
 
 def _write(answer: Answer, output: Path | None) -> None:
     if output is None:
-        sys.stdout.write(answer.data)
+        # a screen that can't show a letter of a label gets its code, not a traceback
+        coding = sys.stdout.encoding or "utf-8"
+        sys.stdout.write(answer.data.encode(coding, "backslashreplace").decode(coding))
         sys.stdout.flush()
     else:
         output.write_text(answer.data, encoding="utf-8")

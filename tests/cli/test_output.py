@@ -135,6 +135,16 @@ def test_a_reader_that_leaves_early_is_no_error(well):
     assert (ran.returncode, ran.stderr) == (1, "")
 
 
+def test_a_screen_without_the_letters_of_a_label_gets_their_codes():
+    ran = subprocess.run(
+        [sys.executable, "-m", "bandwright.cli", "levels",
+         "9 nm Al0.3Ga0.7As {label µ}, 5 nm GaAs, 9 nm Al0.3Ga0.7As"],
+        env={**os.environ, "PYTHONIOENCODING": "ascii"}, capture_output=True, text=True,
+    )  # fmt: skip
+    assert (ran.returncode, ran.stderr) == (0, "")
+    assert r"{label \xb5}" in ran.stdout
+
+
 @pytest.mark.skipif(not os.path.exists("/dev/full"), reason="needs a device that is always full")
 def test_a_full_disk_is_one_line(well):
     with open("/dev/full", "w") as full:
