@@ -264,11 +264,26 @@ class Levels:
 
         return collect(self)
 
-    def lines(self, **filters: Any) -> Lines:
-        """Return the lines between these levels; see `bandwright.lines.Lines`."""
+    def lines(
+        self,
+        window: Sequence[object] | None = None,
+        strength: float | None = None,
+        of_box: bool = False,
+    ) -> Lines:
+        """Return the lines between these levels.
+
+        Parameters
+        ----------
+        window : pair of wavelengths, optional
+            Vacuum wavelengths to stay between, as ``("8 um", "12 um")``; None leaves a side open.
+        strength : float, optional
+            Least oscillator strength, with the free-electron mass.
+        of_box : bool
+            Whether to show lines of levels that belong to the closed box, not to the structure.
+        """
         from ..lines import lines_of
 
-        return lines_of(self, **filters)
+        return lines_of(self, window, strength, of_box)
 
     def gradient(self, parameters: Sequence[str] | None = None) -> Gradient:
         """Return dE by parameters of the stack; see `bandwright.gradients.gradient_of`."""
