@@ -80,8 +80,9 @@ def error_budget(
     Returns
     -------
     DataFrame
-        ``what``, ``change``, ``shift_meV``, ``shift_um``, ``remark`` (a crossing, or a change too
-        large to be linear) and ``sentence``, all of it in words; empty without a line.
+        ``what``, ``change``, ``shift_meV``, ``shift_um``, ``remark`` (a crossing, copies that part,
+        or a change too large to be linear) and ``sentence``, all of it in words; empty without a
+        line.
 
     Raises
     ------
@@ -301,7 +302,7 @@ def _checked(
     except BandwrightError as error:
         return f"only for a smaller change: {error}"
     ends = {line.upper: upper, line.lower: lower}
-    renumbered = []
+    said, parted = [], []
     for number in ends:
         if number == CONTINUUM:
             continue
@@ -313,13 +314,18 @@ def _checked(
                 " compare the changed stack itself"
             )
         if places[0] != group.start:
-            renumbered.append(f"level {number} is level {places[0] + 1} then")
+            said.append(f"level {number} is level {places[0] + 1} then")
+        spread = float(np.ptp(found.energies[places]))
+        if spread > max(levels.group, LINEAR_EV):
+            parted.append(f"those of level {number} by {spread * 1e3:.2g} meV")
         ends[number] = float(np.mean(found.energies[places]))
     whole = ends[line.upper] - ends[line.lower] - line.energy_meV * 1e-3
     if abs(whole - shift) > max(LINEAR_EV, LINEAR * abs(shift)):
         shown = _signed(_wavelength_shift(line, whole))
-        renumbered.insert(0, f"not linear, the whole change gives {shown} um")
-    return "; ".join(renumbered)
+        said.insert(0, f"not linear, the whole change gives {shown} um")
+    if parted:
+        said.append(f"the mean over copies that part, {' and '.join(parted)}")
+    return "; ".join(said)
 
 
 class _Sample(NamedTuple):

@@ -316,6 +316,25 @@ def test_copies_are_followed_as_one():
     assert found["sentence"] == alone["sentence"].replace("well", "layer 2 (GaAs)")
 
 
+def test_copies_that_part_are_said_to():
+    wall, one, two = "60 nm Al0.3Ga0.7As", "8 nm GaAs {label one}", "8 nm GaAs {label two}"
+    lines = lines_of(f"{wall}, {one}, {wall}, {two}, {wall}", {"substrate": "GaAs"})
+    assert [group.stop - group.start for group in lines.levels.groups] == [2, 2]
+    table = lines.error_budget()
+    # one more monolayer in one of the wells: the other well's levels stay where they were
+    alone = lines_of(f"{wall}, {one}, {wall}", {"substrate": "GaAs"}).levels
+    thicker = alone.stack.replace(
+        layers=[*alone.stack.layers[:1], bw.Layer("8.2826625 nm", "GaAs"), alone.stack.layers[2]]
+    )
+    moved = (alone.energies - bw.solve(thicker).energies) * 1e3
+    remark = row(table, "one", "+1 ML")["remark"]
+    assert remark == (
+        "the mean over copies that part, those of level 3 by"
+        f" {moved[1]:.2g} meV and those of level 1 by {moved[0]:.2g} meV"
+    )
+    assert row(table, "temperature", "+10 K")["remark"] is None
+
+
 # -- how it is done ------------------------------------------------------------------------------
 
 
