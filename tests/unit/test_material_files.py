@@ -113,9 +113,9 @@ FORMS = [
     ),
     (
         gaas(number("gap", "form = 'varshni', value = '1.5 eV', alpha = '1 meV/K'")),
-        "binary.GaAs.gap: the form 'varshni' needs 'beta'",
+        "binary.GaAs.gap: the form 'varshni' needs 'beta': beta = ",
     ),
-    (gaas(number("gap", "value = '1.5 eV'")), "the form 'constant' needs 'valid'"),
+    (gaas(number("gap", "value = '1.5 eV'")), "the form 'constant' needs 'valid', the temp"),
     (
         gaas(number("gap", "value = '1.5 eV', valid = '0 K'")),
         r"binary.GaAs.gap.valid: got '0 K'; write a pair like \[lowest, highest\]",
@@ -123,6 +123,10 @@ FORMS = [
     (
         gaas(number("gap", "value = '1.5 eV', valid = ['9 K', '0 K']")),
         r"the range \['9 K', '0 K'\] runs downwards",
+    ),
+    (
+        gaas(number("gap", "form = 'linear', slope = '1 meV/K'")),
+        "the form 'linear' needs 'value': value = '1.519 eV'",
     ),
     (gaas(number("mass", "value = 0.067")), 'needs the temperature it holds at, like at = "0 K"'),
     (
@@ -206,6 +210,8 @@ def test_refused(text, message):
 def test_refused_outside_any_entry():
     with pytest.raises(MaterialError, match=r"house\.toml, sources.ours: got 'x'; a source names"):
         Entries("[sources]\nours = 'x'\n", "house.toml")
+    with pytest.raises(MaterialError, match='or what you measured it on: "our own luminescence'):
+        Entries("[sources]\nhouse = 'house'\n", "house.toml")
     with pytest.raises(MaterialError, match=r"write \[sources\] and lines like"):
         Entries("sources = 3\n", "house.toml")
     with pytest.raises(MaterialError, match=r"house.toml, binary: write \[binary.NAME\]"):

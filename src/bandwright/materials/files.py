@@ -74,7 +74,8 @@ def _sources(found: Any, origin: str) -> dict[str, str]:
         if not isinstance(text, str) or len(text.split()) < 2:
             raise MaterialError(
                 f"got {text!r}; a source names author, journal, year and table, "
-                'or says "from memory" or "common practice"',
+                'or says "from memory" or "common practice", or what you measured it on: '
+                '"our own luminescence, batch 7"',
                 f"{origin}, sources.{name}",
             )
     return dict(found)

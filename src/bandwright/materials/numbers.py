@@ -109,6 +109,14 @@ _FORM_KINDS = {
 }
 
 
+def _like(name: str) -> str:
+    """Return how a key of a temperature form is written."""
+    if name == "valid":
+        return ', the temperatures it is good for: valid = ["0 K", "300 K"]'
+    kind = GAP if name == "value" else _FORM_KINDS[name]
+    return f": {name} = {kind.example!r}"
+
+
 class Reader:
     """Reads the tables of one file, so that every error names file and key.
 
@@ -147,7 +155,7 @@ class Reader:
             raise self.error(
                 key,
                 'a number needs its source; add source = "author, journal, year, table", '
-                'or "from memory", or "common practice"',
+                'or "from memory", or "common practice", or what you measured it on',
             )
         if found in self.sources:
             return self.sources[found]
@@ -218,7 +226,7 @@ class Reader:
         table = self.table(key, found, ("form", "value", *names, "valid", "source"))
         for name in ("value", *names, "valid"):
             if name not in table:
-                raise self.error(key, f"the form {form!r} needs {name!r}")
+                raise self.error(key, f"the form {form!r} needs {name!r}{_like(name)}")
         numbers = [self.value(f"{key}.{n}", table[n], _FORM_KINDS[n]) for n in names] + [0.0, 0.0]
         return Fit(
             self.value(f"{key}.value", table["value"], GAP),
