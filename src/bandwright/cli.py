@@ -254,16 +254,27 @@ def run_lines(args: argparse.Namespace) -> Answer:
 
 def run_compare(args: argparse.Namespace) -> Answer:
     """Solve several stacks and return one row for each."""
-    from .comparison import compare
+    from .comparison import DEFAULT, METRICS, Solved, compare
     from .report import data, text
 
     stacks = [_stack(each, args) for each in args.stacks]
-    columns = data.columns_of(compare(stacks, **_solve_arguments(args)))
+    said: dict[Stack, tuple[str, ...]] = {}
+
+    def heard(solved: Solved) -> None:
+        said[solved.stack] = solved.levels.cautions
+
+    metrics = {**{name: METRICS[name] for name in DEFAULT}, "heard": heard}
+    table = compare(stacks, metrics, **_solve_arguments(args)).drop(columns="heard")
+    columns = data.columns_of(table)
+    cautions = [said.get(stack, ()) for stack in stacks]
     if args.format == "text":
-        return Answer(text.compare_text(stacks, columns))
+        return Answer(text.compare_text(stacks, columns, cautions))
+    beside = text.designs_cautions(cautions)
     if args.format == "csv":
-        return Answer(data.csv_text(columns))
-    return Answer(data.json_text({"designs": data.rows_of(columns)}))
+        return Answer(data.csv_text(columns), beside)
+    rows = [{**row, "cautions": list(texts)}
+            for row, texts in zip(data.rows_of(columns), cautions, strict=True)]  # fmt: skip
+    return Answer(data.json_text({"designs": rows}), beside)
 
 
 def run_materials(args: argparse.Namespace) -> Answer:

@@ -86,6 +86,21 @@ def test_what_is_not_there_is_empty_and_null(run, well):
     assert found["lines"][-1]["dipole_nm"] is None
 
 
+def test_compare_says_the_cautions_of_each_design(run, well):
+    indirect = "30 nm AlAs, 6.2 nm GaAs, 30 nm AlAs"
+    options = ("--substrate", "GaAs")
+    _, out, err = run("compare", indirect, well, "9 nm GaXs", indirect, *options)
+    assert err == "" and out.count("indirect gap") == 1
+    assert "caution    designs 1, 4: layer 1 (AlAs), layer 3 (AlAs): indirect gap" in out
+    _, out, err = run("compare", indirect, well, *options, "--format", "csv")
+    assert "indirect" not in out and "caution    design 1: layer 1 (AlAs)" in err
+    assert "heard" not in rows(out)[0]
+    _, out, err = run("compare", indirect, well, *options, "--format", "json")
+    first, second = json.loads(out)["designs"]
+    assert any("indirect gap" in text for text in first["cautions"]) and "indirect" in err
+    assert second["cautions"] == [] and "heard" not in first
+
+
 def test_compare_keeps_a_design_that_fails_with_its_reason(run, well):
     status, out, _ = run("compare", well, "5 nm Al0.3Xx0.7As", "--format", "csv")
     assert status == 0

@@ -75,7 +75,7 @@ def page(*blocks: Sequence[str]) -> str:
     return "\n\n".join("\n".join(block) for block in blocks if block) + "\n"
 
 
-def cautions_text(cautions: Sequence[str]) -> list[str]:
+def cautions_text(cautions: Iterable[str]) -> list[str]:
     """Return one paragraph a caution."""
     return sheet(("caution", text) for text in cautions)
 
@@ -145,8 +145,28 @@ def lines_notes(lines: Lines) -> list[str]:
     return sheet(line_notes(lines))
 
 
-def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
-    """Return designs side by side, what each is above."""
+def designs_cautions(cautions: Sequence[Sequence[str]]) -> list[str]:
+    """Return one paragraph a caution, the designs it is about before it.
+
+    Examples
+    --------
+    >>> designs_cautions([["off the lattice"], [], ["off the lattice"]])
+    ['caution    designs 1, 3: off the lattice']
+    """
+    about: dict[str, list[str]] = {}
+    for number, texts in enumerate(cautions, 1):
+        for text in texts:
+            about.setdefault(text, []).append(str(number))
+    return cautions_text(
+        f"design{'s' if len(numbers) > 1 else ''} {', '.join(numbers)}: {text}"
+        for text, numbers in about.items()
+    )
+
+
+def compare_text(
+    stacks: Sequence[Stack], columns: Columns, cautions: Sequence[Sequence[str]] = ()
+) -> str:
+    """Return designs side by side, what each is above, the cautions about each below."""
     legend = []
     for number, stack in enumerate(stacks, 1):
         said = (stack.name or "without a name", drive(stack))
@@ -160,7 +180,7 @@ def compare_text(stacks: Sequence[Stack], columns: Columns) -> str:
         for name, cells in columns.items()
         if name not in ("name", "reason") and any(value is not None for value in cells)
     }
-    return page(legend, grid(shown), sheet(failed))
+    return page(legend, grid(shown), sheet(failed) + designs_cautions(cautions))
 
 
 def materials_text(found: Known) -> str:
