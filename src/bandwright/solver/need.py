@@ -8,6 +8,7 @@ import numpy.typing as npt
 from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile, Sampled, Section
+from ..profile.curves import Series
 from .propagation import local_mass
 
 Floats = npt.NDArray[np.float64]
@@ -45,7 +46,7 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
         for index in np.flatnonzero(numbers.curved):
             section = profile.sections[index]
             for curve in (section.edge, section.mass, section.inverse_gap):
-                if isinstance(curve, Sampled):
+                if isinstance(curve, Sampled) and not isinstance(curve.function, Series):
                     _refuse_jump(curve, section.thickness, profile.name(int(index)))
             counts[index] = _curved_need(section, high, share)
     counts = np.maximum(counts, 1).astype(np.int64)
