@@ -18,6 +18,8 @@ from .ranges import Range, ranges
 from .result import Levels, Part
 
 METHODS = ("shooting", "phase-integral")
+#: finest tolerance [eV]
+FINEST = 1e-12
 
 
 def solve(
@@ -113,6 +115,11 @@ def read_request(
 ) -> Request:  # fmt: skip
     """Return the arguments of `solve` as floats, each checked."""
     tolerance_eV = _positive(as_energy(tolerance, "tolerance"), "tolerance")
+    if tolerance_eV < FINEST:
+        raise SolveError(
+            f"tolerance: got {tolerance_eV:g} eV, finer than rounding lets anyone check; {FINEST:g}"
+            " eV is the finest"
+        )
     group_eV = as_energy(group, "group")
     if group_eV < 0.0:
         raise SolveError("group: got a negative energy; '0 meV' lists every level")

@@ -12,6 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from ..constants import H2M
+from ..errors import SolveError
 from ..profile import Profile
 from .certificate import certify, halving_error
 from .find import Asked, Found, find, guess_levels
@@ -19,7 +20,7 @@ from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
 from .propagation import local_mass
 from .slices import Kind, Slices, cut, joined
-from .solve import ROUGH, Solution, lowest_edge, tops
+from .solve import ROUGH, Solution, lowest_edge, refuse_huge, tops
 from .system import System, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
@@ -121,10 +122,10 @@ def solve_family(
     ]
     top = np.array([max(a, min([h, *e])) for a, h, e in zip(low, high, edges, strict=True)])
     if at_most is not None:
-        counts = [needed(p, float(t), ROUGH, ends) for p, t in zip(profiles, top, strict=True)]
+        counts = _counts(profiles, top, ROUGH, ends, at_most)
         for indices, family in _families(profiles, counts, ends):
             top[indices] = tops(family, low[indices], top[indices], at_most)
-    counts = [needed(p, float(t), tolerance, ends) for p, t in zip(profiles, top, strict=True)]
+    counts = _counts(profiles, top, tolerance, ends, at_most)
     for indices, family in _families(profiles, counts, ends):
         solved = _solve_pattern(family, low[indices], top[indices], at_most, tolerance)
         for i, solution in zip(indices, solved, strict=True):
@@ -132,15 +133,33 @@ def solve_family(
     return results
 
 
+def _counts(
+    profiles: Sequence[Profile], top: Floats, tolerance: float, ends: tuple[str, str],
+    at_most: int | None,
+) -> list[Indices | None]:  # fmt: skip
+    """Return each design's slices a section; None if it is too large, as it will say alone."""
+    counts: list[Indices | None] = []
+    for profile, high in zip(profiles, top.tolist(), strict=True):
+        count = needed(profile, high, tolerance, ends)
+        try:
+            refuse_huge(profile, count, high, at_most)
+            counts.append(count)
+        except SolveError:
+            counts.append(None)
+    return counts
+
+
 def _families(
-    profiles: Sequence[Profile], counts: Sequence[Indices], ends: tuple[str, str]
+    profiles: Sequence[Profile], counts: Sequence[Indices | None], ends: tuple[str, str]
 ) -> Iterator[tuple[list[int], Family]]:
     """Yield the designs of each slice pattern, by index and as a family."""
     patterns: dict[bytes, list[int]] = {}
     for index, count in enumerate(counts):
-        patterns.setdefault(count.tobytes(), []).append(index)
-    for indices in patterns.values():
-        yield indices, Family([cut(profiles[i], counts[i]) for i in indices], ends)
+        if count is not None:
+            patterns.setdefault(count.tobytes(), []).append(index)
+    for key, indices in patterns.items():
+        pattern = np.frombuffer(key, dtype=np.int64)
+        yield indices, Family([cut(profiles[i], pattern) for i in indices], ends)
 
 
 def _solve_pattern(

@@ -22,6 +22,8 @@ Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
 _ATTEMPTS = 12
+#: most slices of a first attempt, and most slices times levels (80 MB an array)
+MOST_KEPT_SLICES, MOST_CELLS = 150_000, 10_000_000
 #: states of levels farther apart than this [eV] are told apart
 NEAREST = 1e-7
 # ... to this part of each other at a tolerance of 1e-9 eV
@@ -149,9 +151,12 @@ def solve_profile(
     edges = [end.edge for end in outside if end is not None]
     top = high = max(floor, min([high, *edges]))  # nothing is bound above an open end's edge
     if at_most is not None:
-        rough = System(cut(profile, needed(profile, high, ROUGH, ends)), ends, outside)
+        count = needed(profile, high, ROUGH, ends)
+        refuse_huge(profile, count, high, at_most)
+        rough = System(cut(profile, count), ends, outside)
         top = float(tops(rough, np.array([floor]), np.array([high]), at_most + skip)[0])
     counts = needed(profile, top, tolerance, ends)
+    refuse_huge(profile, counts, top, at_most)
     flat = profile.numbers.flat
     exact = profile.numbers.all_flat
     accuracy = min(1e-3 * tolerance, 1e-9)
@@ -183,6 +188,22 @@ def solve_profile(
         f"{len(counts)} sections need more than {int(counts.sum())} slices for a tolerance of"
         f" {tolerance:g} eV; is there a jump or kink inside a layer's shape? Split the layer"
         " there, or ask for a coarser tolerance"
+    )
+
+
+def refuse_huge(profile: Profile, counts: Indices, high: float, at_most: int | None) -> None:
+    """Raise `SolveError` before work that no memory holds, as for a thickness in a wrong unit."""
+    numbers = profile.numbers
+    levels = int(guess_levels(numbers.thickness, numbers.lowest, numbers.mass,
+                              numbers.inverse_gap, high)[0])  # fmt: skip
+    slices, kept = int(counts.sum()), min(levels, at_most or levels)
+    if slices <= MOST_KEPT_SLICES and slices * kept <= MOST_CELLS:
+        return
+    thickest = int(np.argmax(numbers.thickness))
+    raise SolveError(
+        f"about {kept:,} levels on {slices:,} slices are more than can be held; the thickest layer"
+        f" is {profile.name(thickest)} with {numbers.thickness[thickest]:,.6g} nm: is its unit"
+        " right? If so, lower below, or give at_most"
     )
 
 
