@@ -141,3 +141,19 @@ def test_splittings_far_below_a_nanovolt_are_kept():
     assert logs[2] < np.log(1e-9)
     slopes = [b - a for a, b in pairwise(logs)]
     assert slopes[0] == pytest.approx(slopes[1], rel=1e-4)
+
+
+def test_short_grades_are_said_to_be_followed():
+    flat = Section(10.0, Polynomial((0.0,)), Polynomial((0.067,)))
+    wall = Section(10.0, Polynomial((0.3,)), Polynomial((0.067,)))
+
+    def grade(thickness):
+        return Section(thickness, Polynomial((0.0, 0.0, 0.3 / thickness**2)), Polynomial((0.067,)))
+
+    short = Profile((wall, flat, grade(2.0), wall))
+    long = Profile((wall, flat, grade(40.0), wall))
+    linear = Profile((wall, Section(2.0, Polynomial((0.3, -0.15)), Polynomial((0.067,))), wall))
+    assert phase.followed(short, [0.03, 0.1]).tolist() == [True, True]
+    assert phase.followed(long, [0.03, 0.1]).tolist() == [False, False]
+    assert phase.followed(linear, [0.03]).tolist() == [False]  # Airy: exact, and not slices
+    assert phase.followed(Profile((wall, flat, wall)), [0.03]).tolist() == [False]

@@ -111,6 +111,19 @@ class Levels:
         """Whether both methods are one matrix here, so that their agreement proves nothing."""
         return phase.exact(self.profile)
 
+    @cached_property
+    def phase_followed(self) -> npt.NDArray[np.bool_]:
+        """Whether all curved stretches are too short for a phase at a level, (n_levels,).
+
+        Both methods then follow them by slices, and their agreement is little evidence.
+        """
+        followed = [
+            phase.followed(self.profile, part.energies, part.span.ends)
+            for part in self.parts
+            if len(part.energies)
+        ]
+        return np.concatenate(followed) if followed else np.zeros(0, dtype=bool)
+
     @property
     def count_checked(self) -> npt.NDArray[np.bool_]:
         """Whether the counts on halved slices agree around each level, (n_levels,)."""

@@ -38,8 +38,7 @@ def blended(batch: Batch, energies: Floats, extent: Floats, elements: Elements) 
     Linear pieces of the one-band model stay with Airy functions, which are exact; a section that
     is all there is between two walls keeps its plain condition, action = n pi.
     """
-    share = 1 - rise((extent - _BRIEF[0]) / (_BRIEF[1] - _BRIEF[0]))
-    share = np.where(batch.alone | batch.exact, 0.0, share)
+    share = shares(batch, extent)
     rows = np.flatnonzero((share > 0).any(axis=1))
     if not len(rows):
         return elements
@@ -49,6 +48,12 @@ def blended(batch: Batch, energies: Floats, extent: Floats, elements: Elements) 
         mine[rows] = np.where(share < 1, (1 - share) * mine[rows], 0.0) + np.where(
             share > 0, share * new, 0.0)
     return Elements(left, right, off, elements.clamped)
+
+
+def shares(batch: Batch, extent: Floats) -> Floats:
+    """Return what share of each piece's element comes from slices, (n_pieces, n_energies)."""
+    share = 1 - rise((extent - _BRIEF[0]) / (_BRIEF[1] - _BRIEF[0]))
+    return np.where(batch.alone | batch.exact, 0.0, share)
 
 
 def followed(batch: Batch, rows: npt.NDArray[np.int64], energies: Floats

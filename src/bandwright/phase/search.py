@@ -27,6 +27,24 @@ def exact(profile: Profile) -> bool:
     return all(section.flat for section in profile.sections)
 
 
+def followed(profile: Profile, energies: npt.ArrayLike,
+             ends: tuple[str, str] | None = None) -> npt.NDArray[np.bool_]:
+    """Return whether all curved stretches are too short for a phase at each energy.
+
+    They are then followed by slices, much as shooting does, and an agreement of both methods is
+    little evidence. False where every section is exact anyway, see `exact`.
+
+    Parameters
+    ----------
+    profile : Profile
+    energies : array_like
+        Energies [eV].
+    ends : tuple of str, optional
+        Instead of the profile's own.
+    """
+    return Plan(profile, ends).followed(np.atleast_1d(np.asarray(energies, dtype=float)))
+
+
 def _counter(plan: Plan, phase_order: int, energies: Floats) -> Counts:
     energies = np.atleast_1d(np.asarray(energies, dtype=float))
     total = np.empty(energies.shape, dtype=np.int64)

@@ -18,7 +18,7 @@ from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile, Sampled, Section
 from ..solver.matrix import Elements
-from .brief import blended
+from .brief import blended, shares
 from .corrections import between_walls, next_order, smooth_edge
 from .joints import joined
 from .maps import (
@@ -146,6 +146,21 @@ class Plan:
             left[i], right[i], off[i], clamped[i] = low[row], high[row], part.off[row], \
                 part.clamped[row]
         return Elements(left, right, off, clamped)
+
+    def followed(self, energies: Floats) -> npt.NDArray[np.bool_]:
+        """Return whether, at each energy [eV], every piece without an exact element is brief.
+
+        Such pieces are followed by slices, as shooting does; False where there are none.
+        """
+        every = np.ones(len(energies), dtype=bool)
+        some = False
+        for batch in self.batches:
+            if batch is not None and not batch.exact.all():
+                p = phases(batch, energies)
+                share = shares(batch, p.action + p.decay)
+                every &= (share[~batch.exact[:, 0]] > 0.5).all(axis=0)
+                some = True
+        return every & some
 
     def turning(self, kind: int, energies: Floats) -> Floats:
         """Return turning points of the batch of this kind, s [nm], see `Batch.turning`."""

@@ -7,6 +7,9 @@ from collections.abc import Iterable, Sequence
 from textwrap import wrap
 from typing import TYPE_CHECKING
 
+import numpy as np
+
+from ..cautions.words import numbered
 from .data import Columns, columns_of
 from .facts import SAFETY, Fact, drive, facts, grown, held_at
 from .grid import cell, digits_for, grid
@@ -23,6 +26,10 @@ LABEL = 11
 ONE_MATRIX = (
     "exact here: on this stack phase integral and shooting are one and the same matrix, so that "
     "their agreement is no evidence; the count is."
+)
+BY_SLICES = (
+    "every curved stretch is shorter than half a wave, and both methods follow it by slices: their "
+    "agreement is little evidence; the count is."
 )
 NO_APPROXIMATION = (
     "exact here: on this stack the phase integral is the very matrix that shooting solves, and "
@@ -96,6 +103,9 @@ def level_notes(levels: Levels) -> list[Fact]:
     """Return what must be read with the levels: where there is no evidence, and the cautions."""
     exact = ONE_MATRIX if levels.method == "shooting" else NO_APPROXIMATION
     note = [("note", exact)] if levels.phase_exact and len(levels.table) else []
+    if levels.method == "shooting" and not levels.phase_exact and levels.phase_followed.any():
+        numbers = numbered(np.flatnonzero(levels.phase_followed) + 1)
+        note = [("note", f"{numbers}: {BY_SLICES}")]
     return note + [("caution", text) for text in levels.cautions]
 
 
