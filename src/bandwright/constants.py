@@ -12,8 +12,6 @@ H2M: Final = float(_si.hbar**2 / (2.0 * _si.m_e) / _si.e * 1e18)
 HC: Final = float(_si.h * _si.c / _si.e * 1e9)
 #: hbar [eV fs]
 HBAR: Final = float(_si.hbar / _si.e * 1e15)
-#: Boltzmann's constant [eV / K]
-K_B: Final = float(_si.k / _si.e)
 #: photon energy of one wavenumber [eV cm]
 EV_CM: Final = HC * 1e-7
 #: photon energy of one terahertz [eV / THz]

@@ -11,17 +11,15 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 import numpy.typing as npt
 
-from ..constants import H2M
 from ..errors import SolveError
 from ..profile import Profile
 from .certificate import certify, halving_error
 from .find import Asked, Found, find, guess_levels
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
-from .propagation import local_mass
 from .slices import Kind, Slices, cut, joined
 from .solve import ROUGH, Solution, lowest_edge, refuse_huge, tops
-from .system import System, chunks, open_ends
+from .system import OpenEnd, System, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -50,7 +48,7 @@ class Family:
             self._kinds.append((rows, kind(*(np.concatenate(a, axis=-1) for a in arrays))))
         outside = [open_ends(m.profile, ends) for m in members]
         self._outside = [
-            None if pairs[0] is None else np.array(pairs).T for pairs in zip(*outside, strict=True)
+            None if same[0] is None else np.array(same).T for same in zip(*outside, strict=True)
         ]
 
     def halved(self) -> Family:
@@ -70,26 +68,18 @@ class Family:
         return self._matrix(energies, owner, slopes=True).split()
 
     def _matrix(self, energies: Floats, owner: Indices, slopes: bool) -> Matrix:
-        first, last = (
-            None if end is None else _outside(end[:, owner], energies, slopes)
-            for end in self._outside
-        )
-        return assemble(self._elements(energies, owner, slopes), first, last)
+        outside: list[Floats | None] = []
+        for numbers in self._outside:
+            if numbers is None:
+                outside.append(None)
+                continue
+            end = OpenEnd(*numbers[:, owner])
+            outside.append(end.value_and_slope(energies) if slopes else end.value(energies))
+        return assemble(self._elements(energies, owner, slopes), *outside)
 
     def _elements(self, energies: Floats, owner: Indices, slopes: bool) -> Elements:
         parts = [(rows, kind(energies, slopes, owner)) for rows, kind in self._kinds]
         return joined(parts, self.rows)
-
-
-def _outside(end: Floats, energies: Floats, slopes: bool) -> Floats:
-    """kappa/m of open ends (edge, mass, inverse gap as rows), with its slope if asked."""
-    edge, mass, inverse_gap = end
-    local, b = local_mass(energies, edge, mass, inverse_gap)
-    if not slopes:
-        return np.asarray(np.sqrt(np.maximum(edge - energies, 0.0) / (H2M * local)))
-    below = np.maximum(edge - energies, 1e-60)
-    over = np.sqrt(below / (H2M * local))
-    return np.array((over, -0.5 * over * (1.0 / below + b / local)))
 
 
 def solve_family(

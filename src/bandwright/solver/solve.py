@@ -148,7 +148,7 @@ def solve_profile(
         raise SolveError("the highest energy asked is missing; give high")
     floor = lowest_edge(profile) if low is None else low
     outside = open_ends(profile, ends)
-    edges = [end.edge for end in outside if end is not None]
+    edges = [float(end.edge) for end in outside if end is not None]
     top = high = max(floor, min([high, *edges]))  # nothing is bound above an open end's edge
     if at_most is not None:
         count = needed(profile, high, ROUGH, ends)

@@ -203,12 +203,6 @@ class States:
         """Mean square of the position of each level [nm^2], (n_levels,)."""
         return np.diag(self._moments[2]).copy()
 
-    @property
-    def spreads(self) -> Floats:
-        """Standard deviation of the position [nm], (n_levels,)."""
-        mean = np.diag(self._moments[1])
-        return np.asarray(np.sqrt(np.maximum(np.diag(self._moments[2]) - mean**2, 0.0)))
-
     @cached_property
     def probabilities(self) -> Floats:
         """Probability in each section, outer sections with their tails, (n_levels, n_sections)."""

@@ -19,11 +19,14 @@ Floats = npt.NDArray[np.float64]
 
 
 class OpenEnd(NamedTuple):
-    """An outer layer that never ends: edge [eV], mass, inverse gap [1/eV] of its outer face."""
+    """An outer layer that never ends: edge [eV], mass, inverse gap [1/eV] of its outer face.
 
-    edge: float
-    mass: float
-    inverse_gap: float
+    Floats, or arrays with one design's numbers for each energy.
+    """
+
+    edge: float | Floats
+    mass: float | Floats
+    inverse_gap: float | Floats
 
     def decay(self, energies: Floats) -> tuple[Floats, Floats]:
         """Return kappa [1/nm] and the mass m(E), below the edge (kappa = 0 above it)."""
@@ -46,10 +49,10 @@ class OpenEnd(NamedTuple):
         return pair
 
     def _mass(self, energies: Floats) -> tuple[Floats | float, Floats | float]:
-        if self.inverse_gap == 0.0:
+        if isinstance(self.inverse_gap, float) and self.inverse_gap == 0.0:
             return self.mass, 0.0
         return local_mass(
-            energies, np.array(self.edge), np.array(self.mass), np.array(self.inverse_gap)
+            energies, np.asarray(self.edge), np.asarray(self.mass), np.asarray(self.inverse_gap)
         )
 
 
