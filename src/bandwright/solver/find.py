@@ -56,6 +56,23 @@ class Asked(NamedTuple):
     guess: Indices
 
 
+class Brackets(NamedTuple):
+    """Where each level is looked for, design after design, ascending; arrays (n_levels,).
+
+    ``inner`` says which are wanted: neighbours just outside what is asked may come along, for
+    crowded brackets to see them. A level lies between ``lows`` and ``highs`` [eV] by count, and
+    near ``energies``. ``nodes`` (n_nodes, n_levels) are rough u at the free faces, if known.
+    """
+
+    owner: Indices
+    numbers: Indices
+    inner: Flags
+    lows: Floats
+    highs: Floats
+    energies: Floats
+    nodes: Floats | None = None
+
+
 class Solvable(Protocol):
     """What levels are found in: one sliced design, or a family of designs of one pattern."""
 
@@ -93,7 +110,20 @@ def find(system: Solvable, asked: Asked, accuracy: float) -> Found:
     accuracy : float
         How well the zeros of K are met [eV].
     """
-    owner, numbers, inner, lows, highs, energies = _scan(system, asked)
+    return refine(system, bracketed(system, asked), accuracy)
+
+
+def refine(system: Solvable, brackets: Brackets, accuracy: float) -> Found:
+    """Return the wanted levels of these brackets.
+
+    Parameters
+    ----------
+    system : Solvable
+    brackets : Brackets
+    accuracy : float
+        How well the zeros of K are met [eV].
+    """
+    owner, numbers, inner, lows, highs, energies, start = brackets
     single = _alone(owner, lows, highs)
     if not single.all():
         lows, highs = _isolate(system, owner, numbers, lows, highs)
@@ -102,6 +132,7 @@ def find(system: Solvable, asked: Asked, accuracy: float) -> Found:
     if not inner.all():
         owner, numbers, lows, highs = owner[inner], numbers[inner], lows[inner], highs[inner]
         energies, single = energies[inner], single[inner]
+        start = None if start is None else start[:, inner]
     nodes = np.zeros((system.nodes, len(numbers)))
     done = np.zeros(len(numbers), dtype=bool)
     for _ in range(_ROUNDS):
@@ -111,8 +142,10 @@ def find(system: Solvable, asked: Asked, accuracy: float) -> Found:
         for part in chunks(len(todo), system.rows):
             some = todo[part]
             energies[some], nodes[:, some], done[some] = _newton(
-                system, owner[some], energies[some], lows[some], highs[some], accuracy
-            )
+                system, owner[some], energies[some], lows[some], highs[some], accuracy,
+                None if start is None else start[:, some],
+            )  # fmt: skip
+        start = None
         left = np.flatnonzero(single & ~done)
         if len(left):
             lows[left], highs[left] = _bisect(
@@ -144,12 +177,8 @@ def guess_levels(
     return np.atleast_1d(phase).astype(np.int64) + 1
 
 
-def _scan(system: Solvable, asked: Asked) -> tuple[Indices, Indices, Flags, Floats, Floats, Floats]:
-    """Count on a grid of each design, and bracket every level asked.
-
-    Returns owner, number, whether the level is wanted (neighbours just outside what is asked
-    come along, for crowded brackets to see them), bracket, and a first guess of the energy.
-    """
+def bracketed(system: Solvable, asked: Asked) -> Brackets:
+    """Count on a grid of each design, and bracket every level asked."""
     sizes = 5 * asked.guess + 16
     ends = np.cumsum(sizes)
     starts = ends - sizes
@@ -175,7 +204,7 @@ def _scan(system: Solvable, asked: Asked) -> tuple[Indices, Indices, Flags, Floa
     index = np.searchsorted(keys, numbers + _APART * owner, side="right")
     lows, highs = scanned[index - 1], scanned[index]
     energies = _crossing(lows, highs, pivots[index - 1], pivots[index])
-    return owner, numbers, inner, lows, highs, energies
+    return Brackets(owner, numbers, inner, lows, highs, energies)
 
 
 def _crossing(lows: Floats, highs: Floats, first: Floats, last: Floats) -> Floats:
@@ -239,7 +268,7 @@ def random_vector(nodes: int) -> Floats:
 
 def _newton(
     system: Solvable, owner: Indices, energies: Floats, lows: Floats, highs: Floats,
-    accuracy: float,
+    accuracy: float, start: Floats | None,
 ) -> tuple[Floats, Floats, Flags]:  # fmt: skip
     """Newton on K(E) z = 0: mu = -(z.r)/(z.K'z) with z = K^-1 r, r = K'z of the step before.
 
@@ -255,10 +284,13 @@ def _newton(
     done = np.zeros(len(energies), dtype=bool)
     act = np.arange(len(energies))
     r = np.repeat(random_vector(system.nodes)[:, None], len(energies), axis=1)
+    known = start is not None
     for turn in range(_NEWTON_STEPS):
         matrix, slope = system.matrix_and_slope(energies[act], owner[act])
+        if start is not None and turn == 0:
+            r = apply(slope, start)
         z = solve_shifted(matrix, r)
-        if turn == 0:
+        if turn == 0 and not known:
             r = apply(slope, z)
             z = solve_shifted(matrix, r)
         after = apply(slope, z)
@@ -269,7 +301,7 @@ def _newton(
         energies[act] = np.where(inside, moved, energies[act])
         scale = np.sqrt(np.abs(rayleigh))
         z, r = z / scale, after / scale
-        if turn == 0:
+        if turn == 0 and not known:
             continue
         good = step * step * narrow[act] < accurate[act]
         vectors[:, act] = z
