@@ -44,7 +44,10 @@ def test_talk_loads_only_the_rooms_errors_and_cli():
         [sys.executable, "-c", code, "lines", "--help"], capture_output=True, text=True
     )
     ours = {m for m in json.loads(run.stderr.splitlines()[-1]) if m.startswith("bandwright")}
-    assert ours == {"bandwright", "bandwright.cli", "bandwright.errors"}
+    assert {m for m in ours if not m.startswith("bandwright.cli")} == {
+        "bandwright",
+        "bandwright.errors",
+    }
 
 
 def test_version_is_the_installed_one(capsys):

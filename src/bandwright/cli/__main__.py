@@ -1,0 +1,8 @@
+"""``python -m bandwright.cli``."""
+
+import sys
+
+from .door import main
+
+if __name__ == "__main__":
+    sys.exit(main())
