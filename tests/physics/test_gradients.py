@@ -27,14 +27,15 @@ STEPS = {
     "thickness": 0.015, "composition": 6e-4, "composition end": 6e-4, "substrate": 6e-4,
     "edge": 6e-4, "edge end": 6e-4, "mass": 1.5e-4, "mass end": 1.5e-4, "gap": 3e-3,
     "gap end": 3e-3, "nonparabolicity": 3e-3, "internal field": 3e-5, "field": 3e-6,
-    "bias": 3e-4, "temperature": 1.0, "substrate lattice": 3e-5,
+    "bias": 3e-4, "temperature": 1.0, "substrate lattice": 3e-5, "scale": 1e-3, "flux": 1e-3,
 }  # fmt: skip
-#: what a row compares: 0.3 nm, 0.01, 10 meV, 0.001 m0, 10 meV, 1 kV/cm, 10 mV, 10 K, 1e-4 nm
+#: what a row compares: 0.3 nm, 0.01, 10 meV, 0.001 m0, 10 meV, 1 kV/cm, 10 mV, 10 K, 1e-4 nm,
+#: a per cent of all thicknesses or of a flux
 CHANGES = {
     "thickness": 0.3, "composition": 0.01, "composition end": 0.01, "substrate": 0.01,
     "edge": 0.01, "edge end": 0.01, "mass": 1e-3, "mass end": 1e-3, "gap": 0.01, "gap end": 0.01,
     "nonparabolicity": 0.01, "internal field": 1e-4, "field": 1e-4, "bias": 0.01,
-    "temperature": 10.0, "substrate lattice": 1e-4,
+    "temperature": 10.0, "substrate lattice": 1e-4, "scale": 0.01, "flux": 0.01,
 }  # fmt: skip
 CENTRAL = {1: 3 / 4, 2: -3 / 20, 3: 1 / 60, -1: -3 / 4, -2: 3 / 20, -3: -1 / 60}
 FORWARD = {0: -137 / 60, 1: 5.0, 2: -5.0, 3: 10 / 3, 4: -5 / 4, 5: 1 / 5}

@@ -104,9 +104,10 @@ def test_every_parameter_by_default():
     gradient = levels.gradient()
     assert gradient.names == (
         "left.thickness", "left.composition", "well.thickness", "layer 3.thickness",
-        "layer 3.composition", "temperature", "field", "substrate_lattice",
+        "layer 3.composition", "temperature", "field", "all thicknesses", "flux Al", "flux Ga",
+        "substrate_lattice",
     )  # fmt: skip
-    assert gradient.energies.shape == (len(levels), 8)
+    assert gradient.energies.shape == (len(levels), 11)
     assert levels.gradient(["well.donors"]).energies == pytest.approx(0.0, abs=1e-15)
 
 
@@ -146,7 +147,7 @@ def test_no_levels_give_an_empty_gradient():
     levels = bw.solve(bw.Stack([own(20, 0.0)]))
     assert len(levels) == 0
     gradient = levels.gradient()
-    assert gradient.energies.shape == (0, 5)
+    assert gradient.energies.shape == (0, 6)
     assert len(gradient.table) == 0 and len(levels.lines().gradient().table) == 0
 
 

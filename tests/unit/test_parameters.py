@@ -37,11 +37,14 @@ def test_list():
         "layer 4.gap": ("gap", "eV", (4,)),
         "temperature": ("temperature", "K", ()),
         "field": ("field", "V/nm", ()),
+        "all thicknesses": ("scale", "", (1, 2, 3, 4, 5)),
+        "flux Al": ("flux", "", (1, 3, 5)),
+        "flux Ga": ("flux", "", (1, 2, 3, 5)),
     }
     assert list_parameters(STACK)[0] == Parameter(
         "wall.thickness", 1, "thickness", "nm", layer_numbers=(1, 5)
     )
-    assert [p.layer_number for p in list_parameters(STACK)[-2:]] == [None, None]
+    assert [p.layer_number for p in list_parameters(STACK)[-5:]] == [None] * 5
 
 
 def test_list_names_each_number_once():

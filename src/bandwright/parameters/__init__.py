@@ -15,7 +15,9 @@ Names behind the dot:
   ``x_last``, and any that varies has ``x_shift``, which moves it as a whole and reads 0.
 - ``field`` (internal), ``donors``, ``acceptors``.
 
-Without a dot: ``temperature``, ``field``, ``bias``, and ``substrate``, its composition.
+Without a dot: ``temperature``, ``field``, ``bias``, and ``substrate``, its composition. Factors on
+the stack as written, which read 1: ``all thicknesses``, and ``flux Al`` and the like, the stack
+grown with so much of that group-III element, in every layer that holds it.
 """
 
 from __future__ import annotations
@@ -25,13 +27,17 @@ from dataclasses import dataclass
 from decimal import Decimal
 
 from ..errors import BandwrightError, StackError, UnknownName, close_matches
-from ..quantities import field_text, temperature_text, voltage_text
+from ..quantities import field_text, number_text, temperature_text, voltage_text
 from ..stack import Stack, Written
+from .fluxes import flux_elements, with_flux
 from .fractions import first_fraction, mixed_sites, with_fraction
-from .layers import finite, number_of, numbers_of, replaced
+from .layers import finite, number_of, numbers_of, replaced, stretched
 
-__all__ = ["Parameter", "list_parameters", "read", "replace", "shifted"]
+__all__ = ["FLUX", "Parameter", "list_parameters", "read", "replace", "shifted"]
 
+#: what the names of factors on a flux begin with
+FLUX = "flux "
+_ALL = "all thicknesses"
 _STACK_UNITS = {"temperature": "K", "field": "V/nm", "bias": "V", "substrate": ""}
 _NUMBERED = re.compile(r"layer (\d+)")
 
@@ -51,7 +57,7 @@ class Parameter:
         one), ``"composition end"`` (one face of a graded layer), ``"edge"``, ``"mass"``,
         ``"gap"``, ``"nonparabolicity"`` (and ``"edge end"`` and so on), ``"internal field"``,
         ``"donors"``, ``"acceptors"``, ``"temperature"``, ``"field"``, ``"bias"``,
-        ``"substrate"``.
+        ``"substrate"``, ``"scale"`` (of all thicknesses), ``"flux"``.
     unit : str
         Unit of the float.
     layer_numbers : tuple of int
@@ -88,6 +94,9 @@ def list_parameters(stack: Stack) -> list[Parameter]:
     layer 2.thickness ML (2,)
     temperature K ()
     field V/nm ()
+    all thicknesses  (1, 2, 3)
+    flux Al  (1, 3)
+    flux Ga  (1, 2, 3)
     """
     found: list[Parameter] = []
     by_label: dict[str, list[Written]] = {}
@@ -109,7 +118,8 @@ def list_parameters(stack: Stack) -> list[Parameter]:
     names = ["temperature", "field" if stack.bias is None else "bias"]
     if stack.substrate is not None and mixed_sites(stack.substrate):
         names.append("substrate")
-    return found + [Parameter(name, None, name, _STACK_UNITS[name]) for name in names]
+    found += [Parameter(name, None, name, _STACK_UNITS[name]) for name in names]
+    return found + _factors(stack)
 
 
 def read(stack: Stack, name: str) -> float:
@@ -137,6 +147,9 @@ def read(stack: Stack, name: str) -> float:
     """
     if name in _STACK_UNITS:
         return _read_stack(stack, name)
+    if _is_factor(name):
+        _factor(stack, name)
+        return 1.0
     members, key = _find(stack, name)
     values = [number_of(member, key, name) for member in members]
     if len(set(values)) > 1:
@@ -181,6 +194,8 @@ def replace(stack: Stack, name: str, value: float) -> Stack:
     try:
         if name in _STACK_UNITS:
             return _replace_stack(stack, name, value)
+        if _is_factor(name):
+            return _multiplied(stack, name, value)
         members, key = _find(stack, name)
         for member in members:
             stack = stack.with_layer(member.number, replaced(member.layer, key, value))
@@ -218,7 +233,7 @@ def shifted(stack: Stack, name: str, step: float, *, monolayer_nm: float | None 
     """
     exact = Decimal(repr(float(step)))
     if monolayer_nm is not None:
-        if name in _STACK_UNITS or _find(stack, name)[1] != "thickness":
+        if "." not in name or _find(stack, name)[1] != "thickness":
             raise StackError("a step in monolayers is for a thickness", name)
         if _find(stack, name)[0][0].layer.thickness.unit == "nm":
             exact *= Decimal(repr(float(monolayer_nm)))
@@ -248,6 +263,44 @@ def _replace_stack(stack: Stack, name: str, value: float) -> Stack:
         )
     text = {"temperature": temperature_text, "field": field_text, "bias": voltage_text}[name]
     return stack.replace(**{name: text(finite(value))})
+
+
+def _factors(stack: Stack) -> list[Parameter]:
+    """Return the factors on the stack as written."""
+    every = tuple(written.number for written in stack.written())
+    fluxes = flux_elements(stack).items()
+    return [
+        Parameter(_ALL, None, "scale", "", every),
+        *(Parameter(FLUX + element, None, "flux", "", held) for element, held in fluxes),
+    ]
+
+
+def _is_factor(name: str) -> bool:
+    return name == _ALL or (name.startswith(FLUX) and "." not in name)
+
+
+def _factor(stack: Stack, name: str) -> Parameter:
+    known = {parameter.name: parameter for parameter in _factors(stack)}
+    if name not in known:
+        raise UnknownName(f"no layer of a material holds it{close_matches(name, known)}", name)
+    return known[name]
+
+
+def _multiplied(stack: Stack, name: str, factor: float) -> Stack:
+    what = "a factor on thicknesses" if name == _ALL else "a factor on a flux"
+    if finite(factor) <= 0.0:
+        raise StackError(f"got {number_text(factor)}; {what} must be above zero")
+    layers = {w.number: w.layer for w in stack.written()}
+    changed = stack
+    for number in _factor(stack, name).layer_numbers:
+        layer = layers[number]
+        new = (
+            stretched(layer, factor)
+            if name == _ALL
+            else with_flux(layer, name.removeprefix(FLUX), factor, stack)
+        )
+        changed = changed.with_layer(number, new)
+    return changed
 
 
 def _find(stack: Stack, name: str) -> tuple[list[Written], str]:

@@ -52,3 +52,25 @@ def with_fraction(formula: str, key: str, sublattice: Sublattice, value: float) 
     amounts[first], amounts[others[-1][0]] = new, rest
     mixed = {element for site in parse(formula).sublattices if len(site) > 1 for element, _ in site}
     return "".join(e + (f"{a.normalize():f}" if e in mixed else "") for e, a in amounts.items())
+
+
+def with_amounts(formula: str, amounts: dict[str, float]) -> str:
+    """Return the formula with other fractions on one mixed sublattice; the last fills it up.
+
+    Examples
+    --------
+    >>> with_amounts("In0.53Ga0.47As", {"In": 0.5, "Ga": 0.5}), with_amounts("GaAs", {"Ga": 1.0})
+    ('In0.5Ga0.5As', 'GaAs')
+    """
+    sites = parse(formula).sublattices
+    exact = {e: Decimal(repr(float(f))) for site in sites for e, f in site}
+    mixed = {element for site in sites if len(site) > 1 for element, _ in site}
+    if not mixed & amounts.keys():
+        return formula
+    *others, last = amounts
+    rest = Decimal(1)
+    for element in others:
+        exact[element] = min(rest, Decimal(repr(float(amounts[element]))))
+        rest -= exact[element]
+    exact[last] = rest
+    return "".join(e + (f"{a.normalize():f}" if e in mixed else "") for e, a in exact.items())

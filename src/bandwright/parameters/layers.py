@@ -88,7 +88,7 @@ def replaced(layer: Layer, key: str, value: float) -> Layer:
     """
     value = finite(value)
     if key == "thickness":
-        return _stretched(layer, value)
+        return stretched(layer, value / layer.thickness.value, value)
     if key in SITES:
         material = str(layer.material)
         sublattice = dict(mixed_sites(material))[key]
@@ -101,11 +101,20 @@ def replaced(layer: Layer, key: str, value: float) -> Layer:
     return layer.replace(**{base: _moved(dict(layer.shapes)[base], part, value)})
 
 
-def _stretched(layer: Layer, value: float) -> Layer:
-    """Return the layer at another thickness, everything along it at its fractional depth."""
-    if value <= 0.0:
-        raise StackError(f"got {number_text(value)}; a thickness must be above zero")
-    factor = value / layer.thickness.value
+def stretched(layer: Layer, factor: float, value: float | None = None) -> Layer:
+    """Return the layer ``factor`` times as thick, everything along it at its fractional depth.
+
+    ``value`` is the new thickness in the unit it is written in, where it is known exactly.
+
+    Raises
+    ------
+    StackError
+        If nothing would be left.
+    """
+    if factor <= 0.0:
+        shown = factor if value is None else value
+        raise StackError(f"got {number_text(shown)}; a thickness must be above zero")
+    value = factor * layer.thickness.value if value is None else value
     changes: dict[str, Any] = {key: shape.stretched(factor) for key, shape in layer.shapes}
     return layer.replace(thickness=Length(value, layer.thickness.unit), **changes)
 
