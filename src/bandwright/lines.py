@@ -128,9 +128,10 @@ class Lines:
     @cached_property
     def rows(self) -> tuple[Line, ...]:
         """Every line, those of one lower level together, its onset to the continuum last."""
-        return tuple(line for line in _every(self.levels, self.of_box) if self._shown(line))
+        return tuple(line for line in _every(self.levels, self.of_box) if self.shows(line))
 
-    def _shown(self, line: Line) -> bool:
+    def shows(self, line: Line) -> bool:
+        """Whether a line's wavelength and strength are within what was asked."""
         shortest, longest = self.window
         length = line.wavelength_um * 1e3
         if shortest is not None and length < shortest * (1.0 - 1e-12):
@@ -359,4 +360,5 @@ def continuum_edge(levels: Levels) -> float | None:
     """
     if levels.profile.field != 0.0:
         return None
-    return open_edge(levels.profile)
+    edge: float | None = open_edge(levels.profile)
+    return edge

@@ -4,9 +4,9 @@ import numpy as np
 import pytest
 
 import bandwright as bw
-from bandwright import comparison
-from bandwright.comparison import METRICS, add_metric
+from bandwright import metrics
 from bandwright.errors import QuantityError, StackError, UnknownName
+from bandwright.metrics import METRICS, add_metric
 
 DEFAULT = [
     "name", "levels", "upper", "lower", "wavelength_um", "energy_meV", "dipole_nm",
@@ -90,7 +90,7 @@ def test_chosen_metrics_and_own_ones():
 
 
 def test_a_metric_added_by_its_column(monkeypatch):
-    monkeypatch.setattr(comparison, "METRICS", dict(METRICS))
+    monkeypatch.setattr(metrics, "METRICS", dict(METRICS))
     add_metric("layers", lambda solved: len(solved.stack.grown()))
     assert bw.compare([design(8)], ["layers"])["layers"].tolist() == [3]
     with pytest.raises(StackError, match="metric 'layers' is taken; choose another name"):

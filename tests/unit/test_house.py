@@ -34,6 +34,7 @@ HOUSE = [
     "cautions",
     "lines",
     "budget",
+    "metrics",
     "comparison",
     "report",
     "cli",

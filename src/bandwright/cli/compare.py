@@ -17,7 +17,7 @@ from .words import (
 )
 
 if TYPE_CHECKING:
-    from ..comparison import Solved
+    from ..metrics import Solved
     from ..stack import Stack
 
 
@@ -31,7 +31,8 @@ def options(parser: Parser) -> None:
 
 def run(args: argparse.Namespace) -> Answer:
     """Solve several stacks and return one row for each."""
-    from ..comparison import DEFAULT, METRICS, compare
+    from ..comparison import DEFAULT, compare
+    from ..metrics import choose
     from ..report import data, text
 
     stacks = [stack_of(each, args) for each in args.stacks]
@@ -40,7 +41,7 @@ def run(args: argparse.Namespace) -> Answer:
     def heard(solved: Solved) -> None:
         said[solved.stack] = solved.levels.cautions
 
-    metrics = {**{name: METRICS[name] for name in DEFAULT}, "heard": heard}
+    metrics = {**choose(None, DEFAULT), "heard": heard}
     table = compare(stacks, metrics, **solve_arguments(args)).drop(columns="heard")
     columns = data.columns_of(table)
     cautions = [said.get(stack, ()) for stack in stacks]
