@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from bandwright import BandwrightError, Layer, MaterialError, Repeat, Stack, StackError, UnknownName
-from bandwright.parameters import Parameter, list_parameters, read, replace, shifted
+from bandwright.parameters import Parameter, find, list_parameters, read, replace, shifted
 from bandwright.shapes import Linear, Points
 
 WALL = Layer("30 nm", "Al0.28Ga0.72As", label="wall")
@@ -91,6 +91,17 @@ def test_a_label_is_one_parameter_and_a_number_is_one_layer():
         r" 25 nm; name one, as 'layer 1.thickness'",
     ):
         read(one, "wall.thickness")
+
+
+def test_find_knows_every_name_that_can_be_read():
+    for parameter in list_parameters(STACK):
+        found = find(STACK, parameter.name)
+        assert (found.name, found.unit) == (parameter.name, parameter.unit)
+        assert found.layer_numbers == parameter.layer_numbers
+    alone = find(STACK, "layer 5.composition")
+    assert (alone.layer_numbers, alone.kind) == ((5,), "composition")
+    with pytest.raises(UnknownName, match=r"^wal\.thickness: no layer has the label 'wal'; did"):
+        find(STACK, "wal.thickness")
 
 
 def test_copies_move_together():

@@ -436,3 +436,37 @@ def test_reading_texts_loads_no_pint():
         "sys.exit(sum(m in sys.modules for m in ('pint', 'numpy', 'scipy', 'pandas')))"
     )
     assert subprocess.run([sys.executable, "-c", code], check=False).returncode == 0
+
+
+@pytest.mark.parametrize(
+    ("value", "unit", "found"),
+    [
+        ("62 Å", "nm", (6.2, "nm")),
+        ("22 ML", "nm", (22.0, "ML")),
+        ("22 nm", "ML", (22.0, "nm")),
+        ("-5 meV", "eV", (-0.005, "eV")),
+        ("12 kV/cm", "V/nm", (0.0012, "V/nm")),
+        ("27 °C", "K", (300.15, "K")),
+        ("2e11 / cm^2", "nm^-3", (0.002, "nm^-2")),
+        ("0.56 / eV", "1/eV", (0.56, "1/eV")),
+        ("28 %", "", (0.28, "")),
+        (1.25, "", (1.25, "")),
+        ("0.067 m0", "m0", (0.067, "m0")),
+    ],
+)
+def test_a_value_of_the_kind_of_a_core_unit(value, unit, found):
+    assert q.as_value(value, "well.it", unit) == found
+
+
+@pytest.mark.parametrize(
+    ("value", "unit", "says"),
+    [
+        ("5 meV", "nm", "well.it: got '5 meV'; that is an energy; write a thickness such as"),
+        (5.0, "eV", "well.it: got 5.0; write '5 meV'"),
+        ("5 nm", "", "well.it: got '5 nm'; write a number such as 0.28"),
+        (math.nan, "m0", "well.it: got nan; that is not finite"),
+    ],
+)
+def test_a_value_of_another_kind(value, unit, says):
+    with pytest.raises(QuantityError, match=re.escape(says)):
+        q.as_value(value, "well.it", unit)

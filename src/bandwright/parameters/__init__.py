@@ -33,7 +33,7 @@ from .fluxes import flux_elements, with_flux
 from .fractions import first_fraction, mixed_sites, with_fraction
 from .layers import finite, number_of, numbers_of, replaced, stretched
 
-__all__ = ["FLUX", "Parameter", "list_parameters", "read", "replace", "shifted"]
+__all__ = ["FLUX", "Parameter", "find", "list_parameters", "read", "replace", "shifted"]
 
 #: what the names of factors on a flux begin with
 FLUX = "flux "
@@ -163,6 +163,32 @@ def read(stack: Stack, name: str) -> float:
             name,
         )
     return values[0].value
+
+
+def find(stack: Stack, name: str) -> Parameter:
+    """Return the parameter of a name, also where `list_parameters` lists it under its label.
+
+    Raises
+    ------
+    UnknownName, StackError
+        As `read`.
+
+    Examples
+    --------
+    >>> from bandwright.stack import Layer
+    >>> stack = Stack([Layer("6.2 nm", "GaAs", label="well")])
+    >>> find(stack, "layer 1.thickness").unit, find(stack, "field").unit
+    ('nm', 'V/nm')
+    """
+    read(stack, name)
+    if name in _STACK_UNITS:
+        return Parameter(name, None, name, _STACK_UNITS[name])
+    if _is_factor(name):
+        return _factor(stack, name)
+    members, key = _find(stack, name)
+    number = number_of(members[0], key, name)
+    numbers = tuple(member.number for member in members)
+    return Parameter(name, numbers[0], number.kind, number.unit, numbers)
 
 
 def replace(stack: Stack, name: str, value: float) -> Stack:

@@ -18,6 +18,7 @@ from .given import (
     as_mass,
     as_temperature,
     as_thickness,
+    as_value,
     as_voltage,
 )
 from .texts import (
@@ -47,6 +48,7 @@ __all__ = [
     "as_mass",
     "as_temperature",
     "as_thickness",
+    "as_value",
     "as_voltage",
     "density_text",
     "energy_text",

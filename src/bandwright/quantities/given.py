@@ -236,6 +236,43 @@ def as_mass(value: object, name: str) -> float:
     return number
 
 
+_KIND_OF = {
+    "nm": THICKNESS, "ML": THICKNESS, "eV": ENERGY, "V/nm": FIELD, "V": VOLTAGE, "K": TEMPERATURE,
+    "nm^-2": DENSITY, "nm^-3": DENSITY, "1/eV": INVERSE_ENERGY,
+}  # fmt: skip
+_UNIT_OF = {"length": "nm", "monolayers": "ML", "1/length^2": "nm^-2", "1/length^3": "nm^-3"}
+
+
+def as_value(value: object, name: str, unit: str) -> tuple[float, str]:
+    """Return a value of the kind that a core unit is of, and its core unit.
+
+    Parameters
+    ----------
+    value : str, quantity, or number where ``unit`` has no dimension
+    name : str
+    unit : str
+        Core unit as `bandwright.parameters.Parameter` has it: ``"nm"``, ``"eV"``, ..., ``"m0"``
+        or ``""``. Lengths may come back in ``"ML"``, densities per area or per volume.
+
+    Raises
+    ------
+    QuantityError
+        If the value is no finite quantity of the kind.
+
+    Examples
+    --------
+    >>> as_value("250 meV", "edge", "eV"), as_value("22 ML", "thickness", "nm")
+    ((0.25, 'eV'), (22.0, 'ML'))
+    >>> as_value("28 %", "composition", ""), as_value(0.067, "mass", "m0")
+    ((0.28, ''), (0.067, 'm0'))
+    """
+    if unit not in _KIND_OF:
+        factors = {"": "1", "m0": "1"} if unit == "m0" else {"": "1", "%": "0.01"}
+        return _plain(value, name, "0.067" if unit == "m0" else "0.28", factors), unit
+    number, dimension = _read(value, name, _KIND_OF[unit])
+    return number, _UNIT_OF.get(dimension, unit)
+
+
 def _read(value: object, name: str, kind: Kind) -> tuple[float, str]:
     """Return (core value, dimension) of a text or quantity of one kind."""
     try:
