@@ -5,8 +5,7 @@ import pytest
 
 import bandwright as bw
 from bandwright.errors import SolveError, StackError, UnknownName
-from bandwright.gradients import differences
-from bandwright.gradients.differences import slope
+from bandwright.gradients.stencil import stencil
 from bandwright.profile.build import build_profile
 
 WELL = "20 nm Al0.28Ga0.72As {label left}, 8 nm GaAs {label well}, 20 nm Al0.3Ga0.7As"
@@ -23,76 +22,20 @@ def own(thickness, edge, mass=0.067, **more):
 # -- numbers by differences ----------------------------------------------------------------------
 
 
-@pytest.mark.parametrize(
-    ("function", "exact"),
-    [
-        (lambda x: np.array([3.0 * x, -x]), [3.0, -1.0]),
-        (lambda x: np.array([x**4, x**5 - x]), [4 * 0.7**3, 5 * 0.7**4 - 1.0]),
-        (lambda x: np.array([np.exp(x), 1.0 / (1.0 + x)]), [np.exp(0.7), -1.0 / 1.7**2]),
-    ],
-)
-def test_smooth_functions_to_rounding(function, exact):
-    found = slope(function, 0.7, 0.004)
-    assert found.value == pytest.approx(exact, rel=2e-12)
-    assert not found.kinked
+@pytest.mark.parametrize("function", [lambda x: 3.0 * x, lambda x: x**6, np.exp, np.cos])
+@pytest.mark.parametrize("room", [(1.0, 1.0), (0.0, 1.0), (1.0, 0.0), (0.005, 1.0)])
+def test_a_stencil_gives_derivatives_to_rounding(function, room):
+    value = np.array([0.3, 0.7])
+    places, weights = stencil(value, *room, 0.004)
+    found = np.sum(weights * function(places), axis=0)
+    exact = (function(value + 1e-30j)).imag / 1e-30
+    assert found == pytest.approx(exact, rel=1e-11)
+    assert (places >= value - room[0] - 1e-15).all() and (places <= value + room[1] + 1e-15).all()
 
 
-@pytest.mark.parametrize("side", [1.0, -1.0])
-def test_one_side_where_the_other_is_not_allowed(side):
-    def function(x):
-        if side * x < 0.0:
-            raise StackError("outside")
-        return np.array([np.exp(x)])
-
-    assert slope(function, 0.0, 0.004).value == pytest.approx([1.0], rel=1e-10)
-
-
-def test_a_narrow_range_takes_smaller_steps():
-    def function(x):
-        if not 0.0 <= x <= 2e-3:
-            raise StackError("outside")
-        return np.array([x * x])
-
-    assert slope(function, 1e-3, 0.004).value == pytest.approx([2e-3], rel=1e-9)
-
-
-def test_no_side_gives_the_reason():
-    def function(x):
-        raise StackError(f"got {x:g}; nothing is allowed")
-
-    with pytest.raises(StackError, match="nothing is allowed"):
-        slope(function, 0.5, 0.004)
-
-
-def test_a_kink_near_by_shrinks_the_step():
-    found = slope(lambda x: np.array([abs(x - 1e-3)]), 0.0, 0.004)
-    assert found.value == pytest.approx([-1.0], rel=1e-9)
-    assert not found.kinked
-
-
-def test_a_kink_at_the_place_is_the_mean_of_both_sides_and_said():
-    found = slope(lambda x: np.array([x + abs(x), np.sin(x)]), 0.0, 0.004)
-    assert found.value == pytest.approx([1.0, 1.0], rel=1e-9)
-    assert found.kinked
-
-
-def test_few_values_are_worked_out_where_the_function_is_straight():
-    asked = []
-
-    def function(x):
-        asked.append(x)
-        return np.array([2.0 * x])
-
-    slope(function, 1.0, 0.1)
-    assert len(asked) == 5  # two steps to both sides, and the place itself
-    asked.clear()
-    assert slope(function, 1.0, 0.1, straight=True).value == pytest.approx([2.0], rel=1e-13)
-    assert len(asked) == 3
-    bent = slope(lambda x: np.array([np.exp(x)]), 1.0, 0.004, straight=True)
-    assert bent.value == pytest.approx([np.e], rel=1e-11)
-    tied = slope(lambda x: np.array([abs(x)]), 0.0, 0.1, straight=True)
-    assert tied.kinked
-    assert max(differences._CENTRAL) == 6
+def test_a_stencil_without_room_is_refused():
+    with pytest.raises(StackError, match=r"it has no room to move by 0\.024 in all"):
+        stencil(np.array([0.5]), 0.01, 0.01, 0.004)
 
 
 # -- what is listed ------------------------------------------------------------------------------

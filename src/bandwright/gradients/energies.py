@@ -1,71 +1,67 @@
-"""dE of every level by every parameter, from the states and a few profiles; nothing is solved.
+"""dE of every level by every parameter, from the states; nothing is solved, no profile is built.
 
-The states weigh any change of the profile at fixed fractional depth of its sections
-(`bandwright.solver.sensitivity`); what a parameter changes there follows from the profiles of
-stacks a few small steps away, so that zero, bias, strain and monolayers come along by themselves.
+The states weigh any change of the profile (`bandwright.solver.sensitivity`). What a parameter
+changes is linear to first order: numbers of layers, thicknesses that shift what lies behind them,
+fields, and the zero that energies count from.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from typing import Any, NamedTuple
+from collections.abc import Sequence
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
-from ..errors import StackError, UnknownName, close_matches
+from ..errors import UnknownName, close_matches
 from ..levels import Levels
-from ..materials import Library
-from ..parameters import Parameter, list_parameters, read, replace
+from ..parameters import Parameter, list_parameters
 from ..profile import Profile
-from ..profile.build import build_profile
 from ..solver.find import CLUSTER
-from ..solver.sensitivity import Sensitivity, numbers_at
-from .differences import slope
+from ..solver.sensitivity import numbers_at
+from ..stack import Stack
+from .columns import Columns, changed
+from .layout import Fold, Layout, at_points
+from .zero import zero_places, zero_slopes
 
 Floats = npt.NDArray[np.float64]
 
-#: the substrate's lattice constant [nm], which no stack holds as a number of its own
-SUBSTRATE_LATTICE = "substrate lattice"
-
-# Steps in core units, large enough for rounding, small enough for sixth order.
-_STEPS = {
-    "composition": 4e-3, "composition end": 4e-3, "substrate": 4e-3, "edge": 1e-3,
-    "edge end": 1e-3, "field": 1e-4, "internal field": 1e-4, "bias": 1e-2, "temperature": 2.0,
-    SUBSTRATE_LATTICE: 2e-4,
-}  # fmt: skip
-_SHARE = 5e-3  # of the value, for thickness, mass, gap, nonparabolicity
-#: kinds that every number of a profile is linear in, but for kinks and a bias
-_STRAIGHT = ("thickness", "edge", "edge end", "mass", "mass end", "nonparabolicity",
-             "nonparabolicity end", "internal field", "field", "bias")  # fmt: skip
+#: numbers that no stack holds as its own: name, kind, unit
+_MODEL = {
+    "substrate_lattice": ("substrate lattice", "nm"),
+    "offset_share": ("offset share", ""),
+    "offsets": ("offsets", ""),
+    "masses": ("masses", ""),
+}
 #: open edges closer than this [eV] are one edge with a kink
 _TIE = 1e-12
 #: levels closer than this many energy errors are not told apart singly
 _TOLD_APART, _ROUNDING = 100.0, 1e-15
 
 
-class EnergySlope(NamedTuple):
-    """dE by one parameter.
+class Slopes(NamedTuple):
+    """dE by parameters.
 
     Attributes
     ----------
-    energies : array (n_levels,)
+    energies : array (n_levels, n_parameters)
         [eV] per unit of the parameter.
-    edge : float
+    edges : array (n_parameters,)
         Of the lower open edge, towards larger values where both are equal; nan between walls.
-    kinked : bool
+    kinked : array of bool (n_parameters,)
         Whether both sides differ; the numbers are then their mean.
     """
 
     energies: Floats
-    edge: float
-    kinked: bool
+    edges: Floats
+    kinked: npt.NDArray[np.bool_]
 
 
 def parameters_of(levels: Levels, names: Sequence[str] | None) -> tuple[Parameter, ...]:
     """Return the parameters asked, or every one that the levels can follow.
 
-    Left out by default are donors and acceptors, whose charge is not modelled.
+    Left out by default are donors and acceptors, whose charge is not modelled, and factors on the
+    model: on masses, on own edges, and the offset share.
 
     Raises
     ------
@@ -73,11 +69,11 @@ def parameters_of(levels: Levels, names: Sequence[str] | None) -> tuple[Paramete
         If a name is none of the stack's.
     """
     known = {p.name: p for p in list_parameters(levels.stack)}
-    if levels.stack.substrate is not None:
-        name = SUBSTRATE_LATTICE.replace(" ", "_")
-        known[name] = Parameter(name, None, SUBSTRATE_LATTICE, "nm")
+    model = _model_parameters(levels.stack)
     if names is None:
-        return tuple(p for p in known.values() if p.kind not in ("donors", "acceptors"))
+        every = [p for p in known.values() if p.kind not in ("donors", "acceptors")]
+        return (*every, *(p for p in model.values() if p.kind == "substrate lattice"))
+    known |= model
     found = []
     for name in names:
         parameter = known.get(name) or _by_number(levels, name)
@@ -85,6 +81,20 @@ def parameters_of(levels: Levels, names: Sequence[str] | None) -> tuple[Paramete
             raise UnknownName(f"no parameter{close_matches(name, known)}", name)
         found.append(parameter)
     return tuple(found)
+
+
+def _model_parameters(stack: Stack) -> dict[str, Parameter]:
+    """Return the numbers of the model that can be moved in a stack."""
+    materials = [w.number for w in stack.written() if w.layer.material is not None]
+    own = [w.number for w in stack.written() if w.layer.material is None]
+    moved = {"masses": (*materials, *own), "offset_share": materials, "offsets": own}
+    if stack.substrate is not None:
+        moved["substrate_lattice"] = materials
+    return {
+        name: Parameter(name, None, kind, unit, tuple(moved[name]))
+        for name, (kind, unit) in _MODEL.items()
+        if moved.get(name)
+    }
 
 
 def _by_number(levels: Levels, name: str) -> Parameter | None:
@@ -97,82 +107,32 @@ def _by_number(levels: Levels, name: str) -> Parameter | None:
     return None
 
 
-def energy_slope(
-    levels: Levels, parameter: Parameter, known: dict[object, Any] | None = None
-) -> EnergySlope:
-    """Return dE of every level by one parameter, exact to first order.
-
-    ``known`` keeps looked-up layers from one parameter to the next.
+def energy_slopes(levels: Levels, parameters: Sequence[Parameter]) -> Slopes:
+    """Return dE of every level by parameters, exact to first order.
 
     Raises
     ------
     SolveError
         If the levels were found by the phase integral, which gives no states.
     BandwrightError
-        If no stack a step away can be built on either side; the text says why.
+        If a number can be moved to neither side; the text says why.
     """
-    weights = [states.sensitivity for states in levels.states.sets]
-    build, centre = _builder(levels, parameter, {} if known is None else known)
-
-    def answer(value: float) -> Floats:
-        profile = build(value)
-        _check_alike(levels.profile, profile, parameter.name)
-        return np.concatenate([_weighed(one, profile) for one in weights] + [_outer(profile)])
-
-    straight = parameter.kind in _STRAIGHT
-    found = slope(answer, centre, _step(parameter, centre), straight)
-    return EnergySlope(
-        found.value[:-2], _open_edge_slope(levels.profile, found.value[-2:]), found.kinked
-    )
-
-
-def _builder(
-    levels: Levels, parameter: Parameter, known: dict[object, Any]
-) -> tuple[Callable[[float], Profile], float]:
-    """Return the profile as a function of a parameter, and the parameter's value."""
-    stack, bands = levels.stack, levels.profile.bands
-    if parameter.kind == SUBSTRATE_LATTICE:
-        library = Library.with_files(stack.materials) if stack.materials else Library.shipped()
-        return (
-            lambda value: build_profile(stack, bands, substrate_lattice=value, known=known),
-            library.lattice(str(stack.substrate)),
-        )
-    name = parameter.name
-    return (
-        lambda value: build_profile(replace(stack, name, value), bands, known=known),
-        read(stack, name),
-    )
-
-
-def _step(parameter: Parameter, value: float) -> float:
-    kind = parameter.kind
-    if kind in _STEPS:
-        return _STEPS[kind]
-    return _SHARE * (abs(value) or 1.0)
-
-
-def _check_alike(one: Profile, other: Profile, name: str) -> None:
-    if len(one.sections) != len(other.sections):
-        raise StackError(
-            f"the profile falls into {len(other.sections)} sections a small step away, into"
-            f" {len(one.sections)} here; a derivative needs the same ones",
-            name,
-        )
-
-
-def _weighed(weights: Sensitivity, profile: Profile) -> Floats:
-    """Return a profile's numbers, each weighed by what it does to each level, (n_levels,)."""
-    edge, mass, inverse_gap = numbers_at(profile, weights.section, weights.share)
-    return np.asarray(
-        weights.edge @ edge + weights.mass @ mass + weights.inverse_gap @ inverse_gap
-        + weights.thickness @ profile.numbers.thickness
-    )  # fmt: skip
-
-
-def _outer(profile: Profile) -> Floats:
-    """Return the edge at both outer faces [eV]."""
-    first, last = profile.sections[0], profile.sections[-1]
-    return np.array([first.edge.value(0.0), last.edge.value(last.thickness)])
+    profile = levels.profile
+    layout = Layout(levels.stack, profile)
+    last = len(profile.sections) - 1
+    outer = at_points(np.array([0, last]), np.array([0.0, 1.0]), last + 1)
+    weights = [*(states.sensitivity for states in levels.states.sets), outer]
+    folds = [Fold(layout, one, profile.field) for one in weights]
+    columns = Columns(layout, parameters, [*folds, zero_places(layout)])
+    zero = zero_slopes(columns, parameters, len(folds))
+    rows = []
+    for place, fold in enumerate(folds):
+        own = fold.edge[:, layout.own].sum(axis=1, keepdims=True)
+        materials = fold.edge[:, ~layout.own].sum(axis=1, keepdims=True)
+        rows.append(changed(columns, place) - materials * zero.material - own * zero.own)
+    edges = [_open_edge_slope(profile, slopes) for slopes in rows.pop().T]
+    energies = np.concatenate([np.zeros((0, len(parameters))), *rows])
+    return Slopes(energies, np.array(edges), zero.kinked)
 
 
 def _open_edge_slope(profile: Profile, slopes: Floats) -> float:
@@ -180,7 +140,8 @@ def _open_edge_slope(profile: Profile, slopes: Floats) -> float:
     ends = [i for i in (0, 1) if profile.ends[i] == "open"]
     if not ends:
         return float("nan")
-    edges = _outer(profile)
+    last = len(profile.sections) - 1
+    edges, _, _ = numbers_at(profile, np.array([0, last]), np.array([0.0, 1.0]))
     low = min(edges[i] for i in ends)
     return float(min(slopes[i] for i in ends if edges[i] <= low + _TIE))
 

@@ -16,7 +16,7 @@ from ..frames import frame
 from ..levels import Levels
 from ..levels.ranges import open_edge
 from ..parameters import Parameter
-from .energies import clusters, energy_slope, parameters_of
+from .energies import clusters, energy_slopes, parameters_of
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -238,13 +238,9 @@ def gradient_of(levels: Levels, parameters: Sequence[str] | None = None) -> Grad
     ['well.thickness_meV_per_nm', 'mixed']
     """
     found = parameters_of(levels, parameters)
-    known: dict[object, Any] = {}
-    slopes = [energy_slope(levels, parameter, known) for parameter in found]
-    energies = np.zeros((len(levels), len(found)))
-    for column, one in enumerate(slopes):
-        energies[:, column] = one.energies
-    kinked = tuple(p.name for p, one in zip(found, slopes, strict=True) if one.kinked)
-    return Gradient(levels, found, energies, np.array([one.edge for one in slopes]), kinked)
+    slopes = energy_slopes(levels, found)
+    kinked = tuple(p.name for p, bent in zip(found, slopes.kinked, strict=True) if bent)
+    return Gradient(levels, found, slopes.energies, slopes.edges, kinked)
 
 
 def _open_edge(levels: Levels) -> float:

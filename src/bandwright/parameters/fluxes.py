@@ -22,7 +22,7 @@ from ..materials import BandPoint, Library
 from ..quantities import Length
 from ..shapes import Face, Flat, Function, Points, Shape
 from ..stack import Layer, Stack
-from .fractions import with_amounts
+from .fractions import letter_effects, with_amounts
 from .layers import stretched
 
 Floats = npt.NDArray[np.float64]
@@ -46,7 +46,7 @@ def flux_elements(stack: Stack) -> dict[str, tuple[int, ...]]:
     found: dict[str, tuple[int, ...]] = {}
     fixed: set[str] = set()
     for written in stack.written():
-        held = _cations(written.layer)
+        held = cations_of(written.layer)
         for element in held:
             found[element] = (*found.get(element, ()), written.number)
             if _called(written.layer) and len(held) > 1:
@@ -54,12 +54,24 @@ def flux_elements(stack: Stack) -> dict[str, tuple[int, ...]]:
     return {e: numbers for e, numbers in found.items() if e in _GROUP_III and e not in fixed}
 
 
-def _cations(layer: Layer) -> tuple[str, ...]:
+def cations_of(layer: Layer) -> tuple[str, ...]:
     """Return the cations a layer's formula names, none of a layer with its own numbers."""
     if layer.material is None:
         return ()
     zeros: dict[str, Value] = dict.fromkeys(letters(layer.material), 0.0)
     return tuple(element for element, _ in parse(layer.material, **zeros).cations)
+
+
+def cation_of(material: str, letter: str) -> str | None:
+    """Return the cation whose fraction a letter of a formula is, None for a letter of anions.
+
+    Examples
+    --------
+    >>> cation_of("InxGa1-xAsyP1-y", "x"), cation_of("InxGa1-xAsyP1-y", "y")
+    ('In', None)
+    """
+    effects = letter_effects(material, letter)
+    return next((e for e, sign in effects if sign > 0 and e in _GROUP_III), None)
 
 
 def _called(layer: Layer) -> bool:
@@ -76,7 +88,7 @@ def with_flux(layer: Layer, element: str, factor: float, stack: Stack) -> Layer:
     MaterialError
         If its material gives no lattice.
     """
-    held = _cations(layer)
+    held = cations_of(layer)
     if element not in held:
         return layer
     if len(held) == 1:
@@ -119,16 +131,8 @@ class _Grown:
     def new_values(self, values: Mapping[str, Value]) -> dict[str, Value]:
         """Return the letters' values as grown; those of anions stay."""
         new = self.changed(values)
-        owner = {letter: self._owner(letter) for letter in values}
+        owner = {letter: cation_of(str(self.layer.material), letter) for letter in values}
         return {k: v if owner[k] is None else new[str(owner[k])] for k, v in values.items()}
-
-    def _owner(self, letter: str) -> str | None:
-        """Return the cation whose fraction a letter is, None for a letter of anions."""
-        material = str(self.layer.material)
-        zeros: dict[str, Value] = dict.fromkeys(letters(material), 0.0)
-        without = self.cations(zeros)
-        with_one = self.cations({**zeros, letter: 1.0})
-        return next((e for e in with_one if with_one[e] > without[e]), None)
 
     def material(self, values: Mapping[str, Value]) -> str:
         """Return the formula as grown: fractions in it changed, letters kept."""

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from decimal import Decimal
+from functools import lru_cache
 
 from ..errors import StackError
-from ..formula import Sublattice, letters, parse
+from ..formula import Sublattice, Value, letters, parse
 from ..quantities import number_text
 
 SITES = ("composition", "anion_composition")
@@ -23,6 +24,22 @@ def mixed_sites(formula: str) -> list[tuple[str, Sublattice]]:
         return []
     mixed = [site for site in parse(formula).sublattices if len(site) > 1]
     return list(zip(SITES, mixed, strict=False))
+
+
+@lru_cache(maxsize=256)
+def letter_effects(formula: str, letter: str) -> tuple[tuple[str, int], ...]:
+    """Return the elements whose fraction a letter raises (1) or lowers (-1).
+
+    Examples
+    --------
+    >>> letter_effects("AlxGa1-xAs", "x")
+    (('Al', 1), ('Ga', -1))
+    """
+    zeros: dict[str, Value] = dict.fromkeys(letters(formula), 0.0)
+    before = parse(formula, **zeros)
+    after = parse(formula, **{**zeros, letter: 1.0})
+    effects = [(e, round(float(f - before.fraction(e)))) for s in after.sublattices for e, f in s]
+    return tuple((element, sign) for element, sign in effects if sign)
 
 
 def first_fraction(sublattice: Sublattice) -> float:

@@ -98,7 +98,7 @@ def replaced(layer: Layer, key: str, value: float) -> Layer:
     if key in ("donors", "acceptors"):
         return layer.replace(**{key: Density(value, getattr(layer, key).kind)})
     base, _, part = key.partition("_")
-    return layer.replace(**{base: _moved(dict(layer.shapes)[base], part, value)})
+    return layer.replace(**{base: moved(dict(layer.shapes)[base], part, value)})
 
 
 def stretched(layer: Layer, factor: float, value: float | None = None) -> Layer:
@@ -119,7 +119,8 @@ def stretched(layer: Layer, factor: float, value: float | None = None) -> Layer:
     return layer.replace(thickness=Length(value, layer.thickness.unit), **changes)
 
 
-def _moved(shape: Shape, part: str, value: float) -> Shape:
+def moved(shape: Shape, part: str, value: float) -> Shape:
+    """Return a shape with its value, its first or last one, or its shift set to a value."""
     if part == "shift":
         return shape.mapped(_Shift(value))
     if isinstance(shape, Linear | Quadratic):
