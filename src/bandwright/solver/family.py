@@ -15,9 +15,10 @@ from ..errors import SolveError
 from ..profile import Profile
 from .certificate import certify, halving_error
 from .find import Asked, Found, find, guess_levels
+from .kinds import Kind, joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
-from .slices import Kind, Slices, cut, joined
+from .slices import Slices, cut
 from .solve import ROUGH, Solution, lowest_edge, refuse_huge, tops
 from .system import OpenEnd, System, chunks, open_ends
 

@@ -18,6 +18,10 @@ import numpy.typing as npt
 Floats = npt.NDArray[np.float64]
 #: keeps 0/0 out of the recursion where a thick barrier's coupling underflows
 _TINY = 1e-290
+#: numbers an array of the recursion holds at most, so that it stays in the cache
+_CELLS = 12_000
+#: rows at most, so that a byte counts them
+_ROWS = 255
 Counts = npt.NDArray[np.int64]
 
 
@@ -103,16 +107,22 @@ def count_and_pivot(matrix: Matrix) -> tuple[Counts, Floats]:
     if not len(diagonal):
         none = np.zeros(diagonal.shape[1], dtype=np.int64)
         return none if clamped is None else clamped.astype(np.int64), np.ones(len(none))
-    squares = np.maximum(off * off, _TINY)
-    pivot = diagonal[0].copy()
-    negative = np.signbit(pivot)
-    total = negative.astype(np.int64)
-    if clamped is not None:
-        total += clamped
+    rows, columns = diagonal.shape
+    total = np.zeros(columns, dtype=np.int64) if clamped is None else clamped.astype(np.int64)
+    step = max(1, min(_ROWS, _CELLS // max(columns, 1)))
+    quotient = np.empty(columns)
+    pivot = np.empty(0)
     with np.errstate(divide="ignore", over="ignore"):
-        for row in range(1, len(diagonal)):
-            np.divide(squares[row - 1], pivot, out=pivot)
-            np.subtract(diagonal[row], pivot, out=pivot)
-            np.signbit(pivot, out=negative)
-            total += negative
+        for start in range(0, rows, step):
+            pivots = diagonal[start : start + step].copy()
+            later = pivots
+            if start == 0:
+                pivot, later = pivots[0], pivots[1:]
+            squares = np.square(off[max(start - 1, 0) : start + step - 1])
+            squares += _TINY
+            for square, row in zip(squares, later, strict=True):
+                np.divide(square, pivot, out=quotient)
+                pivot = np.subtract(row, quotient, out=row)
+            negative = np.signbit(pivots).view(np.uint8)
+            total += np.add.reduce(negative, axis=0, dtype=np.uint8)
     return total, pivot

@@ -7,6 +7,8 @@ elements of K are A/B = (f + x)/a, D/B = (f - x)/a and 1/B = g/a; x = 0 in a con
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import lru_cache
 from typing import NamedTuple
 
 import numpy as np
@@ -15,11 +17,15 @@ import numpy.typing as npt
 from ..constants import H2M
 
 Floats = npt.NDArray[np.float64]
+Product = Callable[[Floats, Floats], Floats]
 
 # Coefficients of t^0, t^1, ... of x cot x and x / sin x with t = x^2 (DLMF 4.19.6, 4.19.4).
 _F = (1.0, -1 / 3, -1 / 45, -2 / 945, -1 / 4725, -2 / 93555, -1382 / 638512875)
 _G = (1.0, 1 / 6, 7 / 360, 31 / 15120, 127 / 604800, 73 / 3421440, 1414477 / 653837184000)
-_SERIES_BELOW = 0.02
+_POWERS = np.arange(len(_F) - 1.0)[:, None]
+# of their derivatives by w = t/4
+_SLOPES = np.array([_F, _G])[:, 1:] * (1.0 + _POWERS.T) * 4.0 ** (1.0 + _POWERS.T)
+_SERIES_BELOW = 0.005
 #: the two-band mass never falls below this share of the band-edge mass
 MASS_FLOOR = 0.05
 
@@ -32,47 +38,44 @@ class Exponent(NamedTuple):
     c: Floats
 
 
-def half_wave_functions(t: Floats) -> tuple[Floats, Floats]:
-    """Return ``x cot x`` and ``x / sin x`` at t = x^2, hyperbolic for t < 0; no overflow.
+def half_wave_functions(w: Floats) -> tuple[Floats, Floats]:
+    """Return ``x cot x`` and ``x / sin x`` at w = x^2/4, hyperbolic for w < 0; no overflow.
 
-    With y = sqrt|t|/2 and T = tan y or tanh y: (y/T)(1 - s T^2) and (y/T)(1 + s T^2), s = sign t.
+    With y = sqrt|w| and T = tan y or tanh y: y/T - s y T and y/T + s y T, s = sign w.
 
     Parameters
     ----------
-    t : array
-        Squared phase of a slice [rad^2]; negative where the state decays.
+    w : array
+        Squared half phase of a slice [rad^2]; negative where the state decays.
     """
-    half = np.sqrt(np.abs(t))
-    half *= 0.5
-    np.maximum(half, 1e-9, out=half)
-    decays = t < 0.0
-    tangent = np.tanh(half, where=decays, out=np.empty_like(half))
-    np.tan(half, where=~decays, out=tangent)
+    half = np.abs(w)
+    half += 1e-36  # keeps 0/0 off w = 0
+    np.sqrt(half, out=half)
+    # both tangents everywhere and a choice of one cost a third of calls with a mask
+    tangent = np.tan(half)
+    np.putmask(tangent, w < 0.0, np.tanh(half))
     ratio = half / tangent
-    square = np.where(decays, -tangent, tangent)
-    square *= tangent
-    square *= ratio
-    return ratio - square, ratio + square
+    np.copysign(half, w, out=half)
+    half *= tangent
+    return np.subtract(ratio, half, out=tangent), np.add(ratio, half, out=ratio)
 
 
-def half_wave_slopes(t: Floats, f: Floats, g: Floats) -> tuple[Floats, Floats]:
-    """Return the derivatives of `half_wave_functions` with respect to t."""
-    small = np.abs(t) < _SERIES_BELOW
-    some = small.any()
-    twice = 2.0 * (np.where(small, 1.0, t) if some else t)
-    df = (f - g * g) / twice
-    dg = g * (1.0 - f) / twice
+def half_wave_slopes(w: Floats, f: Floats, g: Floats) -> tuple[Floats, Floats]:
+    """Return the derivatives of `half_wave_functions` with respect to w."""
+    small = np.abs(w) < _SERIES_BELOW
+    some = np.count_nonzero(small)
+    twice = w + w
     if some:
-        df[small] = _series_slope(_F, t[small])
-        dg[small] = _series_slope(_G, t[small])
+        twice[small] = 1.0
+    df = g * g
+    np.subtract(f, df, out=df)
+    df /= twice
+    dg = 1.0 - f
+    dg *= g
+    dg /= twice
+    if some:
+        df[small], dg[small] = _SLOPES @ w[small] ** _POWERS
     return df, dg
-
-
-def _series_slope(coefficients: tuple[float, ...], t: Floats) -> Floats:
-    slope = np.zeros_like(t)
-    for power in range(len(coefficients) - 1, 0, -1):
-        slope = slope * t + power * coefficients[power]
-    return slope
 
 
 def local_mass(
@@ -124,63 +127,75 @@ def tilted(
     )  # fmt: skip
 
 
-def magnus(
-    thickness: Floats, energy: Floats, edge: Floats, mass: Floats, slope: Floats
-) -> tuple[Exponent, Exponent]:
-    """Return the 6th-order Magnus exponent of slices and its derivative by E.
+def magnus(a: Floats, c: Floats, times: Product = np.multiply) -> Exponent:
+    """Return the 6th-order Magnus exponent of slices.
 
     Blanes, Casas, Oteo & Ros, Phys. Rep. 470, 151 (2009), three Gauss points a slice.
 
     Parameters
     ----------
-    thickness : array (n_slices, 1)
-        Slice thicknesses [nm].
-    energy : array (n_energies,)
-        Energies [eV].
-    edge : array (3, n_slices, 1)
-        Edge at the Gauss points [eV].
-    mass, slope : array (3, n_slices, n_energies)
-        m(E) and dm/dE at the Gauss points.
+    a, c : array (3, ...)
+        h m(E) and -h (E - V)/h2m at the Gauss points: the propagator's generator there.
+    times : callable
+        Product of two entries, where they are more than numbers (see `dual_product`).
     """
-    a = thickness * mass
-    c = -(thickness / H2M) * (energy - edge)
-    da = thickness * slope
-    dc = np.broadcast_to(-thickness / H2M, a.shape[1:])
-    zero = np.zeros(a.shape[1:])
     fifteen = np.sqrt(15.0) / 3.0
-
-    one = Exponent(zero, a[1], c[1])
-    two = Exponent(zero, fifteen * (a[2] - a[0]), fifteen * (c[2] - c[0]))
-    three = Exponent(zero, (10 / 3) * (a[2] - 2 * a[1] + a[0]), (10 / 3) * (c[2] - 2 * c[1] + c[0]))
-    d_one = Exponent(zero, da[1], dc)
-    d_two = Exponent(zero, fifteen * (da[2] - da[0]), zero)
-    d_three = Exponent(zero, (10 / 3) * (da[2] - 2 * da[1] + da[0]), zero)
-
-    first = _bracket(one, two)
-    d_first = _mix((1, _bracket(d_one, two)), (1, _bracket(one, d_two)))
-    inner, d_inner = _mix((2, three), (1, first)), _mix((2, d_three), (1, d_first))
-    second = _bracket(one, inner)
-    d_second = _mix((1, _bracket(d_one, inner)), (1, _bracket(one, d_inner)))
-    p = _mix((-20, one), (-1, three), (1, first))
-    d_p = _mix((-20, d_one), (-1, d_three), (1, d_first))
-    q = _mix((1, two), (-1 / 60, second))
-    d_q = _mix((1, d_two), (-1 / 60, d_second))
-    omega = _mix((1, one), (1 / 12, three), (1 / 240, _bracket(p, q)))
-    turn = _mix((1, _bracket(d_p, q)), (1, _bracket(p, d_q)))
-    return omega, _mix((1, d_one), (1 / 12, d_three), (1 / 240, turn))
-
-
-def _bracket(p: Exponent, q: Exponent) -> Exponent:
-    """Return the commutator of two traceless 2x2 matrices."""
+    a1, a2, a3 = a[1], fifteen * (a[2] - a[0]), (10 / 3) * (a[2] - 2.0 * a[1] + a[0])
+    c1, c2, c3 = c[1], fifteen * (c[2] - c[0]), (10 / 3) * (c[2] - 2.0 * c[1] + c[0])
+    turn = times(a1, c2) - times(a2, c1)
+    pa, pc = -20.0 * a1 - a3, -20.0 * c1 - c3
+    qx = (times(a3, c1) - times(a1, c3)) / 30.0
+    qa, qc = a2 + times(a1, turn) / 30.0, c2 - times(c1, turn) / 30.0
     return Exponent(
-        p.a * q.c - q.a * p.c, 2.0 * (p.x * q.a - p.a * q.x), 2.0 * (p.c * q.x - p.x * q.c)
+        (times(pa, qc) - times(qa, pc)) / 240.0,
+        a1 + a3 / 12.0 + (times(turn, qa) - times(pa, qx)) / 120.0,
+        c1 + c3 / 12.0 + (times(pc, qx) - times(turn, qc)) / 120.0,
     )
 
 
-def _mix(*terms: tuple[float, Exponent]) -> Exponent:
-    """Return the weighted sum of exponents."""
-    weight, term = terms[0]
-    x, a, c = weight * term.x, weight * term.a, weight * term.c
-    for weight, term in terms[1:]:
-        x, a, c = x + weight * term.x, a + weight * term.a, c + weight * term.c
-    return Exponent(x, a, c)
+def dual_product(p: Floats, q: Floats) -> Floats:
+    """Return the product of values stacked with their derivatives along the first axis."""
+    return np.stack((p[0] * q[0], p[0] * q[1] + p[1] * q[0]))
+
+
+def curved(thickness: Floats, edge: Floats, mass: Floats, inverse_gap: Floats) -> Exponent:
+    """Return the 6th-order Magnus exponent of slices as polynomials of E - V.
+
+    V is the edge at the middle. Only where the mass is off its floor: there the degree is
+    known, and values at as many energies give the coefficients.
+
+    Parameters
+    ----------
+    thickness : array (n_slices, ...)
+        [nm]
+    edge, mass, inverse_gap : array (3, n_slices, ...)
+        At the Gauss points [eV, m0, 1/eV].
+
+    Returns
+    -------
+    Exponent
+        Of arrays (1 + degree, n_slices, ...), ascending powers.
+    """
+    if inverse_gap.any():
+        degrees = (4, 5, 5)
+    elif (mass == mass[1]).all():
+        degrees = (1, 0, 1)
+    else:
+        degrees = (2, 2, 3)
+    nodes, inverse = _interpolation(max(degrees))
+    above = (edge[1] - edge)[:, None] + nodes.reshape(-1, *(1,) * thickness.ndim)
+    local = mass[:, None] * (1.0 + above * inverse_gap[:, None])
+    found = magnus(thickness * local, -(thickness / H2M) * above)
+    return Exponent(
+        *(
+            np.tensordot(inverse[: degree + 1], values, 1)
+            for degree, values in zip(degrees, found, strict=True)
+        )
+    )
+
+
+@lru_cache(maxsize=8)
+def _interpolation(degree: int) -> tuple[Floats, Floats]:
+    """Return energies within 1 eV, and what makes coefficients of values there."""
+    nodes = np.cos(np.pi * (np.arange(degree + 1) + 0.5) / (degree + 1))
+    return nodes, np.linalg.inv(np.vander(nodes, increasing=True))
