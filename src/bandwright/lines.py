@@ -187,7 +187,7 @@ class Lines:
         raise StackError(f"there is no line {upper} to {lower} here; lines are {known or 'none'}")
 
     def error_budget(
-        self, line: Line | tuple[int | str, int] | None = None, *, checked: bool = True
+        self, line: Line | tuple[int | str, int] | None = None, *, checked: bool = False
     ) -> pd.DataFrame:
         """Return what small changes of the stack do to a line, the largest first.
 
@@ -198,7 +198,8 @@ class Lines:
         line : Line or (upper, lower), optional
             The strongest line if absent.
         checked : bool
-            Whether to solve each changed stack as well, for the remarks; False solves nothing.
+            Whether to solve each changed stack as well, for more remarks; otherwise nothing is
+            solved.
         """
         from .budget import error_budget
 

@@ -2,28 +2,33 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Hashable, Iterable, Iterator, Sequence
+from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+import numpy.typing as npt
 
 from .errors import BandwrightError, SolveError, StackError
 from .frames import frame
 from .levels import Levels
-from .levels.ranges import Range
+from .levels.ranges import Ends, ranges, ranges_of_many
 from .levels.result import Part
-from .levels.solving import Request, check_stack, read_request, shoot, span_of
-from .profile import Profile
-from .profile.build import build_profile
+from .levels.solving import Request, check_stack, read_request, shoot
+from .profile import Profile, Ready
+from .profile.alike import build_alike, chosen, together
+from .profile.build import Blueprint, build_profile
+from .profile.sections import Unlike
 from .quantities import show
-from .solver import Solution
 from .solver.family import solve_family
 from .stack import Stack
+from .stack.layout import layout
 
 if TYPE_CHECKING:
     import pandas as pd
+
+Floats = npt.NDArray[np.float64]
 
 
 @dataclass(frozen=True)
@@ -90,15 +95,6 @@ class Many:
             "count_checked": checked, "reason": reason,
         }  # fmt: skip
         return frame(columns, texts=("name", "reason"), integers=("design",))
-
-
-@dataclass
-class _Waiting:
-    """Designs of one layout, ends and model, to be solved together."""
-
-    indices: list[int] = field(default_factory=list)
-    profiles: list[Profile] = field(default_factory=list)
-    spans: list[Range] = field(default_factory=list)
 
 
 def solve_many(
@@ -168,52 +164,83 @@ def solve_many(
 def _solve_batch(
     stacks: Sequence[Stack], request: Request, results: list[Levels | BandwrightError]
 ) -> int:
-    """Append the results of some stacks; return how many were solved alone."""
-    found: list[Levels | BandwrightError | None] = [None] * len(stacks)
-    waiting: dict[object, _Waiting] = {}
-    singles: list[tuple[int, Profile, tuple[Range, ...]]] = []
+    """Append the results of some stacks; return how many of a family were solved alone."""
+    found: dict[int, Levels | BandwrightError] = {}
+    layouts: dict[Hashable, list[int]] = {}
+    numbers = []
     for index, stack in enumerate(stacks):
-        try:
-            profile = build_profile(stack, request.bands)
-            spans = span_of(profile, request)
-        except BandwrightError as error:
-            found[index] = error
-            continue
-        if len(spans) > 1:
-            singles.append((index, profile, spans))
-            continue
-        numbers = profile.numbers
-        key = (spans[0].ends, numbers.flat.tobytes(), numbers.curved.tobytes(), profile.bands)
-        wait = waiting.setdefault(key, _Waiting())
-        wait.indices.append(index)
-        wait.profiles.append(profile)
-        wait.spans.append(spans[0])
-    for wait in waiting.values():
-        for index, profile, span, solution in zip(
-            wait.indices, wait.profiles, wait.spans, _together(wait, request), strict=True
-        ):
-            if solution is None:
-                singles.append((index, profile, (span,)))
-            else:
-                part = Part(span, solution.numbers, solution.energies, solution)
-                found[index] = request.levels(stacks[index], profile, (part,))
-    for index, profile, spans in singles:
-        try:
-            found[index] = request.levels(
-                stacks[index], profile, shoot(profile, spans, request.at_most, request.tolerance)
-            )
-        except BandwrightError as error:
-            found[index] = error
-    results += [one for one in found if one is not None]
-    return len(singles)
+        kind, own = layout(stack)
+        layouts.setdefault(kind, []).append(index)
+        numbers.append(own)
+    alone = 0
+    for indices in layouts.values():
+        if len(indices) > 1:
+            columns = np.array([numbers[i] for i in indices]).T
+            for place, levels in _solve_alike([stacks[i] for i in indices], columns, request):
+                found[indices[place]] = levels
+        for index in indices:
+            if index not in found:
+                found[index] = one = _alone(stacks[index], request)
+                alone += len(indices) > 1 and isinstance(one, Levels)
+    results += [found[index] for index in range(len(stacks))]
+    return alone
 
 
-def _together(wait: _Waiting, request: Request) -> list[Solution | None]:
-    """Solve designs of one layout in one pass; none if even its setting up fails."""
-    highs = [span.high for span in wait.spans]
+def _solve_alike(
+    stacks: Sequence[Stack], numbers: Floats, request: Request
+) -> Iterator[tuple[int, Levels]]:
+    """Yield the levels of designs of one layout, those that one pass leaves unchecked left out."""
+    origins = [Blueprint(stack, request.bands) for stack in stacks]
     try:
-        return solve_family(
-            wait.profiles, highs, wait.spans[0].ends, request.at_most, request.tolerance
-        )
-    except (SolveError, np.linalg.LinAlgError):
-        return [None] * len(wait.profiles)
+        profile = build_alike(stacks[0], numbers, request.bands)
+        yield from _solve_group(profile, range(len(stacks)), origins, request)
+        return
+    except (Unlike, BandwrightError):
+        pass  # they are not all of one kind, or one of them can't be built
+    kinds: dict[Hashable, list[int]] = {}
+    for index, origin in enumerate(origins):
+        try:
+            sections = origin.profile.numbers
+        except BandwrightError:
+            continue  # alone it says why
+        kind = (sections.flat.tobytes(), sections.curved.tobytes(), origin.profile.bands)
+        kinds.setdefault(kind, []).append(index)
+    for indices in kinds.values():
+        profile = together([origins[i].profile for i in indices])
+        yield from _solve_group(profile, indices, origins, request)
+
+
+def _solve_group(
+    profile: Profile, indices: Sequence[int], origins: Sequence[Blueprint], request: Request
+) -> Iterator[tuple[int, Levels]]:
+    """Yield the levels of designs that are one profile of many, if their ranges are alike."""
+    try:
+        spans = ranges_of_many(profile, request.below, request.at_most)
+    except SolveError:
+        return
+    ends: dict[Ends, list[int]] = {}
+    for place, span in enumerate(spans):
+        if len(span) == 1:
+            ends.setdefault(span[0].ends, []).append(place)
+    for pair, places in ends.items():
+        some = profile if len(places) == len(spans) else chosen(profile, np.array(places))
+        high = np.array([spans[place][0].high for place in places])
+        mine = [origins[indices[place]] for place in places]
+        try:
+            solutions = solve_family(some, mine, high, pair, request.at_most, request.tolerance)
+        except (SolveError, np.linalg.LinAlgError):
+            continue
+        for place, origin, solution in zip(places, mine, solutions, strict=True):
+            if solution is not None:
+                part = Part(spans[place][0], solution.numbers, solution.energies, solution)
+                yield indices[place], request.levels(origin.stack, origin, (part,))
+
+
+def _alone(stack: Stack, request: Request) -> Levels | BandwrightError:
+    try:
+        profile = build_profile(stack, request.bands)
+        spans = ranges(profile, request.below, request.at_most)
+        parts = shoot(profile, spans, request.at_most, request.tolerance)
+        return request.levels(stack, Ready(profile), parts)
+    except BandwrightError as error:
+        return error

@@ -37,7 +37,7 @@ class _Shape:
     @property
     def constant(self) -> bool:
         """Whether the value is known to be the same all along."""
-        return len(set(self.samples)) == 1
+        return bool(self.samples) and all(np.all(v == self.samples[0]) for v in self.samples[1:])
 
     def breaks(self, thickness_nm: float) -> tuple[float, ...]:
         """Return the interior depths [nm] where the slope jumps."""

@@ -13,7 +13,7 @@ import numpy.typing as npt
 from .. import phase
 from ..errors import SolveError
 from ..frames import frame
-from ..profile import Profile
+from ..profile import Origin, Profile
 from ..solver import Solution, lowest_edge
 from ..stack import Stack
 from .groups import group_levels
@@ -50,7 +50,8 @@ class Levels:
     Attributes
     ----------
     stack : Stack
-    profile : Profile
+    origin : Origin
+        Whatever has the profile.
     tolerance, group : float
         As asked [eV].
     method : str
@@ -59,7 +60,7 @@ class Levels:
     """
 
     stack: Stack
-    profile: Profile
+    origin: Origin
     parts: tuple[Part, ...]
     tolerance: float
     group: float
@@ -68,6 +69,11 @@ class Levels:
 
     def __len__(self) -> int:
         return len(self.energies)
+
+    @property
+    def profile(self) -> Profile:
+        """Edges, masses and gaps along growth."""
+        return self.origin.profile
 
     @cached_property
     def energies(self) -> Floats:

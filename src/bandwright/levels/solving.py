@@ -9,7 +9,7 @@ import numpy as np
 
 from .. import phase
 from ..errors import SolveError, StackError, close_matches
-from ..profile import Profile
+from ..profile import Origin, Profile, Ready
 from ..profile.build import build_profile
 from ..quantities import as_energy, show
 from ..solver import lowest_edge, solve_profile
@@ -84,7 +84,7 @@ def solve(
         parts = shoot(profile, spans, at_most, request.tolerance)
     else:
         parts = _phase_only(profile, spans, at_most, phase_order)
-    levels = request.levels(stack, profile, parts)
+    levels = request.levels(stack, Ready(profile), parts)
     from ..cautions import warn
 
     warn(levels)
@@ -102,10 +102,10 @@ class Request(NamedTuple):
     phase_order: int
     bands: str | None
 
-    def levels(self, stack: Stack, profile: Profile, parts: tuple[Part, ...]) -> Levels:
+    def levels(self, stack: Stack, origin: Origin, parts: tuple[Part, ...]) -> Levels:
         """Return the result for a stack."""
         return Levels(
-            stack, profile, parts, self.tolerance, self.group, self.method, self.phase_order
+            stack, origin, parts, self.tolerance, self.group, self.method, self.phase_order
         )
 
 

@@ -4,10 +4,22 @@ from .sections import (
     ZERO,
     Curve,
     LayerFacts,
+    Origin,
     Polynomial,
     Profile,
+    Ready,
     Sampled,
     Section,
 )
 
-__all__ = ["ZERO", "Curve", "LayerFacts", "Polynomial", "Profile", "Sampled", "Section"]
+__all__ = [
+    "ZERO",
+    "Curve",
+    "LayerFacts",
+    "Origin",
+    "Polynomial",
+    "Profile",
+    "Ready",
+    "Sampled",
+    "Section",
+]

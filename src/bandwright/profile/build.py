@@ -3,14 +3,31 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
 
 from ..errors import BandwrightError, MaterialError, StackError
 from ..formula import parse
 from ..materials import Library
 from ..stack import Stack, Written
-from .curves import least
+from .curves import least, smaller
 from .layers import Built, build_layer
-from .sections import Profile, Section
+from .sections import Number, Profile, Section
+
+
+@dataclass(frozen=True)
+class Blueprint:
+    """An `Origin` that builds a stack's profile when it is first asked for."""
+
+    stack: Stack
+    bands: str | None = None
+
+    @cached_property
+    def profile(self) -> Profile:
+        """The profile."""
+        return build_profile(self.stack, self.bands)
 
 
 def build_profile(
@@ -19,6 +36,7 @@ def build_profile(
     *,
     substrate_lattice: float | None = None,
     known: dict[object, Built] | None = None,
+    designs: int | None = None,
 ) -> Profile:
     """Return the profile of a stack.
 
@@ -32,6 +50,9 @@ def build_profile(
     known : dict, optional
         Keeps layers once looked up, for profiles of stacks that share most of their layers and
         their material files.
+    designs : int, optional
+        How many designs the stack stands for, each of its numbers an array of this length, as
+        `bandwright.profile.alike` writes it.
 
     Returns
     -------
@@ -44,6 +65,8 @@ def build_profile(
         If zero, bands or a layer's shape can't be settled; the text names the layer.
     MaterialError
         If a material gives no number that is needed.
+    Unlike
+        If many designs differ in kind.
     """
     library = Library.with_files(stack.materials) if stack.materials else Library.shipped()
     if substrate_lattice is not None:
@@ -51,16 +74,18 @@ def build_profile(
     every = stack.written()
     two_band = _choose_bands(every, bands or stack.bands)
     built: dict[int, Built] = {}
-    known = {} if known is None else known
     around = (stack.temperature, stack.substrate, substrate_lattice, two_band)
     for one in every:
-        key = (one.layer, one.name, around)
-        try:
-            if key not in known:
-                known[key] = build_layer(one.layer, one.name, stack, library, two_band)
-        except BandwrightError as error:
-            raise error.at(one.name) from None
-        built[one.number] = known[key]
+        key = None if known is None else (one.layer, one.name, around)
+        found = None if known is None else known.get(key)
+        if found is None:
+            try:
+                found = build_layer(one.layer, one.name, stack, library, two_band)
+            except BandwrightError as error:
+                raise error.at(one.name) from None
+            if known is not None:
+                known[key] = found
+        built[one.number] = found
     facts = tuple(one.facts for one in built.values())
     if any(one.copies > 1 for one in every):
         written = tuple(number - 1 for _, number in stack.grown())
@@ -72,7 +97,7 @@ def build_profile(
     field = _field(stack, sum(one.facts.thickness for one in layers))
     return Profile(
         _sections(layers, shift, field), stack.ends, field,
-        "two-band" if two_band else "one-band", words, facts, written,
+        "two-band" if two_band else "one-band", words, facts, written, designs,
     )  # fmt: skip
 
 
@@ -100,7 +125,7 @@ def _choose_bands(every: Sequence[Written], asked: str | None) -> bool:
 
 def _zero(
     stack: Stack, layers: Sequence[Built], library: Library
-) -> tuple[tuple[float, float], str]:
+) -> tuple[tuple[Number, Number], str]:
     """Return what to take off material edges and off own edges [eV], and zero in words."""
     mixed = len({one.facts.own for one in layers}) == 2
     own = all(one.facts.own for one in layers)
@@ -116,7 +141,8 @@ def _zero(
     if labelled:
         return _zero_at_label(stack.zero, layers, labelled, mixed, own)
     try:
-        edge = float(library.properties(parse(stack.zero), stack.temperature, stack.substrate).edge)
+        point = library.properties(parse(stack.zero), stack.temperature, stack.substrate)
+        edge = float(point.edge)
     except MaterialError as error:
         known = sorted({one.label for one in layers if one.label})
         extra = f"; labels here: {', '.join(known)}" if known else "; no layer has a label"
@@ -128,57 +154,63 @@ def _zero(
 
 def _zero_at_label(
     label: str, layers: Sequence[Built], labelled: Sequence[Built], mixed: bool, own: bool
-) -> tuple[tuple[float, float], str]:
+) -> tuple[tuple[Number, Number], str]:
     edges = [one.first_edge for one in labelled]
-    if max(edges) - min(edges) > 1e-12:
+    every = np.array(np.broadcast_arrays(*edges))
+    low, high = every.min(axis=0), every.max(axis=0)
+    apart = np.argmax(high - low)
+    if np.ravel(high - low)[apart] > 1e-12:
         raise StackError(
             f"zero = {label!r}: layers of this label have different edges"
-            f" ({min(edges):.6g} to {max(edges):.6g} eV); give one of them a label of its own"
+            f" ({np.ravel(low)[apart]:.6g} to {np.ravel(high)[apart]:.6g} eV); give one of them a"
+            " label of its own"
         )
     if mixed and labelled[0].facts.own:
         raise StackError(
             f"zero = {label!r} is a layer with its own edge, which counts from zero itself;"
             " name a material or a material layer's label"
         )
-    potential = 0.0
+    potential: Number = 0.0
     for one in layers:
         if one is labelled[0]:
             break
-        potential += one.field * one.facts.thickness
+        potential = potential + one.field * one.facts.thickness
     shift = edges[0] + potential
     words = f"the first-grown face of {label!r}"
     return (shift, shift if own else potential), words
 
 
-def _lowest(layers: Sequence[Built]) -> float:
+def _lowest(layers: Sequence[Built]) -> Number:
     """Return the lowest edge [eV], internal fields included."""
-    low, potential = float("inf"), 0.0
+    low: Number = float("inf")
+    potential: Number = 0.0
     for one in layers:
-        start = 0.0
+        start: Number = 0.0
         for piece in one.pieces:
             tilted = piece.edge.plus(potential + one.field * start, one.field)
-            low = min(low, least(tilted, piece.thickness))
-            start += piece.thickness
-        potential += one.field * one.facts.thickness
-    return float(low)
+            low = smaller(low, least(tilted, piece.thickness))
+            start = start + piece.thickness
+        potential = potential + one.field * one.facts.thickness
+    return low
 
 
-def _field(stack: Stack, thickness: float) -> float:
+def _field(stack: Stack, thickness: Number) -> Number:
     """Return the stack's field along growth [V/nm], an electron's energy slope [eV/nm]."""
     bias = stack.signed_bias
     if bias is not None:
         return -bias / thickness
-    return stack.signed_field or 0.0
+    return 0.0 if stack.signed_field is None else stack.signed_field
 
 
 def _sections(
-    layers: Sequence[Built], shift: tuple[float, float], field: float
+    layers: Sequence[Built], shift: tuple[Number, Number], field: Number
 ) -> tuple[Section, ...]:
     """Return all sections with zero, internal fields and the stack's field in their edges."""
     sections = []
-    potential, position = 0.0, 0.0
+    potential: Number = 0.0
+    position: Number = 0.0
     for index, one in enumerate(layers):
-        start = 0.0
+        start: Number = 0.0
         for piece in one.pieces:
             constant = (
                 potential + one.field * start + field * (position + start)
@@ -187,7 +219,7 @@ def _sections(
             slope = one.field + field
             edge = piece.edge.plus(constant, slope)
             sections.append(Section(piece.thickness, edge, piece.mass, piece.inverse_gap, index))
-            start += piece.thickness
-        potential += one.field * one.facts.thickness
-        position += one.facts.thickness
+            start = start + piece.thickness
+        potential = potential + one.field * one.facts.thickness
+        position = position + one.facts.thickness
     return tuple(sections)

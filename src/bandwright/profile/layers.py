@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -15,13 +15,13 @@ from ..materials import BandPoint, Library
 from ..shapes import Face, Flat, Function, Linear, Points, Shape
 from ..stack import Layer, Stack
 from .curves import fit_depths, fitted, least, straight
-from .sections import ZERO, Curve, Floats, LayerFacts, Polynomial, Sampled
+from .sections import ZERO, Curve, Floats, LayerFacts, Number, Polynomial, Sampled, Unlike
 
 
 class Piece(NamedTuple):
     """A section of one layer: edge on the materials' or the own scale, without any field."""
 
-    thickness: float
+    thickness: Any
     edge: Curve
     mass: Curve
     inverse_gap: Curve
@@ -33,11 +33,11 @@ class Built:
 
     pieces: tuple[Piece, ...]
     facts: LayerFacts
-    field: float
+    field: Any
     label: str | None
 
     @property
-    def first_edge(self) -> float:
+    def first_edge(self) -> Any:
         """Edge at the first-grown face [eV]."""
         return self.pieces[0].edge.value(0.0)
 
@@ -58,7 +58,7 @@ def build_layer(layer: Layer, name: str, stack: Stack, library: Library, two_ban
         pieces, facts = _uniform(layer, name, stack, library, two_band)
     else:
         pieces, facts = _graded(layer, name, stack, library, two_band)
-    return Built(pieces, facts, layer.field or 0.0, layer.label)
+    return Built(pieces, facts, 0.0 if layer.field is None else layer.field, layer.label)
 
 
 def _uniform(
@@ -71,14 +71,14 @@ def _uniform(
     }
     composition = parse(layer.material, **values)
     point = library.properties(composition, stack.temperature, stack.substrate)
-    edge, mass, gap, lattice, monolayer, exx = (float(v) for v in point[:6])
+    edge, mass, gap, lattice, monolayer, exx = (plain(v) for v in point[:6])
     thickness, unit = layer.thickness
     if unit == "ML":
-        thickness *= monolayer
+        thickness = thickness * monolayer
     inverse_gap = Polynomial((1.0 / gap,)) if two_band else ZERO
     piece = Piece(thickness, Polynomial((edge,)), Polynomial((mass,)), inverse_gap)
     facts = LayerFacts(name, thickness, False, layer.material, monolayer, lattice, exx,
-                       bool(point.direct), point.cautions)  # fmt: skip
+                       bool(np.all(point.direct)), point.cautions)  # fmt: skip
     return (piece,), facts
 
 
@@ -90,14 +90,16 @@ def _graded(
     shapes = [shape for _, shape in layer.fractions]
     thickness, unit = layer.thickness
     if unit == "ML":
-        thickness *= points.monolayer()
-    first, last = np.broadcast_to(points.at(np.array([0.0, thickness]), thickness, "first").edge, 2)
-    face: Face = "first" if first <= last else "last"
+        thickness = thickness * points.monolayer(thickness)
+    ends = points.at(np.multiply.outer([0.0, 1.0], thickness), thickness, "first").edge
+    face = lower_face(*np.broadcast_to(ends, (2, *np.shape(thickness))))
     smooth = not any(isinstance(shape, Function) for shape in shapes)
     pieces = tuple(
         points.piece(start, stop, thickness, face, two_band, smooth)
         for start, stop in _spans(shapes, thickness)
     )
+    if np.ndim(thickness):  # of many designs nobody asks
+        return pieces, LayerFacts(name, thickness, False, layer.material or "")
     along = points.at(np.linspace(0.0, thickness, 17), thickness, face)
     exx, lattice = np.broadcast_arrays(along.exx, along.lattice)
     worst = np.argmax(np.abs(exx))
@@ -108,6 +110,25 @@ def _graded(
     )  # fmt: skip
 
 
+def lower_face(first: Number, last: Number) -> Face:
+    """Return the face at which the edge is lower, the first if both are alike.
+
+    Raises
+    ------
+    Unlike
+        If it is not the same face in all designs.
+    """
+    here = first <= last
+    if np.ndim(here) and not (here == np.ravel(here)[0]).all():
+        raise Unlike("a grade goes up in some designs and down in others")
+    return "first" if np.all(here) else "last"
+
+
+def plain(number: Value) -> Any:
+    """Return a float; numbers of many designs stay an array."""
+    return number if np.ndim(number) else float(number)
+
+
 @dataclass(frozen=True)
 class _Points:
     """Material numbers of one layer at depths along it."""
@@ -116,7 +137,7 @@ class _Points:
     stack: Stack
     library: Library
 
-    def at(self, depth: Floats, thickness: float, face: Face) -> BandPoint:
+    def at(self, depth: Floats, thickness: Any, face: Face) -> BandPoint:
         """Return the numbers at each depth [nm]."""
         values: dict[str, Value] = {
             letter: shape.at(depth, thickness, face) for letter, shape in self.layer.fractions
@@ -125,18 +146,18 @@ class _Points:
         composition = parse(self.layer.material, **values)
         return self.library.properties(composition, self.stack.temperature, self.stack.substrate)
 
-    def monolayer(self) -> float:
+    def monolayer(self, thickness: Number = 1.0) -> Any:
         """Return the thickness of one monolayer [nm], the mean of both faces for a grade."""
         if any(isinstance(shape, Points | Function) for _, shape in self.layer.fractions):
             raise StackError(
                 "a thickness in ML needs a composition that is constant or graded between two"
                 " values; give the thickness of a table or callable in nm"
             )
-        ends = self.at(np.array([0.0, 1.0]), 1.0, "first")
-        return float(np.mean(ends.monolayer))
+        ends = self.at(np.multiply.outer([0.0, 1.0], np.ones_like(thickness)), 1.0, "first")
+        return plain(np.mean(ends.monolayer, axis=0))
 
     def piece(
-        self, start: float, stop: float, thickness: float, face: Face, two_band: bool,
+        self, start: float, stop: Any, thickness: Any, face: Face, two_band: bool,
         smooth: bool,
     ) -> Piece:  # fmt: skip
         """Return the section from start to stop [nm] of the layer."""
@@ -165,7 +186,7 @@ class _Along:
     points: _Points
     which: int
     start: float
-    thickness: float
+    thickness: Number
     face: Face
 
     def __call__(self, depth: Floats) -> Floats:
@@ -182,7 +203,7 @@ class _OwnAlong:
 
     shape: Shape
     start: float
-    thickness: float
+    thickness: Number
     face: Face
     invert: bool
 
@@ -196,8 +217,14 @@ def _inverse(gap: object) -> Floats:
     return np.asarray(1.0 / np.asarray(gap, dtype=float))
 
 
-def _spans(shapes: Sequence[Shape], thickness: float) -> list[tuple[float, float]]:
+def _spans(shapes: Sequence[Shape], thickness: Number) -> list[tuple[float, Any]]:
     """Return the stretches between the kinks of all shapes of a layer."""
+    if not isinstance(thickness, float) and any(
+        isinstance(shape, Points | Function) for shape in shapes
+    ):
+        raise Unlike("tables of points and callables are built design by design")
+    if not any(isinstance(shape, Points) for shape in shapes):
+        return [(0.0, thickness)]
     for shape in shapes:
         if isinstance(shape, Points):
             shape.check_covers(thickness)
@@ -225,8 +252,7 @@ def _own(layer: Layer, name: str, two_band: bool) -> tuple[tuple[Piece, ...], La
         edge, mass, *gap = (shape.value for shape in shapes if isinstance(shape, Flat))
         curve = Polynomial((1.0 / gap[0] if invert else gap[0],)) if gap else ZERO
         return (Piece(thickness, Polynomial((edge,)), Polynomial((mass,)), curve),), facts
-    first, last = layer.edge.at(np.array([0.0, thickness]), thickness, "first")
-    face: Face = "first" if first <= last else "last"
+    face = lower_face(*layer.edge.at(np.multiply.outer([0.0, 1.0], thickness), thickness, "first"))
     pieces = []
     for start, stop in _spans(shapes, thickness):
         curves = [_own_curve(s, start, stop, thickness, face) for s in shapes[:2]]
@@ -239,20 +265,20 @@ def _own(layer: Layer, name: str, two_band: bool) -> tuple[tuple[Piece, ...], La
     return tuple(pieces), facts
 
 
-def _positive(curve: Curve, thickness: float, what: str, strict: bool = True) -> None:
-    low = least(curve, thickness)
+def _positive(curve: Curve, thickness: Number, what: str, strict: bool = True) -> None:
+    low = np.min(least(curve, thickness))
     if low < 0.0 or (strict and low == 0.0):
         raise StackError(f"{what}: the shape falls to {low:g} inside the layer; it must stay above"
                          " zero")  # fmt: skip
 
 
 def _own_curve(
-    shape: Shape, start: float, stop: float, thickness: float, face: Face, invert: bool = False
+    shape: Shape, start: float, stop: Any, thickness: Any, face: Face, invert: bool = False
 ) -> Curve:
     along = _OwnAlong(shape, start, thickness, face, invert)
     if isinstance(shape, Function):
         return Sampled(along)
     if shape.constant or (isinstance(shape, Linear | Points | Flat) and not invert):
-        first, last = along(np.array([0.0, stop - start]))
-        return straight(float(first), float(last), stop - start)
+        first, last = along(np.multiply.outer([0.0, 1.0], stop - start))
+        return straight(plain(first), plain(last), stop - start)
     return fitted(along(fit_depths(stop - start)), stop - start, along)

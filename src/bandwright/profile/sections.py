@@ -3,6 +3,9 @@
 A section is a stretch of the structure on which the conduction edge V, the mass m and the
 inverse gap are smooth functions of the depth s from the section's first-grown face. Faces of
 layers, points of a table and every other kink lie between sections.
+
+Many designs of one layout are one Profile as well: every number is then an array (n_designs,),
+and depths have the designs along their last axis.
 """
 
 from __future__ import annotations
@@ -10,19 +13,26 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
-from typing import NamedTuple
+from typing import Any, NamedTuple, Protocol
 
 import numpy as np
 import numpy.typing as npt
 
 Floats = npt.NDArray[np.float64]
+#: a float of one design, or an array (n_designs,) of many of one layout
+Number = Any
+
+
+def is_zero(number: Number) -> bool:
+    """Return whether a number is zero in every design."""
+    return number == 0.0 if isinstance(number, float) else not np.any(number)
 
 
 @dataclass(frozen=True, slots=True)
 class Polynomial:
     """A polynomial of the depth s [nm], coefficients in ascending powers."""
 
-    coefficients: tuple[float, ...]
+    coefficients: tuple[Number, ...]
 
     def at(self, depth: Floats) -> Floats:
         """Return the value at each depth [nm]."""
@@ -32,9 +42,9 @@ class Polynomial:
             value = value * depth + coefficient
         return value
 
-    def value(self, depth: float) -> float:
+    def value(self, depth: Number) -> Any:
         """Return the value at one depth [nm]."""
-        value = 0.0
+        value: Number = 0.0
         for coefficient in reversed(self.coefficients):
             value = value * depth + coefficient
         return value
@@ -43,14 +53,14 @@ class Polynomial:
     def degree(self) -> int:
         """Degree after trailing zeros are dropped; 0 for a constant."""
         degree = len(self.coefficients) - 1
-        while degree > 0 and self.coefficients[degree] == 0.0:
+        while degree > 0 and is_zero(self.coefficients[degree]):
             degree -= 1
         return degree
 
-    def plus(self, constant: float, slope: float) -> Polynomial:
+    def plus(self, constant: Number, slope: Number) -> Polynomial:
         """Return this polynomial with ``constant + slope * s`` added."""
         first, *rest = self.coefficients
-        if slope == 0.0:
+        if is_zero(slope):
             return Polynomial((first + constant, *rest))
         second, *more = rest or [0.0]
         return Polynomial((first + constant, second + slope, *more))
@@ -61,8 +71,8 @@ class Sampled:
     """Any smooth function of the depth s [nm], plus ``constant + slope * s``."""
 
     function: Callable[[Floats], Floats]
-    constant: float = 0.0
-    slope: float = 0.0
+    constant: Number = 0.0
+    slope: Number = 0.0
 
     degree = 99  # neither flat nor linear: solvers treat it as curved
 
@@ -70,13 +80,14 @@ class Sampled:
         """Return the value at each depth [nm]."""
         depth = np.asarray(depth, dtype=float)
         value = np.asarray(self.function(depth), dtype=float)
-        return value + self.constant + self.slope * depth
+        return np.asarray(value + self.constant + self.slope * depth)
 
-    def value(self, depth: float) -> float:
+    def value(self, depth: Number) -> Any:
         """Return the value at one depth [nm]."""
-        return float(self.at(np.array([depth]))[0])
+        found = self.at(np.atleast_2d(depth))[0]  # the designs, if many, stand along the last axis
+        return found if found.size > 1 else float(found[0])
 
-    def plus(self, constant: float, slope: float) -> Sampled:
+    def plus(self, constant: Number, slope: Number) -> Sampled:
         """Return this curve with ``constant + slope * s`` added."""
         return Sampled(self.function, self.constant + constant, self.slope + slope)
 
@@ -94,7 +105,7 @@ class Section:
     from 0.
     """
 
-    thickness: float
+    thickness: Any
     edge: Curve
     mass: Curve
     inverse_gap: Curve = ZERO
@@ -138,7 +149,7 @@ class LayerFacts:
     """
 
     name: str
-    thickness: float
+    thickness: Any
     own: bool = True
     material: str = ""
     monolayer: float = float("nan")
@@ -148,30 +159,39 @@ class LayerFacts:
     cautions: tuple[str, ...] = ()
 
 
-def _row(section: Section) -> tuple[float, float, float, float, float, float]:
+def _row(section: Section) -> tuple[Number, ...]:
     """Thickness, edge, its slope, mass and inverse gap at the first face, and 1 if curved."""
     edge = section.edge
-    slope = 0.0
+    slope: Number = 0.0
     if isinstance(edge, Polynomial) and len(edge.coefficients) > 1:
         slope = edge.coefficients[1]
     mass, gap = _first(section.mass), _first(section.inverse_gap)
     return section.thickness, _first(edge), slope, mass, gap, float(not section.tilted)
 
 
-def _first(curve: Curve) -> float:
-    return curve.coefficients[0] if isinstance(curve, Polynomial) else curve.value(0.0)
+def _first(curve: Curve) -> Number:
+    if isinstance(curve, Polynomial):
+        return curve.coefficients[0]
+    found: Number = curve.value(0.0)
+    return found
+
+
+class Unlike(Exception):
+    """Designs of one layout differ in kind (flat here, tilted there): each goes its own way."""
 
 
 class SectionNumbers(NamedTuple):
     """All sections as arrays (n_sections,): what solvers need without asking each section.
 
-    ``edge`` (n_sections, 2) holds value and slope of flat and linear edges; ``mass`` and
-    ``inverse_gap`` are the first face's; ``lowest`` is the lowest edge; ``flat`` says constant,
-    ``curved`` neither constant nor linear.
+    ``edge`` and ``slope`` are those of flat and linear edges; ``mass`` and ``inverse_gap`` are
+    the first face's; ``lowest`` is the lowest edge; ``flat`` says constant, ``curved`` neither
+    constant nor linear. Of many designs arrays are (n_sections, n_designs), but the flags, which
+    all designs share.
     """
 
     thickness: Floats
     edge: Floats
+    slope: Floats
     mass: Floats
     inverse_gap: Floats
     lowest: Floats
@@ -200,39 +220,50 @@ class Profile:
         One a written layer.
     written : tuple of int
         Index into ``facts`` of each grown layer.
+    designs : int, optional
+        How many designs of one layout the numbers are of, each an array of this length.
     """
 
     sections: tuple[Section, ...]
     ends: tuple[str, str] = ("open", "open")
-    field: float = 0.0
+    field: Any = 0.0
     bands: str = "one-band"
     zero: str = "the edges' own zero"
     facts: tuple[LayerFacts, ...] = ()
     written: tuple[int, ...] = ()
+    designs: int | None = None
 
     @cached_property
     def numbers(self) -> SectionNumbers:
         """The sections as arrays."""
         rows = [_row(section) for section in self.sections]
-        h, edge, slope, mass, inverse_gap, bent = np.array(rows).T.copy()
+        if self.designs is not None:
+            rows = [np.broadcast_arrays(*row, np.empty(self.designs))[:-1] for row in rows]
+        h, edge, slope, mass, inverse_gap, bent = np.swapaxes(np.array(rows), 0, 1).copy()
         curved = bent > 0.0
+        flat = (slope == 0.0) & ~curved
+        if self.designs is not None:
+            if (flat != flat[:, :1]).any():
+                raise Unlike("a section is flat in some designs and tilted in others")
+            flat, curved = flat[:, 0], curved[:, 0]
         lowest = edge + np.minimum(slope, 0.0) * h
         for index in np.flatnonzero(curved):
             section = self.sections[index]
-            lowest[index] = section.edge.at(np.linspace(0.0, section.thickness, 65)).min()
-        flat = (slope == 0.0) & ~curved
-        values = np.column_stack((edge, slope))
-        return SectionNumbers(h, values, mass, inverse_gap, lowest, flat, curved, bool(flat.all()))
+            lowest[index] = section.edge.at(np.linspace(0.0, section.thickness, 65)).min(axis=0)
+        return SectionNumbers(
+            h, edge, slope, mass, inverse_gap, lowest, flat, curved, bool(flat.all())
+        )
 
     @cached_property
     def faces(self) -> Floats:
         """Positions of all section faces [nm], shape (n_sections + 1,), the first is 0."""
-        return np.concatenate(([0.0], np.cumsum([s.thickness for s in self.sections])))
+        steps = np.cumsum(self.numbers.thickness, axis=0)
+        return np.concatenate((np.zeros_like(steps[:1]), steps))
 
     @property
-    def thickness(self) -> float:
+    def thickness(self) -> Any:
         """Total thickness [nm]."""
-        return float(self.faces[-1])
+        return self.faces[-1] if self.designs else float(self.faces[-1])
 
     def name(self, section: int) -> str:
         """Return the name of the layer a section lies in."""
@@ -267,3 +298,18 @@ class Profile:
         names = ("position_nm", "edge_eV", "mass", "gap_eV")
         columns = zip(*parts, strict=True)
         return {n: np.concatenate(c) for n, c in zip(names, columns, strict=True)}
+
+
+class Origin(Protocol):
+    """Whatever has one design's profile, built by now or when first asked for."""
+
+    @property
+    def profile(self) -> Profile:
+        """The profile."""
+        ...
+
+
+class Ready(NamedTuple):
+    """An `Origin` that was built."""
+
+    profile: Profile

@@ -11,16 +11,16 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 import numpy.typing as npt
 
-from ..errors import SolveError
-from ..profile import Profile
+from ..profile import Origin, Profile
+from ..profile.alike import chosen
 from .certificate import certify, halving_error
-from .find import Asked, Found, find, guess_levels
-from .kinds import Kind, joined
+from .find import Asked, find, guess_levels
+from .kinds import joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
 from .slices import Slices, cut
-from .solve import ROUGH, Solution, lowest_edge, refuse_huge, tops
-from .system import OpenEnd, System, chunks, open_ends
+from .solve import MOST_CELLS, MOST_KEPT_SLICES, ROUGH, Solution, lowest_edge, tops
+from .system import OpenEnd, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -31,30 +31,25 @@ class Family:
 
     Parameters
     ----------
-    members : sequence of Slices
-        All of the same number of slices, of the same kinds row by row.
+    slices : Slices
+        Of a profile of many designs.
     ends : (str, str)
     """
 
-    def __init__(self, members: Sequence[Slices], ends: tuple[str, str]) -> None:
-        self.members, self.ends = members, ends
-        first = members[0]
-        self.rows = len(first)
+    def __init__(self, slices: Slices, ends: tuple[str, str]) -> None:
+        self.slices, self.ends = slices, ends
+        self.rows = len(slices)
         self.nodes = self.rows + 1 - ends.count("wall")
-        kinds = [member.kinds() for member in members]
-        self._kinds: list[tuple[Indices | None, Kind]] = []
-        for same in zip(*kinds, strict=True):
-            rows, kind, _ = same[0]
-            arrays = zip(*(numbers for _, _, numbers in same), strict=True)
-            self._kinds.append((rows, kind(*(np.concatenate(a, axis=-1) for a in arrays))))
-        outside = [open_ends(m.profile, ends) for m in members]
+        self._kinds = [(rows, kind(*arrays)) for rows, kind, arrays in slices.kinds()]
+        designs = np.empty(slices.thickness.shape[1])
         self._outside = [
-            None if same[0] is None else np.array(same).T for same in zip(*outside, strict=True)
+            None if end is None else np.stack(np.broadcast_arrays(*end, designs)[:3])
+            for end in open_ends(slices.profile, ends)
         ]
 
     def halved(self) -> Family:
         """Return the same designs on slices half as thick."""
-        return Family([member.halved() for member in self.members], self.ends)
+        return Family(self.slices.halved(), self.ends)
 
     def count_and_pivot(self, energies: Floats, owner: Indices) -> tuple[Counts, Floats]:
         """Return how many levels of each energy's design lie below it, and K's last pivot."""
@@ -84,16 +79,18 @@ class Family:
 
 
 def solve_family(
-    profiles: Sequence[Profile], high: Sequence[float], ends: tuple[str, str],
+    profile: Profile, origins: Sequence[Origin], high: Floats, ends: tuple[str, str],
     at_most: int | None, tolerance: float,
 ) -> list[Solution | None]:  # fmt: skip
-    """Return the levels of profiles of one layout, all solved at once and each count-checked.
+    """Return the levels of many designs of one layout, solved at once, each count-checked.
 
     Parameters
     ----------
-    profiles : sequence of Profile
-        All of the same number of sections, flat, linear and curved alike.
-    high : sequence of float
+    profile : Profile
+        Of many designs.
+    origins : sequence of Origin
+        What has each design's own profile.
+    high : array (n_designs,)
         Highest energy asked of each [eV].
     ends : (str, str)
     at_most : int, optional
@@ -106,67 +103,60 @@ def solve_family(
     list
         None for a design that one pass leaves unchecked: it is for `solve_profile` alone.
     """
-    results: list[Solution | None] = [None] * len(profiles)
-    low = np.array([lowest_edge(profile) for profile in profiles])
-    edges = [
-        [end.edge for end in open_ends(profile, ends) if end is not None] for profile in profiles
-    ]
-    top = np.array([max(a, min([h, *e])) for a, h, e in zip(low, high, edges, strict=True)])
+    results: list[Solution | None] = [None] * len(origins)
+    low = lowest_edge(profile)
+    edges = [end.edge for end in open_ends(profile, ends) if end is not None]
+    top = high
+    for edge in edges:  # nothing is bound above an open end's edge
+        top = np.minimum(top, edge)
+    top = np.maximum(low, top)
     if at_most is not None:
-        counts = _counts(profiles, top, ROUGH, ends, at_most)
-        for indices, family in _families(profiles, counts, ends):
-            top[indices] = tops(family, low[indices], top[indices], at_most)
-    counts = _counts(profiles, top, tolerance, ends, at_most)
-    for indices, family in _families(profiles, counts, ends):
-        solved = _solve_pattern(family, low[indices], top[indices], at_most, tolerance)
-        for i, solution in zip(indices, solved, strict=True):
+        for which, family in _families(profile, top, ROUGH, ends, at_most):
+            top[which] = tops(family, low[which], top[which], at_most)
+    for which, family in _families(profile, top, tolerance, ends, at_most):
+        mine = [origins[i] for i in which.tolist()]
+        solved = _solve_pattern(family, mine, low[which], top[which], at_most, tolerance)
+        for i, solution in zip(which.tolist(), solved, strict=True):
             results[i] = solution
     return results
 
 
-def _counts(
-    profiles: Sequence[Profile], top: Floats, tolerance: float, ends: tuple[str, str],
-    at_most: int | None,
-) -> list[Indices | None]:  # fmt: skip
-    """Return each design's slices a section; None if it is too large, as it will say alone."""
-    counts: list[Indices | None] = []
-    for profile, high in zip(profiles, top.tolist(), strict=True):
-        count = needed(profile, high, tolerance, ends)
-        try:
-            refuse_huge(profile, count, high, at_most)
-            counts.append(count)
-        except SolveError:
-            counts.append(None)
-    return counts
-
-
 def _families(
-    profiles: Sequence[Profile], counts: Sequence[Indices | None], ends: tuple[str, str]
-) -> Iterator[tuple[list[int], Family]]:
-    """Yield the designs of each slice pattern, by index and as a family."""
+    profile: Profile, top: Floats, tolerance: float, ends: tuple[str, str], at_most: int | None
+) -> Iterator[tuple[Indices, Family]]:
+    """Yield the designs of each slice pattern, by index and as a family.
+
+    Those too large to be held are left out: alone they say so.
+    """
+    counts = needed(profile, top, tolerance, ends)
+    numbers = profile.numbers
+    levels = guess_levels(
+        numbers.thickness.T, numbers.lowest.T, numbers.mass.T, numbers.inverse_gap.T, top
+    )
+    kept = levels if at_most is None else np.minimum(levels, at_most)
+    slices = counts.sum(axis=0)
+    held = np.flatnonzero((slices <= MOST_KEPT_SLICES) & (slices * kept <= MOST_CELLS))
     patterns: dict[bytes, list[int]] = {}
-    for index, count in enumerate(counts):
-        if count is not None:
-            patterns.setdefault(count.tobytes(), []).append(index)
+    for index, pattern in zip(held.tolist(), counts.T[held], strict=True):
+        patterns.setdefault(pattern.tobytes(), []).append(index)
     for key, indices in patterns.items():
+        some = profile if len(indices) == len(top) else chosen(profile, np.array(indices))
         pattern = np.frombuffer(key, dtype=np.int64)
-        yield indices, Family([cut(profiles[i], pattern) for i in indices], ends)
+        yield np.array(indices), Family(cut(some, pattern), ends)
 
 
 def _solve_pattern(
-    family: Family, low: Floats, high: Floats, at_most: int | None, tolerance: float
-) -> list[Solution | None]:
-    designs = len(low)
+    family: Family, origins: Sequence[Origin], low: Floats, high: Floats, at_most: int | None,
+    tolerance: float,
+) -> list[Solution | None]:  # fmt: skip
+    designs, slices = len(low), family.slices
     most = np.full(designs, np.iinfo(np.int64).max if at_most is None else at_most)
-    guess = np.array(
-        [
-            guess_levels(m.thickness, m.edge, m.mass, m.inverse_gap, float(h))[0]
-            for m, h in zip(family.members, high, strict=True)
-        ]
+    guess = guess_levels(
+        slices.thickness.T, slices.edge.T, slices.mass.T, slices.inverse_gap.T, high
     )
     asked = Asked(low, high, np.zeros(designs, dtype=np.int64), most, guess)
     found = find(family, asked, min(1e-3 * tolerance, 1e-9))
-    exact = family.members[0].profile.numbers.all_flat
+    exact = slices.profile.numbers.all_flat
     fine = family if exact else family.halved()
     error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
     bounds = np.concatenate(([0], np.cumsum(np.bincount(found.owner, minlength=designs))))
@@ -174,20 +164,17 @@ def _solve_pattern(
     last = np.append(found.energies, 0.0)[bounds[1:] - 1] + tolerance
     upper = np.where(cut_short, last, high)
     proof = certify(fine, found, low, upper, tolerance)
-    results: list[Solution | None] = []
-    for i in range(designs):
-        own = slice(bounds[i], bounds[i + 1])
-        if not proof.complete[i] or 3.0 * error[own].max(initial=0.0) > tolerance:
-            results.append(None)
-            continue
-        alone = np.zeros(bounds[i + 1] - bounds[i], dtype=np.int64)
-        mine = Found(
-            found.numbers[own], found.energies[own], found.nodes[:, own], found.single[own], alone
+    wrong = np.zeros(designs, dtype=bool)
+    wrong[found.owner[3.0 * error > tolerance]] = True
+    return [
+        Solution(
+            origin, slices.counts, family.ends, found.part(slice(first, end)), error[first:end],
+            proof.checked[first:end], True, floor, above, tolerance,
         )
-        results.append(
-            Solution(
-                System.of(family.members[i], family.ends), mine, error[own], proof.checked[own],
-                True, float(low[i]), float(upper[i]), tolerance,
-            )
-        )  # fmt: skip
-    return results
+        if good
+        else None
+        for origin, first, end, floor, above, good in zip(
+            origins, bounds[:-1].tolist(), bounds[1:].tolist(), low.tolist(), upper.tolist(),
+            (proof.complete & ~wrong).tolist(), strict=True,
+        )
+    ]  # fmt: skip

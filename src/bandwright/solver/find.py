@@ -41,6 +41,13 @@ class Found(NamedTuple):
     single: Flags
     owner: Indices
 
+    def part(self, which: slice) -> Found:
+        """Return the levels of one design of many, as a system of one has them."""
+        return Found(
+            self.numbers[which], self.energies[which], self.nodes[:, which], self.single[which],
+            np.zeros(which.stop - which.start, dtype=np.int64),
+        )  # fmt: skip
+
 
 class Asked(NamedTuple):
     """What is asked of each design of a system; arrays (n_designs,).

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import numpy.typing as npt
 
@@ -20,8 +22,12 @@ PHASE_LIMIT = 2.0
 MOST_SLICES = 2_000_000
 
 
-def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str]) -> Indices:
-    """Return how many slices each section needs for levels up to ``high`` [eV].
+def needed(
+    profile: Profile, high: float | Floats, tolerance: float, ends: tuple[str, str]
+) -> Indices:
+    """Return how many slices each section needs for levels up to ``high`` [eV], (n_sections,).
+
+    Of many designs ``high`` is (n_designs,) and the result (n_sections, n_designs).
 
     A flat outer section with an open end needs none: it goes on for ever from its inner face.
 
@@ -37,12 +43,13 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
     counts = np.ceil(wave * numbers.thickness / PHASE_LIMIT)
     if not numbers.all_flat:
         share = (max(tolerance, 1e-13) / 1e-6) ** (1 / 6)
-        slope = np.abs(numbers.edge[:, 1])
-        heavy = numbers.mass * (1.0 + above * numbers.inverse_gap) / H2M
-        depth = np.maximum(above, numbers.lowest - numbers.lowest.min())
-        rate = _mixed((heavy * slope) ** (1 / 3), np.sqrt(heavy * depth), 3) / (0.48 * share)
+        heavy = local / H2M
+        depth = np.maximum(above, numbers.lowest - numbers.lowest.min(axis=0))
+        steep = (heavy * np.abs(numbers.slope)) ** (1 / 3)
+        rate = _mixed(steep, np.sqrt(heavy * depth), 3) / (0.48 * share)
         rate = np.maximum(rate, 0.75 * wave)
-        counts = np.where(numbers.flat, counts, np.ceil(numbers.thickness * rate))
+        tilted = np.flatnonzero(~numbers.flat)
+        counts[tilted] = np.ceil(numbers.thickness * rate)[tilted]
         for index in np.flatnonzero(numbers.curved):
             section = profile.sections[index]
             for curve in (section.edge, section.mass, section.inverse_gap):
@@ -58,51 +65,53 @@ def needed(profile: Profile, high: float, tolerance: float, ends: tuple[str, str
             counts[0] = 0
         if last:
             counts[-1] = 0
-    if counts.sum() == 1:  # a face between two walls, so that K has a row
-        counts *= 2
-    return counts
+    # a face between two walls, so that K has a row
+    return np.where(counts.sum(axis=0) == 1, 2 * counts, counts)
 
 
-def _refuse_jump(curve: Sampled, thickness: float, name: str) -> None:
+def _refuse_jump(curve: Sampled, thickness: Any, name: str) -> None:
     """Raise `SolveError` if a curve jumps inside its section: slices would not see where."""
-    low, high = 0.0, thickness
+    low, high = np.zeros_like(thickness), np.asarray(thickness)
     for _ in range(6):  # ever closer around the steepest step
         places = np.linspace(low, high, 129)
-        steps = np.abs(np.diff(curve.at(places)))
-        worst = int(np.argmax(steps))
-        if steps[worst] < 1e-9:
+        steps = np.abs(np.diff(curve.at(places), axis=0))
+        worst = np.argmax(steps, axis=0)
+        step = np.take_along_axis(steps, worst[None], axis=0)[0]
+        if (step < 1e-9).all():
             return
-        low, high = float(places[worst]), float(places[worst + 1])
-    if high - low < 1e-6 * thickness and steps[worst] > 1e-6:
+        part = (high - low) / 128
+        low, high = low + worst * part, low + (worst + 1) * part
+    jumps = np.ravel((high - low < 1e-6 * thickness) & (step > 1e-6))
+    if jumps.any():
+        where = int(np.argmax(jumps))
         raise SolveError(
-            f"the shape jumps by {steps[worst]:.4g} about {low:.6g} nm from the first face; write"
-            " two layers there",
+            f"the shape jumps by {np.ravel(step)[where]:.4g} about {np.ravel(low)[where]:.6g} nm"
+            " from the first face; write two layers there",
             name,
         )
 
 
-def _curved_need(section: Section, high: float, share: float) -> int:
+def _curved_need(section: Section, high: Floats | float, share: float) -> Floats:
     points = np.linspace(0.0, section.thickness, 33)
     step = points[1]
-    edge = section.edge.at(points)
-    mass, _ = local_mass(
-        np.array(high), edge, section.mass.at(points), section.inverse_gap.at(points)
-    )
-    heavy = np.maximum(mass, section.mass.at(points))
-    steep = np.abs(np.gradient(edge, step))
-    bent = np.abs(np.gradient(np.gradient(edge, step), step))
-    drift = np.abs(np.gradient(np.log(mass), step))
+    edge, mass0 = section.edge.at(points), section.mass.at(points)
+    mass, _ = local_mass(np.asarray(high), edge, mass0, section.inverse_gap.at(points))
+    heavy = np.maximum(mass, mass0)
+    tilt = np.gradient(edge, axis=0) / step
+    steep = np.abs(tilt)
+    bent = np.abs(np.gradient(tilt, axis=0) / step)
+    drift = np.abs(np.gradient(np.log(mass), axis=0) / step)
     k3 = (heavy * steep / H2M) ** (1 / 3)
     k4 = (heavy * bent / H2M) ** (1 / 4)
     wave = np.sqrt(mass * np.maximum(high - edge, 0.0) / H2M)
-    reach = np.sqrt(heavy * np.maximum(np.abs(high - edge), edge - edge.min()) / H2M)
+    reach = np.sqrt(heavy * np.maximum(np.abs(high - edge), edge - edge.min(axis=0)) / H2M)
     rates = (
         _mixed(k3, reach, 3) / 0.42,
         _mixed(k4, reach, 4) / 0.44,
         _mixed(drift, reach, 1) / 0.42,
     )
-    rate = max(float(np.max(r)) for r in rates) / share
-    return int(np.ceil(section.thickness * max(rate, 0.75 * float(wave.max()))))
+    rate = np.max(rates, axis=(0, 1)) / share
+    return np.asarray(np.ceil(section.thickness * np.maximum(rate, 0.75 * wave.max(axis=0))))
 
 
 def _mixed(rate: Floats, reach: Floats, power: int) -> Floats:

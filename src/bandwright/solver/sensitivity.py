@@ -128,7 +128,7 @@ def numbers_at(profile: Profile, section: Indices, share: Floats) -> tuple[Float
     """
     numbers = profile.numbers
     depth = share * numbers.thickness[section]
-    edge = numbers.edge[section, 0] + numbers.edge[section, 1] * depth
+    edge = numbers.edge[section] + numbers.slope[section] * depth
     mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]
     for index in np.flatnonzero(numbers.curved):
         here = slice(*np.searchsorted(section, [index, index + 1]))

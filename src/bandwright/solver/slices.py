@@ -29,6 +29,8 @@ _MANY = 24
 class Slices:
     """Slices in growth order; all arrays (n_slices,) unless said otherwise.
 
+    Of many designs, arrays of numbers are (n_slices, n_designs).
+
     Attributes
     ----------
     counts : array (n_sections,)
@@ -90,8 +92,8 @@ class Slices:
     def kinds(self) -> list[tuple[Indices | None, type[Kind], tuple[Floats, ...]]]:
         """Return the kinds of slices: their rows (None is every row), evaluator and numbers.
 
-        Numbers are columns (..., n_rows, 1). Where equal flat slices repeat, each is there once
-        and rows says where every slice finds its own.
+        Numbers are columns (..., n_rows, n_designs or 1). Where equal flat slices repeat, each is
+        there once and rows says where every slice finds its own.
         """
         if self.profile.numbers.all_flat:
             first, back = self._distinct()
@@ -106,23 +108,20 @@ class Slices:
         if self.curved.any():
             rows = np.flatnonzero(self.curved)
             where = None if len(rows) == len(self) else rows
-            found.append((where, Curved, (self.thickness[rows, None], *self._gauss(rows))))
+            found.append((where, Curved, (_columns(self.thickness[rows]), *self._gauss(rows))))
         return found
 
     def _columns(self, rows: Indices | slice) -> tuple[Floats, ...]:
         arrays = (self.thickness, self.edge, self.mass, self.inverse_gap, self.drop)
-        return tuple(v[rows, None] for v in arrays)
+        return tuple(_columns(v[rows]) for v in arrays)
 
     def _distinct(self) -> tuple[Indices | slice, Indices | None]:
         """Return one row of each kind of equal flat slices, and where every slice finds its own."""
         if len(self) < _MANY:
             return slice(None), None
-        seen: dict[tuple[float, ...], int] = {}
-        keys = zip(
-            self.thickness.tolist(), self.edge.tolist(), self.mass.tolist(),
-            self.inverse_gap.tolist(), strict=True,
-        )  # fmt: skip
-        back = np.array([seen.setdefault(key, len(seen)) for key in keys])
+        seen: dict[bytes, int] = {}
+        keys = np.stack((self.thickness, self.edge, self.mass, self.inverse_gap), axis=1)
+        back = np.array([seen.setdefault(key.tobytes(), len(seen)) for key in keys])
         if 2 * len(seen) > len(self):
             return slice(None), None
         first = np.empty(len(seen), dtype=np.int64)
@@ -130,19 +129,22 @@ class Slices:
         return first, back
 
     def _gauss(self, rows: Indices) -> tuple[Floats, Floats, Floats]:
-        """Edge, mass and inverse gap at the three Gauss points, each (3, n_rows, 1)."""
-        shape = (3, len(rows))
-        found = (np.empty(shape), np.empty(shape), np.empty(shape))
-        thickness = self.thickness[rows]
-        depth = self.start[rows] + 0.5 * thickness + GAUSS[:, None] * thickness
+        """Edge, mass and inverse gap at the three Gauss points, each (3, n_rows, n_columns)."""
+        thickness = _columns(self.thickness[rows])
+        depth = _columns(self.start[rows]) + 0.5 * thickness + GAUSS[:, None, None] * thickness
+        found = (np.empty_like(depth), np.empty_like(depth), np.empty_like(depth))
         for index, here in _runs(self.section[rows]):
             section = self.profile.sections[index]
             for target, curve in zip(
                 found, (section.edge, section.mass, section.inverse_gap), strict=True
             ):
                 target[:, here] = curve.at(depth[:, here])
-        edge, mass, inverse_gap = (values[:, :, None] for values in found)
-        return edge, mass, inverse_gap
+        return found
+
+
+def _columns(numbers: Floats) -> Floats:
+    """Return slices as rows, their designs (or the one there is) as columns."""
+    return numbers.reshape(len(numbers), -1)
 
 
 def _runs(section: Indices) -> Iterator[tuple[int, slice]]:
@@ -160,8 +162,10 @@ def cut(profile: Profile, counts: Sequence[int] | Indices) -> Slices:
     counts = np.asarray(counts, dtype=np.int64)
     section = np.repeat(np.arange(len(counts)), counts)
     within = np.arange(len(section)) - (np.cumsum(counts) - counts)[section]
-    thickness = profile.numbers.thickness[section] / counts[section]
-    return slice_at(profile, counts, section, within * thickness, thickness)
+    thickness = profile.numbers.thickness[section]
+    column = (-1,) + (1,) * (thickness.ndim - 1)  # many designs stand along a further axis
+    thickness = thickness / counts[section].reshape(column)
+    return slice_at(profile, counts, section, within.reshape(column) * thickness, thickness)
 
 
 def slice_at(
@@ -170,12 +174,13 @@ def slice_at(
     """Return slices at given places of given sections, in ascending order of section."""
     numbers = profile.numbers
     flat, curved = numbers.flat[section], numbers.curved[section]
-    edge = numbers.edge[section, 0]
-    mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]
-    drop = numbers.edge[section, 1] * thickness
+    edge, mass, inverse_gap = (
+        a[section] for a in (numbers.edge, numbers.mass, numbers.inverse_gap)
+    )
+    drop = numbers.slope[section] * thickness
     if not numbers.all_flat:
         middle = start + 0.5 * thickness
-        edge = edge + numbers.edge[section, 1] * middle
+        edge = edge + numbers.slope[section] * middle
         rows = np.flatnonzero(curved)
         for index, here in _runs(section[rows]):
             some, part = rows[here], profile.sections[index]

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from ..errors import SolveError
-from ..profile import Profile
+from ..profile import Origin, Profile, Ready
 from .certificate import certify, halving_error
 from .find import Asked, Found, Solvable, find, guess_levels
 from .need import MOST_SLICES, needed
@@ -38,8 +39,11 @@ class Solution:
 
     Attributes
     ----------
-    system : System
-        The slices the levels were found on.
+    origin : Origin
+        Whatever has the profile.
+    counts : array (n_sections,)
+        Slices a section.
+    ends : (str, str)
     found : Found
         Numbers from 0, energies [eV] and rough states.
     error : array (n_levels,)
@@ -52,7 +56,9 @@ class Solution:
         Bounds [eV] between which the set is complete if ``complete``.
     """
 
-    system: System
+    origin: Origin
+    counts: Indices
+    ends: tuple[str, str]
     found: Found
     error: Floats
     count_checked: npt.NDArray[np.bool_]
@@ -60,6 +66,11 @@ class Solution:
     low: float
     high: float
     tolerance: float
+
+    @cached_property
+    def system(self) -> System:
+        """The slices the levels were found on."""
+        return System.of(cut(self.origin.profile, self.counts), self.ends)
 
     @property
     def numbers(self) -> Indices:
@@ -90,8 +101,8 @@ class Solution:
         if aim > float(self.error.max(initial=0.0)):
             return None
         finer = solve_profile(
-            self.system.slices.profile, self.low, self.high, len(self.energies), aim,
-            self.system.ends, int(self.numbers[0]),
+            self.origin.profile, self.low, self.high, len(self.energies), aim, self.ends,
+            int(self.numbers[0]),
         )  # fmt: skip
         return finer if len(finer.energies) == len(self.energies) else None
 
@@ -174,8 +185,8 @@ def solve_profile(
             bound = float(found.energies[-1]) + tolerance if cut_short else high
             proof = certify(fine, found, np.array([floor]), np.array([bound]), tolerance)
             if proof.complete[0] or accuracy < 1e-13:
-                return Solution(system, found, error, proof.checked, bool(proof.complete[0]),
-                                floor, bound, tolerance)  # fmt: skip
+                return Solution(Ready(profile), counts, ends, found, error, proof.checked,
+                                bool(proof.complete[0]), floor, bound, tolerance)  # fmt: skip
             accuracy = 1e-14  # a Newton stopped too soon would show here: go on to rounding
             continue
         if counts.sum() > 4 * size and worst > 0.2 * before:
@@ -214,17 +225,16 @@ def _asked(system: System, low: float, high: float, skip: int, at_most: int | No
     return Asked(np.array([low]), np.array([high]), np.array([skip]), np.array([most]), guess)
 
 
-def lowest_edge(profile: Profile) -> float:
-    """Return an energy [eV] below every level: the lowest edge, less a hair."""
+def lowest_edge(profile: Profile) -> Any:
+    """Return an energy [eV] below every level: the lowest edge, less a hair; or each design's."""
     numbers = profile.numbers
-    least = float(numbers.lowest.min())
-    if numbers.all_flat:
-        return least - 1e-9
+    least = numbers.lowest.min(axis=0)
     for index in np.flatnonzero(numbers.curved):
         section = profile.sections[index]
         values = section.edge.at(np.linspace(0.0, section.thickness, 65))
-        least = min(least, float(values.min() - np.max(np.abs(np.diff(values))) * 0.25))
-    return least - 1e-9
+        steps = np.abs(np.diff(values, axis=0)).max(axis=0)
+        least = np.minimum(least, values.min(axis=0) - 0.25 * steps)
+    return least - 1e-9 if profile.designs else float(least) - 1e-9
 
 
 def tops(system: Solvable, low: Floats, high: Floats, wanted: int) -> Floats:

@@ -130,9 +130,9 @@ class States:
         """Where the mass of each level meets its floor in a linear edge [nm]: dm/dE jumps there."""
         profile = self.system.slices.profile
         numbers = profile.numbers
-        rising = np.flatnonzero((numbers.edge[:, 1] != 0.0) & ~numbers.curved
+        rising = np.flatnonzero((numbers.slope != 0.0) & ~numbers.curved
                                 & (numbers.inverse_gap > 0.0))  # fmt: skip
-        edge, slope = numbers.edge[rising].T
+        edge, slope = numbers.edge[rising], numbers.slope[rising]
         top = self.energies[:, None] + (1.0 - MASS_FLOOR) / numbers.inverse_gap[rising]
         depth = (top - edge) / slope
         inside = (depth > 0.0) & (depth < numbers.thickness[rising])

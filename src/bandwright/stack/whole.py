@@ -111,7 +111,7 @@ class Stack:
         return self._signed(self.bias, negative="to substrate")
 
     def _signed(self, value: float | None, negative: str) -> float | None:
-        return -value if value and self.electrons_run == negative else value
+        return -value if self.electrons_run == negative and value else value
 
     def written(self) -> tuple[Written, ...]:
         """Return each written layer once, in growth order, numbered from 1.
