@@ -143,7 +143,7 @@ def test_a_stack_that_no_line_can_hold_is_still_named():
 
 def test_lines_text_names_the_line_of_the_budget_and_ends_in_safety(flat):
     said = text.lines_text(flat.lines())
-    assert re.search(r"^what moves 2 to 1, \d+\.\d{3} um:$", said, re.MULTILINE)
+    assert re.search(r"^what moves 2 to 1, \d+\.\d{3} um, to first order:$", said, re.MULTILINE)
     assert said.rstrip().splitlines()[-2].startswith("safety ")
 
 

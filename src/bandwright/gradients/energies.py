@@ -69,7 +69,7 @@ def parameters_of(levels: Levels, names: Sequence[str] | None) -> tuple[Paramete
         If a name is none of the stack's.
     """
     known = {p.name: p for p in list_parameters(levels.stack)}
-    model = _model_parameters(levels.stack)
+    model = model_parameters(levels.stack)
     if names is None:
         every = [p for p in known.values() if p.kind not in ("donors", "acceptors")]
         return (*every, *(p for p in model.values() if p.kind == "substrate lattice"))
@@ -83,7 +83,7 @@ def parameters_of(levels: Levels, names: Sequence[str] | None) -> tuple[Paramete
     return tuple(found)
 
 
-def _model_parameters(stack: Stack) -> dict[str, Parameter]:
+def model_parameters(stack: Stack) -> dict[str, Parameter]:
     """Return the numbers of the model that can be moved in a stack."""
     materials = [w.number for w in stack.written() if w.layer.material is not None]
     own = [w.number for w in stack.written() if w.layer.material is None]

@@ -128,7 +128,7 @@ def budget_parts(lines: Lines) -> tuple[str, Columns, list[Fact]]:
     # a sentence says in words what its row says in numbers, and its remark
     said = zip(columns.pop("sentence"), columns.pop("remark"), strict=True)
     notes = [("note", text) for text, remark in said if remark]
-    return f"what moves {line.name}, {wavelength} um:", columns, notes
+    return f"what moves {line.name}, {wavelength} um, to first order:", columns, notes
 
 
 def budget_text(lines: Lines) -> list[str]:
