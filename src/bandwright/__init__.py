@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from .errors import BandwrightError as BandwrightError
     from .errors import BandwrightWarning as BandwrightWarning
     from .errors import MaterialError as MaterialError
+    from .errors import PictureError as PictureError
     from .errors import QuantityError as QuantityError
     from .errors import SolveError as SolveError
     from .errors import StackError as StackError
@@ -33,6 +34,11 @@ if TYPE_CHECKING:
     from .many import Many as Many
     from .many import solve_many as solve_many
     from .materials import Library as Library
+    from .pictures import band_diagram as band_diagram
+    from .pictures import budget_bars as budget_bars
+    from .pictures import save_picture as save_picture
+    from .pictures import sweep_curves as sweep_curves
+    from .pictures import yield_histogram as yield_histogram
     from .shapes import Points as Points
     from .stack import Layer as Layer
     from .stack import Repeat as Repeat
@@ -50,6 +56,7 @@ _ROOMS = {
         "BandwrightError",
         "BandwrightWarning",
         "MaterialError",
+        "PictureError",
         "QuantityError",
         "SolveError",
         "StackError",
@@ -67,6 +74,13 @@ _ROOMS = {
     "many": ("Many", "solve_many"),
     "gradients": ("Gradient", "LineGradient"),
     "comparison": ("compare",),
+    "pictures": (
+        "band_diagram",
+        "budget_bars",
+        "save_picture",
+        "sweep_curves",
+        "yield_histogram",
+    ),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
 

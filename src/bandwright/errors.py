@@ -62,6 +62,10 @@ class SolveError(BandwrightError, RuntimeError):
     """Levels that can't be found to the accuracy asked."""
 
 
+class PictureError(BandwrightError, RuntimeError):
+    """A picture that can't be drawn or written."""
+
+
 class BandwrightWarning(UserWarning):
     """A result that stands, with something its reader should know."""
 

@@ -8,7 +8,7 @@ import pytest
 
 from bandwright import cli
 
-COMMANDS = ("levels", "lines", "compare", "materials")
+COMMANDS = ("levels", "lines", "compare", "picture", "materials")
 
 PROBE = """
 import json, sys

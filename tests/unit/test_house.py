@@ -37,6 +37,7 @@ HOUSE = [
     "metrics",
     "comparison",
     "report",
+    "pictures",
     "cli",
 ]
 
@@ -47,12 +48,13 @@ HANDED_ON = {
     ("levels", "cautions"),
     ("levels", "gradients"),
     ("levels", "lines"),
+    ("levels", "pictures"),
     ("levels", "report"),
     ("lines", "budget"),
     ("lines", "report"),
 }
 
-KNOWN_TO_ONE = {"pint": "quantities", "pandas": "frames"}
+KNOWN_TO_ONE = {"pint": "quantities", "pandas": "frames", "matplotlib": "pictures"}
 MODULES = sorted(p.relative_to(SRC) for p in SRC.rglob("*.py"))
 
 

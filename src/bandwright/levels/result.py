@@ -22,6 +22,7 @@ from .states import AllStates
 
 if TYPE_CHECKING:
     import pandas as pd
+    from matplotlib.axes import Axes
 
     from ..gradients import Gradient
     from ..lines import Lines
@@ -309,6 +310,25 @@ class Levels:
         from ..gradients import gradient_of
 
         return gradient_of(self, parameters)
+
+    def plot(
+        self, ax: Axes | None = None, *, width: object = "85 mm", height: object = None,
+        whole: bool = False,
+    ) -> Axes:  # fmt: skip
+        """Draw the band diagram; see `bandwright.pictures.band_diagram`.
+
+        Parameters
+        ----------
+        ax : Axes, optional
+            Where to draw; a new figure of pyplot's if absent.
+        width, height : length
+            Size of a new figure.
+        whole : bool
+            Whether outer layers are shown in full, not only as far as the states reach.
+        """
+        from ..pictures import band_diagram
+
+        return band_diagram(self, ax, width=width, height=height, whole=whole)
 
     def __repr__(self) -> str:
         return f"<Levels: {len(self)} of {self.stack.name or 'a stack without a name'}>"
