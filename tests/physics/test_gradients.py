@@ -413,6 +413,84 @@ def test_factors_on_the_model_against_differences_of_the_solver(case, names):
         assert off < 1e-6
 
 
+def section_sums(weights, sections):
+    """Sum and first moment of each weight over each section, (7, n_levels, n_sections)."""
+    edge, mass, gap = weights.edge, weights.mass, weights.inverse_gap
+    values = [q * s for q in (edge, mass, gap) for s in (1.0, weights.share)]
+    sums = np.zeros((7, len(edge), sections))
+    for index in range(sections):
+        here = weights.section == index
+        sums[:6, :, index] = [v[:, here].sum(axis=1) for v in values]
+    sums[6] = weights.thickness
+    return sums
+
+
+def at_its_edge():
+    """A stack whose first level lies at the edge of one of its layers, to rounding."""
+    edge = 0.05
+    for _ in range(60):
+        middle = own(1.5, edge, 0.07)
+        layers = [own(8, 0.3, 0.09), own(4, 0.0, 0.067, label="z"), middle, own(3, 0.01, 0.066),
+                  own(8, 0.28, 0.09)]  # fmt: skip
+        stack = bw.Stack(layers, zero="z")
+        edge = float(bw.solve(stack, at_most=1, tolerance="1e-12 eV").energies[0])
+    return stack
+
+
+@pytest.mark.parametrize(
+    "stack",
+    [
+        *(CASES[n][0] for n in ("one band, open", "one band, walls", "two bands, open",
+                                "two bands, mass at its floor in barriers", "strained",
+                                "repeats in monolayers, relaxed")),
+        bw.Stack([own(60, 0.3, 0.09), own(7, 0.0, 0.067), own(60, 0.3, 0.09)]),
+        at_its_edge,
+    ],
+)  # fmt: skip
+def test_flat_sections_weigh_as_points_along_them_do(stack):
+    stack = stack() if callable(stack) else stack
+    levels = bw.solve(stack, tolerance="1e-12 eV", at_most=4)
+    for states in levels.states.sets:
+        count = len(levels.profile.sections)
+        flat, points = (
+            section_sums(w, count) for w in (states.sensitivity, states.sensitivity_at_points)
+        )
+        assert len(states.sensitivity.section) < 0.5 * len(states.sensitivity_at_points.section)
+        for one, two in zip(flat, points, strict=True):
+            off = np.abs(one - two) / np.maximum(np.abs(two).max(axis=1, keepdims=True), 1e-300)
+            print(f"{off.max():.1e}", end=" ")
+            assert off.max() < 2e-9
+
+
+@pytest.mark.parametrize("grading", ["linear", "quadratic"])
+def test_grades_that_are_flat_as_designed(grading):
+    """Both faces of a grade alike: what bends it is weighed along it all the same."""
+    grade = bw.Layer("6 nm", "AlxGa1-xAs", x=(0.05, 0.05), grading=grading, label="well")
+    tilt = bw.Layer("5 nm", "AlxGa1-xAs", x=(0.06, 0.06), grading=grading, label="next")
+    wall = bw.Layer("9 nm", WALL)
+    stack = bw.Stack([wall, grade, bw.Layer("2 nm", WALL), tilt, wall], zero="GaAs")
+    levels = bw.solve(stack, tolerance=f"{TOLERANCE} eV")
+    names = ["well.x_first", "well.x_last", "well.x_shift", "next.x_last"]
+    gradient = levels.gradient(names)
+    for name, found in zip(names, gradient.energies.T, strict=True):
+        # which face of a quadratic grade is flat depends on the side it is moved to
+        expected = sided(levels, name) if grading == "quadratic" else differences(
+            levels, gradient.parameters[names.index(name)]
+        )[0]  # fmt: skip
+        assert found == pytest.approx(expected, rel=2e-6)
+
+
+def sided(levels, name):
+    """dE by a parameter towards the side on which a grade's first face stays the lower."""
+    sign = -1.0 if name.endswith("first") else 1.0
+    step = sign * STEPS["composition"]
+    ways = {
+        k: build_profile(replace(levels.stack, name, read(levels.stack, name) + k * step))
+        for k in FORWARD
+    }
+    return sum(w * energies(levels, ways[k]) for k, w in FORWARD.items()) / step
+
+
 def test_zero_follows_the_offset_share():
     layers = [bw.Layer("9 nm", WALL), bw.Layer("7 nm", "GaAs"), bw.Layer("9 nm", WALL)]
     lowest = bw.solve(bw.Stack(layers)).gradient(["offset_share"])

@@ -17,6 +17,7 @@ from ..errors import BandwrightError
 from ..formula import parse
 from ..materials import Library
 from ..parameters import FLUX, Parameter
+from ..parameters.fluxes import cations_of
 from ..parameters.layers import replaced
 from ..shapes import Flat, Shape
 from .along import STEP, Along
@@ -131,6 +132,11 @@ class Columns:
             single_slopes(around, str(self.layout.stack.substrate), (), "composition").lattice
         )
 
+    def _composition(self, site: Site) -> Any:
+        """Return the composition of a uniform layer."""
+        values: dict[str, Any] = {k: s.samples[0] for k, s in site.layer.fractions}
+        return parse(str(site.layer.material), **values)
+
     def _single(self, site: Site, direction: str) -> Slopes:
         values = tuple((k, s.value) for k, s in site.layer.fractions if isinstance(s, Flat))
         return single_slopes(self.around, str(site.layer.material), values, direction)
@@ -171,16 +177,13 @@ class Columns:
         self._varied(column, site, places.slopes(letter), places.change(shape, part))
 
     def _flux(self, column: int, site: Site, name: str) -> None:
-        layer, element = site.layer, name.removeprefix(FLUX)
-        zeros: dict[str, Any] = dict.fromkeys((k for k, _ in layer.fractions), 0.0)
-        if len(parse(str(layer.material), **zeros).cations) == 1:
+        element = name.removeprefix(FLUX)
+        if len(cations_of(site.layer)) == 1:
             self._thicker(column, site, site.thickness)
         elif site.uniform:
             found = self._single(site, name)
-            values: dict[str, Any] = {k: s.samples[0] for k, s in layer.fractions}
-            share = float(parse(str(layer.material), **values).fraction(element))
+            share, monolayer = self._composition(site).fraction(element), site.monolayer
             self._uniform(column, site, found._replace(monolayer=0.0))
-            monolayer = float(np.ravel(self._places(site).point.monolayer)[0])
             self._thicker(column, site, site.thickness * (share + found.monolayer / monolayer))
         else:
             changes, taller = graded_flux(self._places(site), element)
@@ -192,18 +195,22 @@ class Columns:
                 self._varied(column, site, still, change)
 
     def _gap(self, column: int, site: Site) -> None:
-        gap = self._places(site).point.gap
         if site.uniform:
-            self.edge[site.sections, column] += float(np.ravel(gap)[0])
+            around = self.around
+            point = around.library.properties(
+                self._composition(site), around.temperature, around.substrate
+            )
+            self.edge[site.sections, column] += float(point.gap)
         else:
-            zero = np.zeros(len(self._places(site).depth))
-            self._varied(column, site, Slopes(zero + gap, zero, zero, zero, zero))
+            places = self._places(site)
+            zero = np.zeros(len(places.depth))
+            self._varied(column, site, Slopes(zero + places.point.gap, zero, zero, zero, zero))
 
     # --- own numbers -------------------------------------------------------------------------
 
     def _own(self, column: int, site: Site, key: str) -> None:
         base, _, part = key.partition("_")
-        shape = dict(site.layer.shapes)[base]
+        shape = site.shapes[base]
         if site.uniform:
             table = {"edge": self.edge, "mass": self.mass}.get(base, self.inverse_gap)
             if base in ("edge", "mass") or self.two_band:
@@ -260,8 +267,7 @@ class Columns:
         if site.number not in self._sites:
             depth = [self.layout.depths(f.weights, points_of(f, site)) for f in self.folds]
             ends = np.array([0.0, site.thickness])
-            at = np.zeros(1) if site.uniform else np.concatenate([*depth, ends])
-            self._sites[site.number] = Along(site, self.around, at)
+            self._sites[site.number] = Along(site, self.around, np.concatenate([*depth, ends]))
         return self._sites[site.number]
 
 

@@ -121,7 +121,10 @@ def energy_slopes(levels: Levels, parameters: Sequence[Parameter]) -> Slopes:
     layout = Layout(levels.stack, profile)
     last = len(profile.sections) - 1
     outer = at_points(np.array([0, last]), np.array([0.0, 1.0]), last + 1)
-    weights = [*(states.sensitivity for states in levels.states.sets), outer]
+    weights = [
+        *(s.sensitivity_at_points if layout.bent else s.sensitivity for s in levels.states.sets),
+        outer,
+    ]
     folds = [Fold(layout, one, profile.field) for one in weights]
     columns = Columns(layout, parameters, [*folds, zero_places(layout)])
     zero = zero_slopes(columns, parameters, len(folds))
@@ -130,20 +133,22 @@ def energy_slopes(levels: Levels, parameters: Sequence[Parameter]) -> Slopes:
         own = fold.edge[:, layout.own].sum(axis=1, keepdims=True)
         materials = fold.edge[:, ~layout.own].sum(axis=1, keepdims=True)
         rows.append(changed(columns, place) - materials * zero.material - own * zero.own)
-    edges = [_open_edge_slope(profile, slopes) for slopes in rows.pop().T]
+    edges = _open_edge_slopes(profile, rows.pop())
     energies = np.concatenate([np.zeros((0, len(parameters))), *rows])
-    return Slopes(energies, np.array(edges), zero.kinked)
+    return Slopes(energies, edges, zero.kinked)
 
 
-def _open_edge_slope(profile: Profile, slopes: Floats) -> float:
-    """Return the slope of the lower open edge; where both are equal, towards larger values."""
-    ends = [i for i in (0, 1) if profile.ends[i] == "open"]
-    if not ends:
-        return float("nan")
+def _open_edge_slopes(profile: Profile, slopes: Floats) -> Floats:
+    """Return the slope of the lower open edge; where both are equal, towards larger values.
+
+    ``slopes`` (2, n_parameters) are of the edge at both outer faces.
+    """
+    ends = np.array([i for i in (0, 1) if profile.ends[i] == "open"], dtype=np.int64)
+    if not len(ends):
+        return np.full(slopes.shape[1], np.nan)
     last = len(profile.sections) - 1
-    edges, _, _ = numbers_at(profile, np.array([0, last]), np.array([0.0, 1.0]))
-    low = min(edges[i] for i in ends)
-    return float(min(slopes[i] for i in ends if edges[i] <= low + _TIE))
+    edges = numbers_at(profile, np.array([0, last]), np.array([0.0, 1.0]))[0][ends]
+    return np.asarray(slopes[ends[edges <= edges.min() + _TIE]].min(axis=0))
 
 
 def clusters(levels: Levels) -> npt.NDArray[np.int64]:

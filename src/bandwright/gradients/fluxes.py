@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 import numpy.typing as npt
+from numpy.polynomial import chebyshev
 
 from ..formula import parse
 from ..parameters.fluxes import cation_of
@@ -17,6 +18,8 @@ from .along import Along
 Floats = npt.NDArray[np.float64]
 
 _GAUSS, _WEIGHTS = np.polynomial.legendre.leggauss(12)
+_DEGREE = 24
+_NODES = np.cos(np.pi * (np.arange(_DEGREE + 1) + 0.5) / (_DEGREE + 1))
 
 
 def graded_flux(along: Along, element: str) -> tuple[dict[str, Floats], Floats]:
@@ -38,10 +41,16 @@ def graded_flux(along: Along, element: str) -> tuple[dict[str, Floats], Floats]:
     if any(isinstance(shape, Points) for shape in shapes.values()):
         at_faces = _grown(along, element, faces)
         changes = {k: np.interp(along.depth, faces, v) for k, v in at_faces.items()}
-        return changes, _taller(along, element, faces[:-1], faces[1:])
-    [total] = _taller(along, element, faces[:1], faces[1:])
-    up_to = _taller(along, element, np.zeros_like(along.depth), along.depth)
-    shift = up_to - along.depth / thickness * total
+        half = 0.5 * np.diff(faces)[:, None]
+        inside = faces[:-1, None] + half * (1.0 + _GAUSS)
+        rates = _rate(along, element, inside.reshape(-1)).reshape(inside.shape)
+        return changes, np.asarray((half * _WEIGHTS * rates).sum(axis=1))
+    series = chebyshev.chebfit(_NODES, _rate(along, element, 0.5 * thickness * (1.0 + _NODES)),
+                               _DEGREE)  # fmt: skip
+    taller = chebyshev.chebint(series, lbnd=-1.0, scl=0.5 * thickness)
+    total = float(chebyshev.chebval(1.0, taller))
+    share = along.depth / thickness
+    shift = chebyshev.chebval(2.0 * share - 1.0, taller) - share * total
     step = 1e-3 * thickness
     changes = {}
     for letter, change in _grown(along, element, along.depth).items():
@@ -66,14 +75,11 @@ def _grown(along: Along, element: str, depth: Floats) -> dict[str, Floats]:
     return found
 
 
-def _taller(along: Along, element: str, start: Floats, stop: Floats) -> Floats:
-    """Return the change of the thickness between depths [nm], by Gauss's rule, (n,)."""
-    half = 0.5 * (stop - start)[:, None]
-    depth = (start[:, None] + half * (1.0 + _GAUSS)).reshape(-1)
-    material = str(along.site.layer.material)
-    composition = parse(material, **along.letters(depth))
+def _rate(along: Along, element: str, depth: Floats) -> Floats:
+    """Return how much more a stretch grows at each depth."""
+    composition = parse(str(along.site.layer.material), **along.letters(depth))
     rate = np.asarray(composition.fraction(element), dtype=float)
-    monolayer = np.asarray(along.monolayers(depth))
+    monolayer = along.monolayers(depth)
     for letter, change in _grown(along, element, depth).items():
         rate = rate + along.slopes(letter, depth).monolayer * change / monolayer
-    return np.asarray((half * _WEIGHTS * rate.reshape(len(start), -1)).sum(axis=1))
+    return rate

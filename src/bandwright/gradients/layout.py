@@ -18,7 +18,7 @@ import numpy as np
 import numpy.typing as npt
 
 from ..profile import Profile
-from ..shapes import Face, Flat
+from ..shapes import Face, Flat, Quadratic, Shape
 from ..solver.sensitivity import Sensitivity
 from ..stack import Layer, Stack
 
@@ -37,6 +37,8 @@ class Site:
     layer : Layer
     thickness : float
         [nm], monolayers resolved.
+    monolayer : float
+        [nm]; nan of own numbers.
     sections : array
         Of all its copies.
     """
@@ -44,12 +46,18 @@ class Site:
     number: int
     layer: Layer
     thickness: float
+    monolayer: float
     sections: Indices
 
-    @property
+    @cached_property
+    def shapes(self) -> dict[str, Shape]:
+        """The shapes of its numbers, by key."""
+        return dict(self.layer.shapes)
+
+    @cached_property
     def uniform(self) -> bool:
         """Whether nothing varies along it."""
-        return all(isinstance(shape, Flat) for _, shape in self.layer.shapes)
+        return all(isinstance(shape, Flat) for shape in self.shapes.values())
 
     @property
     def per_unit(self) -> float:
@@ -82,9 +90,15 @@ class Layout:
         cuts = np.searchsorted(self.written[order], np.arange(1, len(facts)))
         parts = np.split(order, cuts)
         return {
-            w.number: Site(w.number, w.layer, facts[w.number - 1].thickness, parts[w.number - 1])
-            for w in self.stack.written()
+            w.number: Site(w.number, w.layer, fact.thickness, fact.monolayer, sections)
+            for w, fact, sections in zip(self.stack.written(), facts, parts, strict=True)
         }
+
+    @cached_property
+    def bent(self) -> bool:
+        """Whether a number can bend along a layer that is flat as designed."""
+        sites = self.sites.values()
+        return any(isinstance(shape, Quadratic) for site in sites for shape in site.shapes.values())
 
     @cached_property
     def heights(self) -> Floats:
@@ -145,10 +159,16 @@ class Fold:
     weights: Sensitivity
     field: float
 
+    @cached_property
+    def _present(self) -> tuple[Indices, Indices]:
+        """Sections that have points, and where theirs begin."""
+        present, starts = np.unique(self.weights.section, return_index=True)
+        return present, starts
+
     def _sum(self, values: Floats) -> Floats:
         """Sum over the points of each section, (n_rows, n_sections)."""
         total = np.zeros((len(values), len(self.layout.heights)))
-        present, starts = np.unique(self.weights.section, return_index=True)
+        present, starts = self._present
         total[:, present] = np.add.reduceat(values, starts, axis=1)
         return total
 

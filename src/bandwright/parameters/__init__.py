@@ -99,15 +99,17 @@ def list_parameters(stack: Stack) -> list[Parameter]:
     flux Ga  (1, 2, 3)
     """
     found: list[Parameter] = []
-    by_label: dict[str, list[Written]] = {}
-    for written in stack.written():
-        if written.layer.label is not None:
-            by_label.setdefault(written.layer.label, []).append(written)
-    for written in stack.written():
+    every = stack.written()
+    numbers = {written.number: tuple(numbers_of(written)) for written in every}
+    by_label: dict[str | None, list[Written]] = {}
+    for written in every:
+        by_label.setdefault(written.layer.label, []).append(written)
+    for written in every:
         label = written.layer.label
         together = by_label[label] if label is not None else [written]
-        for number in numbers_of(written):
-            agree = all(number in numbers_of(other) for other in together)
+        others = [numbers[other.number] for other in together if other is not written]
+        for number in numbers[written.number]:
+            agree = all(number in other for other in others)
             if agree and written.number != together[0].number:
                 continue  # listed with the first
             members = together if agree else [written]

@@ -16,7 +16,7 @@ import numpy.typing as npt
 from ..constants import H2M
 from .matrix import Elements
 from .propagation import MASS_FLOOR, local_mass
-from .sensitivity import Reach, Sensitivity, sensitivity, tail_reaches
+from .sensitivity import Reach, Sensitivity, flat_reach, reach, sensitivity, tail_reaches
 from .slices import slice_at
 from .system import System
 
@@ -221,11 +221,27 @@ class States:
 
     @cached_property
     def sensitivity(self) -> Sensitivity:
-        """What small changes of the profile do to each energy, tails beyond open ends included."""
+        """What small changes of the profile do to each energy, tails beyond open ends included.
+
+        In flat profiles for changes that are linear across a slice.
+        """
+        if not self.system.slices.profile.numbers.all_flat or not len(self.energies):
+            return self.sensitivity_at_points
+        return self._sensitivity(flat_reach(self.system.slices, self.energies, self.u), False)
+
+    @cached_property
+    def sensitivity_at_points(self) -> Sensitivity:
+        """The same for changes that vary in any way along a section."""
         q, profile = self._quadrature, self.system.slices.profile
-        parts = [Reach(q.section, q.z - profile.faces[q.section], q.weight, q.u, q.rise)]
+        depth = q.z - profile.faces[q.section]
+        return self._sensitivity(reach(q.section, depth, q.weight, q.u, q.rise))
+
+    def _sensitivity(self, inside: Reach, at_points: bool = True) -> Sensitivity:
+        profile, parts = self.system.slices.profile, [inside]
         for tail in self._tails:
-            parts += tail_reaches(profile, tail.position, tail.outward, tail.decay, tail.u, tail.p)
+            parts += tail_reaches(
+                profile, tail.position, tail.outward, tail.decay, tail.u, tail.p, at_points
+            )
         return sensitivity(profile, self.energies, parts)
 
     @property
