@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from .errors import MaterialError as MaterialError
     from .errors import PictureError as PictureError
     from .errors import QuantityError as QuantityError
+    from .errors import ResultsError as ResultsError
     from .errors import SolveError as SolveError
     from .errors import StackError as StackError
     from .errors import StackFileError as StackFileError
@@ -48,6 +49,7 @@ if TYPE_CHECKING:
     from .stackframe import frame_from_stack as frame_from_stack
     from .stackframe import stack_from_frame as stack_from_frame
     from .stackline import parse_line as parse_line
+    from .sweeps import sweep as sweep
 
     __version__: str
 
@@ -58,6 +60,7 @@ _ROOMS = {
         "MaterialError",
         "PictureError",
         "QuantityError",
+        "ResultsError",
         "SolveError",
         "StackError",
         "StackFileError",
@@ -81,6 +84,7 @@ _ROOMS = {
         "sweep_curves",
         "yield_histogram",
     ),
+    "sweeps": ("sweep",),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
 

@@ -48,6 +48,10 @@ class StackFileError(StackError):
     """A stack file or line that can't be read."""
 
 
+class ResultsError(BandwrightError, ValueError):
+    """A results file that can't be written, or that holds something else."""
+
+
 class MaterialError(BandwrightError, ValueError):
     """A formula or material file that gives no usable number."""
 

@@ -72,6 +72,32 @@ def frame(
     return pd.DataFrame(series, index=labels)
 
 
+def is_table(value: object) -> bool:
+    """Return whether a value is a DataFrame; pandas is not loaded to see that it is none."""
+    import sys
+
+    pandas = sys.modules.get("pandas")
+    return pandas is not None and isinstance(value, pandas.DataFrame)
+
+
+def columns_of_table(table: Any) -> dict[str, list[Any]]:
+    """Return the columns of a user's DataFrame by name, as lists of Python's values.
+
+    Raises
+    ------
+    StackError
+        If a column has no name or the name of another.
+
+    Examples
+    --------
+    >>> import pandas as pd
+    >>> columns_of_table(pd.DataFrame({"well.thickness_nm": [4.0, 5.5]}))
+    {'well.thickness_nm': [4.0, 5.5]}
+    """
+    names = _names(table)
+    return {name: table.iloc[:, position].tolist() for position, name in enumerate(names)}
+
+
 def rows(table: object) -> list[dict[str, Any]]:
     """Return the rows of a user's DataFrame as dicts, without the cells that are empty.
 
@@ -92,10 +118,7 @@ def rows(table: object) -> list[dict[str, Any]]:
 
     if not isinstance(table, pd.DataFrame):
         raise StackError(f"got {show(table)}; give a pandas DataFrame, one row a layer")
-    names = [_name(column) for column in table.columns]
-    for name in names:
-        if names.count(name) > 1:
-            raise StackError(f"column {name!r}: {names.count(name)} columns have this name")
+    names = _names(table)
     series = [table.iloc[:, position].tolist() for position in range(len(names))]
     return [
         {name: _plain(cell) for name, cell in zip(names, cells, strict=True) if not _empty(cell)}
@@ -103,7 +126,17 @@ def rows(table: object) -> list[dict[str, Any]]:
     ]
 
 
+def _names(table: pd.DataFrame) -> list[str]:
+    names = [_name(column) for column in table.columns]
+    for name in names:
+        if names.count(name) > 1:
+            raise StackError(f"column {name!r}: {names.count(name)} columns have this name")
+    return names
+
+
 def _column(values: Sequence[Any] | npt.NDArray[Any], text: bool, whole: bool) -> npt.NDArray[Any]:
+    if isinstance(values, np.ndarray) and values.dtype == np.float64 and len(values) and not text:
+        return values.copy()
     cells = values.tolist() if isinstance(values, np.ndarray) else [_plain(v) for v in values]
     if text:
         return _objects(cells)

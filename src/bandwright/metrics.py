@@ -230,9 +230,17 @@ def _copies(energies: Floats, group: float) -> bool:
     return bool(np.any(np.diff(energies, axis=1) <= group))
 
 
-def _levels_found(solved: Solved) -> int:
-    """Return the number of levels found, those of a closed box too."""
-    return len(solved.levels)
+@dataclass(frozen=True)
+class LevelsFound:
+    """The number of levels found, those of a closed box too."""
+
+    def __call__(self, solved: Solved) -> int:
+        """Return the number."""
+        return len(solved.levels)
+
+    def of_energies(self, energies: Floats, choice: Choice, group: float) -> npt.NDArray[np.int64]:
+        """Return the number of each of many designs, as `OfEnergies` does."""
+        return np.asarray(np.count_nonzero(~np.isnan(energies), axis=1))
 
 
 def _level_count(solved: Solved) -> int:
@@ -249,7 +257,7 @@ def _largest_difference(solved: Solved) -> float | None:
 
 
 def _thickness(solved: Solved) -> float:
-    return solved.levels.profile.thickness
+    return float(solved.levels.profile.thickness)
 
 
 def _caution_count(solved: Solved) -> int:
@@ -259,7 +267,7 @@ def _caution_count(solved: Solved) -> int:
 #: every metric by the name of its column; `add_metric` adds to it
 METRICS: dict[str, Metric] = {
     "levels": _level_count,
-    "levels_found": _levels_found,
+    "levels_found": LevelsFound(),
     "upper": OfLine("upper"),
     "lower": OfLine("lower"),
     "wavelength_um": OfLine("wavelength_um"),

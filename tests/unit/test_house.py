@@ -36,6 +36,7 @@ HOUSE = [
     "budget",
     "metrics",
     "comparison",
+    "sweeps",
     "report",
     "pictures",
     "cli",
@@ -54,7 +55,12 @@ HANDED_ON = {
     ("lines", "report"),
 }
 
-KNOWN_TO_ONE = {"pint": "quantities", "pandas": "frames", "matplotlib": "pictures"}
+KNOWN_TO_ONE = {
+    "pint": "quantities",
+    "pandas": "frames",
+    "matplotlib": "pictures",
+    "tqdm": "sweeps",
+}
 MODULES = sorted(p.relative_to(SRC) for p in SRC.rglob("*.py"))
 
 

@@ -41,8 +41,8 @@ def test_nothing_but_toml_would_be_left_out_of_materials():
 
 @pytest.mark.parametrize("requirement", PROJECT["project"]["dependencies"])
 def test_each_dependency_has_one_lower_bound_that_ci_can_pin(requirement):
-    assert re.fullmatch(r"(numpy|scipy|pint|pandas)>=\d+(\.\d+)+", requirement)
+    assert re.fullmatch(r"(numpy|scipy|pint|pandas|tqdm)>=\d+(\.\d+)+", requirement)
 
 
 def test_nothing_else_is_needed_at_run_time():
-    assert len(PROJECT["project"]["dependencies"]) == 4
+    assert len(PROJECT["project"]["dependencies"]) == 5

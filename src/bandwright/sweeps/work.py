@@ -1,0 +1,166 @@
+"""A part of a sweep -> its rows: stacks made, solved together, asked for their metrics.
+
+What is here runs wherever an executor runs it: a task and a part are sent, a block comes back.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any, NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from ..errors import BandwrightError, StackError
+from ..levels import Levels
+from ..many import solve_many
+from ..metrics import Choice, Floats, Metric
+from ..stack import Stack
+from .making import maker
+
+#: a column of some designs: numbers, or whatever a metric gives, None where a design has nothing
+Column = npt.NDArray[Any] | list[Any]
+
+
+@dataclass(frozen=True)
+class Task:
+    """What is done with every design of a sweep.
+
+    Parameters
+    ----------
+    design : Stack or callable
+    names, units : tuple of str
+        Of the axes.
+    metrics : mapping of str to Metric
+    choice : Choice
+    group : float
+        Levels closer than this are copies [eV].
+    arguments : mapping
+        Of `bandwright.solve_many`.
+    """
+
+    design: Stack | Callable[..., Stack]
+    names: tuple[str, ...]
+    units: tuple[str, ...]
+    metrics: Mapping[str, Metric]
+    choice: Choice
+    group: float
+    arguments: Mapping[str, Any] = field(default_factory=dict)
+
+
+class Part(NamedTuple):
+    """Some designs: their numbers from 0, and what each is made with, axis by axis."""
+
+    designs: list[int]
+    values: list[list[Any]]
+
+
+class Block(NamedTuple):
+    """The rows of some designs: numbers from 0, metrics by name, and why a design has none."""
+
+    designs: list[int]
+    columns: dict[str, Column]
+    reasons: list[str | None]
+
+    def only(self, wanted: npt.NDArray[np.bool_]) -> Block:
+        """Return the rows of the designs that are wanted."""
+        kept = [i for i, design in enumerate(self.designs) if wanted[design]]
+        if len(kept) == len(self.designs):
+            return self
+        return Block(
+            [self.designs[i] for i in kept],
+            {name: _taken(column, kept) for name, column in self.columns.items()},
+            [self.reasons[i] for i in kept],
+        )
+
+
+def _taken(column: Column, kept: Sequence[int]) -> Column:
+    return column[kept] if isinstance(column, np.ndarray) else [column[i] for i in kept]
+
+
+def compute(task: Task, part: Part) -> Block:
+    """Return the rows of some designs."""
+    found = solve_part(task, part)
+    reasons: list[str | None] = [None if isinstance(one, Levels) else _reason(one) for one in found]
+    columns = _columns(task, found, reasons)
+    return Block(part.designs, columns, reasons)
+
+
+def solve_part(task: Task, part: Part) -> list[Levels | BandwrightError]:
+    """Return the levels of some designs, or what is wrong with them."""
+    made = maker(task.design, task.names, task.units)(part.values)
+    stacks = [one for one in made if isinstance(one, Stack)]
+    solved = iter(solve_many(stacks, **task.arguments))
+    return [next(solved) if isinstance(one, Stack) else one for one in made]
+
+
+def _reason(error: BaseException) -> str:
+    """Return what is wrong, in one line."""
+    return " ".join(str(error).split())
+
+
+def _columns(
+    task: Task, found: Sequence[Levels | BandwrightError], reasons: list[str | None]
+) -> dict[str, Column]:
+    """Return every metric of designs, and add to the reasons of those where one fails."""
+    energies = _energies(found)
+    solved = [isinstance(one, Levels) for one in found]
+    columns: dict[str, Column | None] = {}
+    for name, metric in task.metrics.items():
+        together = getattr(metric, "of_energies", None)
+        column = together(energies, task.choice, task.group) if together else None
+        columns[name] = None if column is None else _where_solved(column, solved)
+    slow = {name: task.metrics[name] for name, column in columns.items() if column is None}
+    if slow:
+        columns |= _one_by_one(slow, task.choice, found, reasons)
+    return {name: columns[name] for name in task.metrics}  # type: ignore[misc]  # all are there
+
+
+def _where_solved(column: npt.NDArray[Any], solved: Sequence[bool]) -> Column:
+    """Return a column without what counts for designs that have no levels."""
+    if all(solved) or column.dtype == np.float64:  # those have no energy, and so are nan
+        return column
+    return [cell if there else None for cell, there in zip(column.tolist(), solved, strict=True)]
+
+
+def _energies(found: Sequence[Levels | BandwrightError]) -> Floats:
+    """Return the energies of all designs [eV] (n_designs, n_levels), nan where there are fewer."""
+    each = [one.energies if isinstance(one, Levels) else () for one in found]
+    energies = np.full((len(each), max(map(len, each), default=0)), np.nan)
+    for row, own in zip(energies, each, strict=True):
+        row[: len(own)] = own
+    return energies
+
+
+def _one_by_one(
+    metrics: Mapping[str, Metric],
+    choice: Choice,
+    found: Sequence[Levels | BandwrightError],
+    reasons: list[str | None],
+) -> dict[str, Column | None]:
+    """Return metrics that take more than energies, design by design."""
+    columns: dict[str, list[Any]] = {name: [None] * len(found) for name in metrics}
+    for index, levels in enumerate(found):
+        if not isinstance(levels, Levels):
+            continue
+        solved = choice.solved(levels)
+        for name, metric in metrics.items():
+            try:
+                columns[name][index] = _plain(metric(solved), name)
+            except BandwrightError as error:
+                reasons[index] = reasons[index] or _reason(error)
+            except Exception as error:  # whatever a user's metric does, the sweep goes on
+                reasons[index] = reasons[index] or _reason(
+                    StackError(f"{type(error).__name__}: {error}", f"metric {name!r}")
+                )
+    return dict(columns)
+
+
+def _plain(value: Any, name: str) -> Any:
+    """Return a metric's value as Python's own number, text or None."""
+    value = value.item() if isinstance(value, np.generic) else value
+    if value is None or isinstance(value, int | float | str):
+        return value
+    raise StackError(f"gave {type(value).__name__}; a number, a word or None is due",
+                     f"metric {name!r}")  # fmt: skip
