@@ -394,6 +394,16 @@ def test_two_parameters_as_curves():
     assert [c.get_ydata()[0] for c in named(ax, "curve .*")] == pytest.approx([5.8, 6.0, 6.2])
 
 
+def test_the_wavelength_is_drawn_if_nothing_is_asked_else_what_has_a_unit():
+    table = pd.DataFrame({"x": [1.0, 2.0], "levels": [2, 3], "level_1_meV": [1.0, 2.0],
+                          "level_2_meV": [3.0, 4.0], "wavelength_um": [9.0, 8.0]})  # fmt: skip
+    assert [c.get_gid() for c in named(sweep_curves(table), "curve .*")] == ["curve wavelength"]
+    ax = sweep_curves(table.drop(columns="wavelength_um"))
+    assert labels(ax) == ["level 1", "level 2"]
+    ax = sweep_curves(table[["x", "levels"]])
+    assert [c.get_gid() for c in named(ax, "curve .*")] == ["curve levels"]
+
+
 def test_two_parameters_by_words():
     table = grid([0.0, 20.0], [6.0, 7.0])
     table["barrier"] = ["AlAs" if f else "Al0.3Ga0.7As" for f in table["field_kV_per_cm"]]

@@ -19,7 +19,7 @@ COMMANDS = {
     "levels": ("STACK", "Find every level of a stack."),
     "lines": ("STACK", "Find the wavelengths a stack emits or detects."),
     "compare": ("STACK ...", "Set designs side by side, a row each."),
-    "picture": ("STACK --output FILE", "Draw a stack with its levels, or what moves its line."),
+    "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),
     "materials": ("[FORMULA ...]", "List the materials, or show formulas."),
 }
 

@@ -6,6 +6,7 @@ An Axes goes in, an Axes comes out. matplotlib is imported when a picture is dra
 from .bands import band_diagram
 from .bars import budget_bars
 from .histogram import yield_histogram
+from .reading import read_table
 from .sheet import check_path, save_picture, without_screen
 from .sweeping import sweep_curves
 
@@ -13,6 +14,7 @@ __all__ = [
     "band_diagram",
     "budget_bars",
     "check_path",
+    "read_table",
     "save_picture",
     "sweep_curves",
     "without_screen",

@@ -36,6 +36,8 @@ if TYPE_CHECKING:
 Floats = npt.NDArray[np.float64]
 
 KINDS = ("curves", "map")
+#: the metric that is drawn if nothing else is asked
+USUAL = "wavelength_um"
 #: a grid of at least so many values each way is a map if nothing else is asked
 MAP_FROM = 6
 #: a curve of at most so many points shows them
@@ -69,8 +71,8 @@ def sweep_curves(
     over : str or pair of str, optional
         The parameters; if absent those that the sweep noted, else the first column.
     metrics : str or sequence of str, optional
-        Columns to draw, all of one unit; if absent the first column of numbers behind the
-        parameters, with the others of its unit.
+        Columns to draw, all of one unit. If absent ``"wavelength_um"``; without such a column the
+        first that has a unit, and over one parameter the others of this unit.
     kind : str, optional
         ``"curves"`` or ``"map"``; if absent a map where two parameters span a grid of at least
         6 by 6.
@@ -160,6 +162,9 @@ def _metrics(
                 f"table: no column of numbers beside {' and '.join(parameters)}; there are"
                 f" {', '.join(map(str, table.columns))}"
             )
+        if USUAL in free:
+            return [USUAL]
+        free.sort(key=lambda name: not unit_of(name)[1])  # a count or a level's number comes last
         unit = unit_of(free[0])[1]
         same = [name for name in free if unit and unit_of(name)[1] == unit]
         return same if same and len(parameters) == 1 else free[:1]
