@@ -15,6 +15,7 @@ import pytest
 import bandwright as bw
 from bandwright.constants import H2M, HC
 from bandwright.errors import BandwrightError
+from bandwright.gradients import couplings
 from bandwright.parameters import read, replace
 from bandwright.profile import Polynomial, Sampled
 from bandwright.profile.build import build_profile
@@ -411,6 +412,31 @@ def test_factors_on_the_model_against_differences_of_the_solver(case, names):
         off = np.abs(found - expected).max() / np.abs(expected).max()
         print(f"\n{case}, {name}: {off:.1e}")
         assert off < 1e-6
+
+
+@pytest.mark.parametrize("bands", ["one-band", "two-band"])
+def test_what_couples_levels_bends_their_slopes(bands):
+    """E'' = 2 sum of W^2/(E - E_j) near an anticrossing, but for levels not found and d2V."""
+    line = ("30 nm Al0.28Ga0.72As, 8 nm GaAs {label a}, 4 nm Al0.28Ga0.72As, 8 nm GaAs,"
+            " 30 nm Al0.28Ga0.72As {label z}")  # fmt: skip
+    stack = bw.parse_line(line, zero="z")
+    levels = bw.solve(stack, tolerance=f"{TOLERANCE} eV", bands=bands)
+    parameters = levels.gradient(["a.thickness"]).parameters
+    slopes = levels.gradient(["a.thickness"]).of("a.thickness")
+    step, exact = 0.02, []
+    for side in (-1, 1):
+        moved = build_profile(replace(stack, "a.thickness", 8.0 + side * step), bands)
+        exact.append(energies(levels, moved))
+    bent = (exact[0] + exact[1] - 2.0 * levels.energies) / step**2
+    assert len(levels) == 4
+    for level in range(4):
+        coupled = couplings(levels, parameters, level)[:, 0]
+        assert coupled[level] == pytest.approx(slopes[level], rel=1e-9)
+        away = levels.energies[level] - levels.energies
+        away[level] = np.inf
+        found = 2.0 * np.sum(coupled**2 / away)
+        print(f"{bands}, level {level + 1}: {found:.5f}, by solving {bent[level]:.5f} eV/nm^2")
+        assert found == pytest.approx(bent[level], rel=0.08)
 
 
 def section_sums(weights, sections):

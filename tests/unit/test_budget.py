@@ -1,4 +1,5 @@
 import math
+import re
 import warnings
 
 import numpy as np
@@ -289,6 +290,26 @@ def test_fluxes_are_those_of_the_changed_stack():
     # both together are 1 % more of everything
     every = lines.levels.gradient(["flux Al", "flux Ga", "all thicknesses"]).energies
     assert every[:, 0] + every[:, 1] == pytest.approx(every[:, 2], rel=1e-9)
+
+
+def test_mixing_that_bends_a_shift_is_said_without_solving():
+    line = (
+        "30 nm Al0.28Ga0.72As, 8 nm GaAs {label a}, 3.2 nm Al0.28Ga0.72As, 8 nm GaAs,"
+        " 30 nm Al0.28Ga0.72As"
+    )
+    lines = lines_of(line)
+    found = row(lines.error_budget((3, 2)), "a", "+1 ML")
+    asks = "error_budget(checked=True) solves the changed stack"
+    said = re.fullmatch(
+        r"not linear, mixing with level (\d) makes it about (\S+) um: " + re.escape(asks),
+        found["remark"],
+    )
+    after = lines_of(line.replace("8 nm GaAs {label a}", "8.2826625 nm GaAs")).find(3, 2)
+    whole = after.wavelength_um - lines.find(3, 2).wavelength_um
+    print(f"first order {found['shift_um']:.3g} um, said {said[2]} um, whole {whole:.3g} um")
+    assert said[1] in "14"  # each of the pair's levels mixes with its partner
+    assert abs(float(said[2]) - whole) < 0.3 * abs(found["shift_um"] - whole)
+    assert found["sentence"] == f"a, +1 ML: {found['shift_um']:+.2g} um; {found['remark']}"
 
 
 def test_a_change_that_is_no_stack_is_said():

@@ -19,8 +19,8 @@ from ..frames import frame
 from ..levels import Levels
 from ..lines import CONTINUUM, Line, Lines
 from .changes import MODEL, Change, changes
-from .checking import Sample, moved, remark_on
-from .slopes import derivatives, meeting
+from .checking import LINEAR, LINEAR_EV, Sample, moved, remark_on
+from .slopes import CHECK, derivatives, meeting, mixing
 from .words import length_shift, wavelength_shift
 
 if TYPE_CHECKING:
@@ -52,7 +52,8 @@ def error_budget(
         Whether to solve each changed stack as well (those of the model excepted): remarks then
         say where a level crosses another, where copies part, and where a change is too large to be
         linear. Otherwise shifts are of first order, nothing is solved, and remarks say where the
-        slopes bring two of the levels found together.
+        slopes bring two of the levels found together, or where mixing with another level found
+        bends a shift, to second order.
 
     Returns
     -------
@@ -89,12 +90,19 @@ def error_budget(
         ]
         slopes = derivatives(levels, chosen, every)
         before = Sample.of(levels) if checked else None
-        for change, (up, down), all_levels in zip(every, slopes.ends, slopes.levels, strict=True):
+        mixed = np.zeros_like(slopes.levels)
+        if not checked:
+            known = np.flatnonzero(np.isfinite(slopes.ends).all(axis=1))
+            mixed[known] = mixing(
+                levels, chosen, [c for c, k in zip(every, known, strict=True) if k]
+            )
+        for place, (change, (up, down)) in enumerate(zip(every, slopes.ends, strict=True)):
             shift = float(up - down) * change.amount
             if not math.isfinite(shift):
                 remark = "it can be moved to neither side"
             elif before is None:
-                remark = _first_order(levels, chosen, change, all_levels * change.amount)
+                every_shift = slopes.levels[place] * change.amount
+                remark = _first_order(levels, chosen, change, shift, every_shift, mixed[place])
             else:
                 remark = remark_on(levels, chosen, change, shift, before)
             rows.append((change, shift, remark))
@@ -103,14 +111,26 @@ def error_budget(
     return _table(chosen, rows)
 
 
-def _first_order(levels: Levels, line: Line, change: Change, shifts: Floats) -> str:
-    """Return what must be said of a change that is not solved, '' if nothing."""
+def _first_order(
+    levels: Levels, line: Line, change: Change, shift: float, shifts: Floats, mixed: Floats
+) -> str:
+    """Return what must be said of a change that is not solved, '' if nothing.
+
+    ``shifts`` and ``mixed`` (n_levels,) are the shifts of all levels, and what mixing with each
+    adds to the line's.
+    """
     if change.parameter.kind not in MODEL:
         try:
             moved(levels.stack, change)
         except BandwrightError as error:
             return f"only for a smaller change: {error}"
-    return meeting(levels, line, shifts)
+    met = meeting(levels, line, shifts)
+    added = float(mixed.sum())
+    if met or abs(added) <= max(LINEAR_EV, LINEAR * abs(shift)):
+        return met
+    number = int(np.argmax(np.abs(mixed))) + 1
+    whole = length_shift(wavelength_shift(line, shift + added))
+    return f"not linear, mixing with level {number} makes it about {whole}: {CHECK}"
 
 
 def _table(line: Line | None, rows: Sequence[tuple[Change, float, str]]) -> pd.DataFrame:

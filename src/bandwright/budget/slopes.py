@@ -9,7 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from ..errors import BandwrightError
-from ..gradients import Gradient
+from ..gradients import Gradient, couplings
 from ..levels import Levels
 from ..lines import CONTINUUM, Line
 from .changes import Change
@@ -18,6 +18,8 @@ Floats = npt.NDArray[np.float64]
 
 #: a neighbour that comes nearer by this part of its distance, or of the floor [eV], is said
 NEARER, FLOOR = 0.5, 0.5e-3
+#: how a remark that rests on slopes ends
+CHECK = "error_budget(checked=True) solves the changed stack"
 
 
 class Derivatives(NamedTuple):
@@ -84,11 +86,30 @@ def meeting(levels: Levels, line: Line, shifts: Floats) -> str:
         nearer[levels.of_box] = 0.0
         if len(nearer) and float(nearer.max()) > NEARER:
             other = int(np.argmax(nearer)) + 1
-            return (
-                f"level {number} comes near level {other} by then: error_budget(checked=True)"
-                " solves the changed stack"
-            )
+            return f"level {number} comes near level {other} by then: {CHECK}"
     return ""
+
+
+def mixing(levels: Levels, line: Line, changes: Sequence[Change]) -> Floats:
+    """Return what mixing with each other level adds to a line by each change [eV], to second order.
+
+    (n_changes, n_levels); nothing is solved. Copies, and what can't be moved, are left out.
+    """
+    added = np.zeros((len(changes), len(levels)))
+    amounts = np.array([change.amount for change in changes])
+    for number, sign in ((line.upper, 1.0), (line.lower, -1.0)):
+        group = slice(0, 0) if number == CONTINUUM else members(levels, int(number))
+        if group.stop - group.start != 1:
+            continue
+        away = levels.energies[group.start] - levels.energies
+        away[np.abs(away) < FLOOR] = np.inf
+        try:
+            moved = [change.parameter for change in changes]
+            coupled = couplings(levels, moved, group.start) * amounts
+        except BandwrightError:
+            continue
+        added += sign * (coupled**2 / away[:, None]).T
+    return added
 
 
 def members(levels: Levels, number: int) -> slice:

@@ -138,6 +138,28 @@ def energy_slopes(levels: Levels, parameters: Sequence[Parameter]) -> Slopes:
     return Slopes(energies, edges, zero.kinked)
 
 
+def couplings(levels: Levels, parameters: Sequence[Parameter], level: int) -> Floats:
+    """Return what parameters do between one level (index) and each, (n_levels, n_parameters).
+
+    In eV per unit; W^2/(E - E_other) is what mixing with another adds to E to second order. Zero
+    with levels between other ends.
+
+    Raises
+    ------
+    SolveError, BandwrightError
+        As `energy_slopes`.
+    """
+    found, start = np.zeros((len(levels), len(parameters))), 0
+    layout = Layout(levels.stack, levels.profile)
+    for states in levels.states.sets:
+        stop = start + len(states.energies)
+        if start <= level < stop:
+            fold = Fold(layout, states.coupling(level - start), levels.profile.field)
+            found[start:stop] = changed(Columns(layout, parameters, [fold]), 0)
+        start = stop
+    return found
+
+
 def _open_edge_slopes(profile: Profile, slopes: Floats) -> Floats:
     """Return the slope of the lower open edge; where both are equal, towards larger values.
 

@@ -205,8 +205,11 @@ def gradient_of(levels: Levels, parameters: Sequence[str] | None = None) -> Grad
     levels : Levels
         Solved by shooting.
     parameters : sequence of str, optional
-        Names as `bandwright.parameters` lists them, and ``"substrate_lattice"``, the substrate's
-        lattice constant. Every one if absent, but for donors and acceptors.
+        Names as `bandwright.parameters` lists them, such as ``"well.thickness"`` or ``"flux Al"``
+        (per unit of a factor, 1 as designed), and ``"substrate_lattice"``, the substrate's lattice
+        constant. Every one of these if absent, but for donors and acceptors. Others on request:
+        ``"masses"``, a factor on all masses; ``"offset_share"``, the share of the gap's steps that
+        falls to the conduction band; ``"offsets"``, a factor on own edges.
 
     Returns
     -------

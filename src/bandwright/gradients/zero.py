@@ -59,8 +59,7 @@ def _lowest(layout: Layout) -> tuple[npt.NDArray[np.int64], Floats]:
     z = profile.faces[section] + share * layout.heights[section]
     edge = numbers_at(profile, section, share)[0] - profile.field * z
     low = edge <= edge.min() + _TIE
-    kept = np.unique(np.column_stack((section, share))[low], axis=0)
-    return kept[:, 0].astype(np.int64), kept[:, 1]
+    return section[low], share[low]
 
 
 def _valley(layout: Layout, index: int) -> float:

@@ -6,7 +6,9 @@ With u, p = u'/m normalised, <i|i> = 1, and changes at fixed fractional depth of
     J = h2m m(E) p^2 + (E - V) u^2 ,
 
 dm at fixed E. The equation's functional is stationary at a state, which gives the first part; a
-section stretched by dh scales dz by 1 + dh/h and d/dz by its inverse, which gives the second.
+section stretched by dh scales dz by 1 + dh/h and d/dz by its inverse, which gives the second. With
+products of two states instead of squares it is what couples one to the other, at the energy of
+one of them.
 Beyond an open end edge, mass and gap are those of the outer face and u falls as exp(-kappa s):
 that weighs like 1/(2 kappa) nm at the face.
 """
@@ -55,13 +57,6 @@ class Reach(NamedTuple):
     presence: Floats
     kinetic: Floats
     beyond: bool = False
-
-
-def reach(
-    section: Indices, depth: Floats, weight: Floats, u: Floats, p: Floats, beyond: bool = False
-) -> Reach:
-    """Return a stretch from states at points, with their weights in an integral along z [nm]."""
-    return Reach(section, depth, weight * u * u, H2M * weight * p * p, beyond)
 
 
 class Sensitivity(NamedTuple):
@@ -147,8 +142,8 @@ def numbers_at(profile: Profile, section: Indices, share: Floats) -> tuple[Float
 
 
 def tail_reaches(
-    profile: Profile, position: float, outward: float, decay: Floats, u: Floats, p: Floats,
-    at_points: bool = True,
+    profile: Profile, position: float, outward: float, decay: Floats, presence: Floats,
+    kinetic: Floats, at_points: bool = True,
 ) -> list[Reach]:  # fmt: skip
     """Return the tails of states that fall off from a position inside the outer section on.
 
@@ -159,8 +154,8 @@ def tail_reaches(
         Where they begin to fall as exp(-decay s) [nm].
     outward : float
         -1 or 1.
-    decay, u, p : array (n_levels,)
-        [1/nm], and the values there.
+    decay, presence, kinetic : array (n_levels,)
+        [1/nm], u^2 and h2m p^2 there.
     at_points : bool
         Whether changes may vary in any way there; otherwise two points hold both moments.
     """
@@ -178,11 +173,12 @@ def tail_reaches(
             s = np.array([0.0, length])
             weight = _falling(decay, length)
         rows = np.full(len(s), row)
-        found.append(reach(rows, position + outward * s - start, weight, u[:, None], p[:, None]))
-    left = np.exp(-decay * length)[:, None]
+        depth = position + outward * s - start
+        found.append(Reach(rows, depth, weight * presence[:, None], weight * kinetic[:, None]))
+    left = (0.5 / decay * np.exp(-2.0 * decay * length))[:, None]
     found.append(
-        reach(np.array([row]), np.array([face - start]), 0.5 / decay[:, None], u[:, None] * left,
-              p[:, None] * left, True)
+        Reach(np.array([row]), np.array([face - start]), left * presence[:, None],
+              left * kinetic[:, None], True)
     )  # fmt: skip
     return found
 

@@ -16,7 +16,7 @@ import numpy.typing as npt
 from ..constants import H2M
 from .matrix import Elements
 from .propagation import MASS_FLOOR, local_mass
-from .sensitivity import Reach, Sensitivity, flat_reach, reach, sensitivity, tail_reaches
+from .sensitivity import Reach, Sensitivity, flat_reach, sensitivity, tail_reaches
 from .slices import slice_at
 from .system import System
 
@@ -232,17 +232,31 @@ class States:
     @cached_property
     def sensitivity_at_points(self) -> Sensitivity:
         """The same for changes that vary in any way along a section."""
-        q, profile = self._quadrature, self.system.slices.profile
-        depth = q.z - profile.faces[q.section]
-        return self._sensitivity(reach(q.section, depth, q.weight, q.u, q.rise))
+        return self._sensitivity(self._at_points(None))
 
-    def _sensitivity(self, inside: Reach, at_points: bool = True) -> Sensitivity:
-        profile, parts = self.system.slices.profile, [inside]
+    def coupling(self, level: int) -> Sensitivity:
+        """Return what small changes of the profile do between one level and each, a row each."""
+        return self._sensitivity(self._at_points(level), level=level)
+
+    def _at_points(self, level: int | None) -> Reach:
+        q, profile = self._quadrature, self.system.slices.profile
+        u, p = (q.u, q.rise) if level is None else (q.u[level], q.rise[level])
+        depth = q.z - profile.faces[q.section]
+        return Reach(q.section, depth, q.weight * q.u * u, H2M * q.weight * q.rise * p)
+
+    def _sensitivity(
+        self, inside: Reach, at_points: bool = True, level: int | None = None
+    ) -> Sensitivity:
+        profile, parts, energies = self.system.slices.profile, [inside], self.energies
+        if level is not None:
+            energies = np.full_like(energies, energies[level])
         for tail in self._tails:
-            parts += tail_reaches(
-                profile, tail.position, tail.outward, tail.decay, tail.u, tail.p, at_points
-            )
-        return sensitivity(profile, self.energies, parts)
+            decay, u, p = tail.decay, tail.u, tail.p
+            if level is not None:
+                decay, u, p = 0.5 * (decay + decay[level]), u[level], p[level]
+            sizes = tail.u * u, H2M * tail.p * p
+            parts += tail_reaches(profile, tail.position, tail.outward, decay, *sizes, at_points)
+        return sensitivity(profile, energies, parts)
 
     @property
     def clamped(self) -> Floats:
