@@ -7,11 +7,13 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from .find import Found, Solvable, random_vector
-from .system import apply, chunks, solve_shifted
+from .find import Found, Solvable
+from .newton import random_vector
+from .system import Joint, chunks, dot
 
 Floats = npt.NDArray[np.float64]
 Flags = npt.NDArray[np.bool_]
+Indices = npt.NDArray[np.int64]
 
 
 class Proof(NamedTuple):
@@ -25,15 +27,16 @@ def halving_error(fine: Solvable, found: Found) -> Floats:
     """Estimate each error from one Rayleigh step on slices half as thick (factor 64/63)."""
     error = np.empty(len(found.energies))
     for part in chunks(len(error), fine.rows):
-        matrix, slope = fine.matrix_and_slope(found.energies[part], found.owner[part])
-        z = _refine(fine, found.nodes[:, part])
-        z = np.where(found.single[part], z, random_vector(fine.nodes)[:, None])
-        for _ in range(2):
-            r = apply(slope, z)
-            z = solve_shifted(matrix, r)
-            scale = np.max(np.abs(z), axis=0)
-            z, r = z / scale, r / scale
-        error[part] = np.abs(np.sum(z * r, axis=0) / np.sum(z * apply(slope, z), axis=0))
+        matrix, slope = (
+            Joint.of(m) for m in fine.matrix_and_slope(found.energies[part], found.owner[part])
+        )
+        z = _refine(fine, found.nodes[:, part]).T.copy()
+        z[~found.single[part]] = random_vector(fine.nodes)
+        for _ in range(1 if found.single[part].all() else 2):  # so near a level one is enough
+            r = slope.apply(z)
+            r /= np.abs(r).max(axis=1)[:, None]
+            z = matrix.solve(r)
+        error[part] = np.abs(dot(z, r) / dot(z, slope.apply(z)))
     return error * 64.0 / 63.0
 
 
@@ -62,26 +65,31 @@ def certify(fine: Solvable, found: Found, low: Floats, high: Floats, tolerance: 
     """
     energies, numbers, owner = found.energies, found.numbers, found.owner
     designs = np.arange(len(low))
-    starts = np.ones(len(energies), dtype=bool)
-    starts[1:] = (energies[1:] - energies[:-1] > 2.0 * tolerance) | (owner[1:] != owner[:-1])
-    firsts = np.flatnonzero(starts)
-    lasts = np.append(firsts[1:], len(energies))[: len(firsts)] - 1
+    apart = (energies[1:] - energies[:-1] > 2.0 * tolerance) | (owner[1:] != owner[:-1])
+    firsts: Indices | slice = slice(None)
+    lasts, group = firsts, firsts
+    if not apart.all():
+        starts = np.concatenate(([True], apart))
+        firsts, group = np.flatnonzero(starts), np.cumsum(starts) - 1
+        lasts = np.append(firsts[1:], len(energies)) - 1
+    first, last, mine = numbers[firsts], numbers[lasts], owner[firsts]
     counted = fine.count_and_pivot(
         np.concatenate(
             (energies[firsts] - tolerance, energies[lasts] + tolerance,
              low, high - tolerance, high + tolerance)
         ),
-        np.concatenate((owner[firsts], owner[lasts], designs, designs, designs)),
+        np.concatenate((mine, mine, designs, designs, designs)),
     )[0]  # fmt: skip
-    n, groups = len(low), len(firsts)
-    below, above = counted[:groups], counted[groups : 2 * groups]
-    at_low, under, over = counted[2 * groups :].reshape(3, n)
-    good = (below == numbers[firsts]) & (above == numbers[lasts] + 1)
-    checked = good[np.cumsum(starts) - 1]
+    groups = len(first)
+    at_low, under, over = counted[2 * groups :].reshape(3, len(low))
+    good = (counted[:groups] == first) & (counted[groups : 2 * groups] == last + 1)
     size = np.bincount(owner, minlength=len(low))
     begin = np.array(at_low)
-    begin[owner[firsts][::-1]] = numbers[firsts][::-1]
+    begin[mine[::-1]] = first[::-1]  # the first of each design comes last, and stays
     end = begin + size
     complete = (at_low <= begin) & (under <= end) & ((end <= over) | (size == 0))
+    if good.all():
+        return Proof(np.ones(len(energies), dtype=bool), complete)
+    checked = good[group]
     complete[owner[~checked]] = False
     return Proof(checked, complete)

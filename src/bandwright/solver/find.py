@@ -10,7 +10,8 @@ import numpy.typing as npt
 
 from ..constants import H2M
 from .matrix import Matrix
-from .system import apply, chunks, solve_shifted
+from .newton import newton
+from .system import chunks
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -18,10 +19,9 @@ Flags = npt.NDArray[np.bool_]
 
 #: levels closer than this [eV] are refined together, as one subspace
 CLUSTER = 1e-10
-_NEWTON_STEPS = 7
 _ROUNDS = 6
-# K is bent by about this much per eV: a Newton step s leaves an error of about s^2 times it [1/eV]
-_BENT = 20.0
+# phase [rad] of a half wave, of wave numbers in units of 1/sqrt(h2m)
+_PHASE = np.pi * np.sqrt(H2M)
 #: keeps the counts of different designs apart in one sorted array
 _APART = 1 << 32
 #: where a crowded bracket is counted
@@ -134,37 +134,38 @@ def refine(system: Solvable, brackets: Brackets, accuracy: float) -> Found:
     single = _alone(owner, lows, highs)
     if not single.all():
         lows, highs = _isolate(system, owner, numbers, lows, highs)
-        energies[~single] = 0.5 * (lows + highs)[~single]
+        energies = np.where(single, energies, 0.5 * (lows + highs))
         single = _alone(owner, lows, highs)
     if not inner.all():
         owner, numbers, lows, highs = owner[inner], numbers[inner], lows[inner], highs[inner]
         energies, single = energies[inner], single[inner]
         start = None if start is None else start[:, inner]
-    nodes = np.zeros((system.nodes, len(numbers)))
-    done = np.zeros(len(numbers), dtype=bool)
+    energies, count = energies.copy(), len(numbers)
+    nodes, done = np.zeros((system.nodes, count)), np.zeros(count, dtype=bool)
+    todo = np.flatnonzero(single)
     for _ in range(_ROUNDS):
+        for part in chunks(len(todo), system.rows):
+            some = part if len(todo) == count else todo[part]
+            with np.errstate(all="ignore"):  # what divides by zero is not taken as reached
+                energies[some], nodes[:, some], done[some] = newton(
+                    system.matrix_and_slope, owner[some], energies[some], lows[some], highs[some],
+                    accuracy, None if start is None else start[:, some],
+                )  # fmt: skip
+        if done.all():
+            return Found(numbers, energies, nodes, done, owner)
+        start = None
         todo = np.flatnonzero(single & ~done)
         if not len(todo):
             break
-        for part in chunks(len(todo), system.rows):
-            some = todo[part]
-            energies[some], nodes[:, some], done[some] = _newton(
-                system, owner[some], energies[some], lows[some], highs[some], accuracy,
-                None if start is None else start[:, some],
-            )  # fmt: skip
-        start = None
-        left = np.flatnonzero(single & ~done)
-        if len(left):
-            lows[left], highs[left] = _bisect(
-                system, owner[left], numbers[left], lows[left], highs[left], 6
-            )
-            energies[left] = 0.5 * (lows[left] + highs[left])
-    rest = np.flatnonzero(~done)
-    if len(rest):
-        lows[rest], highs[rest] = _bisect(
-            system, owner[rest], numbers[rest], lows[rest], highs[rest], 60
+        lows[todo], highs[todo] = _bisect(
+            system, owner[todo], numbers[todo], lows[todo], highs[todo], 6
         )
-        energies[rest] = 0.5 * (lows[rest] + highs[rest])
+        energies[todo] = 0.5 * (lows[todo] + highs[todo])
+    rest = np.flatnonzero(~done)
+    lows[rest], highs[rest] = _bisect(
+        system, owner[rest], numbers[rest], lows[rest], highs[rest], 60
+    )
+    energies[rest] = 0.5 * (lows[rest] + highs[rest])
     late = (energies[1:] < energies[:-1]) & (owner[1:] == owner[:-1])
     if late.any():  # members of a cluster, apart by rounding
         energies[1:][late] = energies[:-1][late]
@@ -180,54 +181,73 @@ def guess_levels(
     """
     above = np.maximum(np.asarray(high)[..., None] - edge, 0.0)
     wave = np.sqrt(mass * (1.0 + above * inverse_gap) * above)
-    phase = (wave * thickness).sum(axis=-1) / (np.pi * np.sqrt(H2M))
-    return np.atleast_1d(phase).astype(np.int64) + 1
+    return np.atleast_1d((wave * thickness).sum(axis=-1) / _PHASE + 1.0).astype(np.int64)
 
 
 def bracketed(system: Solvable, asked: Asked) -> Brackets:
     """Count on a grid of each design, and bracket every level asked."""
-    sizes = 5 * asked.guess + 16
-    ends = np.cumsum(sizes)
-    starts = ends - sizes
-    owner = np.repeat(np.arange(len(sizes)), sizes)
-    part = (np.arange(len(owner)) - starts[owner]) / (sizes - 1)[owner]
+    owner, part, ends = _scan(tuple((5 * asked.guess + 16).tolist()))
     scanned = asked.low[owner] + (asked.high - asked.low)[owner] * part
     counts, pivots = system.count_and_pivot(scanned, owner)
-    keys = counts + _APART * owner
-    if (keys[1:] < keys[:-1]).any():  # rounding at a level; a count never falls
-        keys = np.maximum.accumulate(keys)
-    first, last = keys[starts] % _APART, keys[ends - 1] % _APART
-    begin = np.maximum(asked.skip, first)
-    size = np.clip(last - begin, 0, asked.at_most)
-    before = (size > 0) & (begin > first)
-    after = (size > 0) & (begin + size < last)
-    begin, size = begin - before, size + before + after
-    owner = np.repeat(np.arange(len(size)), size)
-    place = np.arange(len(owner)) - (np.cumsum(size) - size)[owner]
-    numbers = begin[owner] + place
-    inner = np.ones(len(owner), dtype=bool)
-    if before.any() or after.any():
-        inner = ~((before[owner] & (place == 0)) | (after[owner] & (place == (size - 1)[owner])))
-    index = np.searchsorted(keys, numbers + _APART * owner, side="right")
+    keys = np.maximum.accumulate(counts + _APART * owner)  # rounding at a level; no count falls
+    first = keys[np.concatenate(([0], ends[:-1]))]
+    owner, numbers, inner = _wanted(asked, first % _APART, keys[ends - 1] % _APART)
+    index = keys.searchsorted(numbers + _APART * owner, side="right")
     lows, highs = scanned[index - 1], scanned[index]
     energies = _crossing(lows, highs, pivots[index - 1], pivots[index])
     return Brackets(owner, numbers, inner, lows, highs, energies)
+
+
+@lru_cache(maxsize=64)
+def _scan(sizes: tuple[int, ...]) -> tuple[Indices, Floats, Indices]:
+    """Return each place's design, its share of the way up, and where each design's places end."""
+    owner = np.repeat(np.arange(len(sizes)), sizes)
+    part = np.concatenate([np.arange(size) / (size - 1) for size in sizes])
+    return owner, part, np.cumsum(sizes)
+
+
+def _wanted(asked: Asked, first: Indices, last: Indices) -> tuple[Indices, Indices, Flags]:
+    """Return owner and number of the levels asked, and of neighbours just outside: not inner.
+
+    ``first`` and ``last`` are the counts at the bounds of each design.
+    """
+    owner: list[int] = []
+    numbers: list[int] = []
+    inner: list[bool] = []
+    for design, (skip, most, low, high) in enumerate(
+        zip(asked.skip.tolist(), asked.at_most.tolist(), first.tolist(), last.tolist(),
+            strict=True)
+    ):  # fmt: skip
+        begin = max(skip, low)
+        size = min(high - begin, most)
+        if size <= 0:
+            continue
+        before, after = begin > low, begin + size < high
+        numbers += range(begin - before, begin + size + after)
+        owner += [design] * (size + before + after)
+        inner += [False] * before + [True] * size + [False] * after
+    return (
+        np.array(owner, dtype=np.int64), np.array(numbers, dtype=np.int64),
+        np.array(inner, dtype=bool),
+    )  # fmt: skip
 
 
 def _crossing(lows: Floats, highs: Floats, first: Floats, last: Floats) -> Floats:
     """Return where the last pivot's chord passes zero in each bracket, kept off its ends."""
     with np.errstate(divide="ignore", invalid="ignore"):
         part = first / (first - last)
-    part = np.where((part > 0.02) & (part < 0.98), part, 0.5)
+    part = np.where(np.abs(part - 0.5) < 0.48, part, 0.5)
     return np.asarray(lows + part * (highs - lows))
 
 
 def _alone(owner: Indices, lows: Floats, highs: Floats) -> Flags:
     """Return whether each bracket shares no energies with its neighbours'."""
     alone = np.ones(len(lows), dtype=bool)
-    shared = (lows[1:] < highs[:-1]) & (owner[1:] == owner[:-1])
-    alone[1:] &= ~shared
-    alone[:-1] &= ~shared
+    shared = lows[1:] < highs[:-1]
+    if shared.any():
+        shared &= owner[1:] == owner[:-1]
+        alone[1:] &= ~shared
+        alone[:-1] &= ~shared
     return alone
 
 
@@ -264,58 +284,3 @@ def _bisect(
         highs = np.where(above, middle, highs)
         lows = np.where(above, lows, middle)
     return lows, highs
-
-
-@lru_cache(maxsize=64)
-def random_vector(nodes: int) -> Floats:
-    """Return a random vector, the same each time: a symmetric start would miss odd levels."""
-    rng = np.random.default_rng(20250101)
-    return np.asarray(rng.uniform(0.5, 1.5, nodes) * rng.choice([-1.0, 1.0], nodes))
-
-
-def _newton(
-    system: Solvable, owner: Indices, energies: Floats, lows: Floats, highs: Floats,
-    accuracy: float, start: Floats | None,
-) -> tuple[Floats, Floats, Flags]:  # fmt: skip
-    """Newton on K(E) z = 0: mu = -(z.r)/(z.K'z) with z = K^-1 r, r = K'z of the step before.
-
-    Its error after a step s is about s^2 times `_BENT` plus one over the distance to the
-    neighbours. A level counts as reached if it stayed inside its bracket; a step that leaves it
-    is a sign of a neighbour's vector. Each level stops on its own, whatever the others do.
-    """
-    energies = energies.copy()
-    width = highs - lows
-    narrow = _BENT + 4.0 / width
-    accurate = np.minimum(accuracy, 1e-4 * width)  # crowded levels to a part of their distance
-    vectors = np.empty((system.nodes, len(energies)))
-    done = np.zeros(len(energies), dtype=bool)
-    act = np.arange(len(energies))
-    r = np.repeat(random_vector(system.nodes)[:, None], len(energies), axis=1)
-    known = start is not None
-    for turn in range(_NEWTON_STEPS):
-        matrix, slope = system.matrix_and_slope(energies[act], owner[act])
-        if start is not None and turn == 0:
-            r = apply(slope, start)
-        z = solve_shifted(matrix, r)
-        if turn == 0 and not known:
-            r = apply(slope, z)
-            z = solve_shifted(matrix, r)
-        after = apply(slope, z)
-        rayleigh = (z * after).sum(axis=0)
-        step = (z * r).sum(axis=0) / -rayleigh
-        moved = energies[act] + step
-        inside = (moved >= lows[act]) & (moved <= highs[act])
-        energies[act] = np.where(inside, moved, energies[act])
-        scale = np.sqrt(np.abs(rayleigh))
-        z, r = z / scale, after / scale
-        if turn == 0 and not known:
-            continue
-        good = step * step * narrow[act] < accurate[act]
-        vectors[:, act] = z
-        done[act] = inside & good
-        going = inside & ~good
-        if not going.any():
-            break
-        if not going.all():
-            act, r = act[going], r[:, going]
-    return energies, vectors, done

@@ -9,8 +9,7 @@ from scipy.linalg import eigh
 from ..constants import H2M
 from ..errors import SolveError
 from .find import CLUSTER, Found
-from .matrix import Matrix
-from .system import System, apply, chunks, solve_shifted
+from .system import Joint, System, chunks, dot
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
@@ -40,15 +39,17 @@ def polish(system: System, found: Found) -> tuple[Floats, Floats]:
     return energies, system.full(_signed(nodes))
 
 
-def _sharpen(system: System, energies: Floats, z: Floats) -> tuple[Floats, Floats]:
+def _sharpen(system: System, energies: Floats, nodes: Floats) -> tuple[Floats, Floats]:
     """Take each level to its own zero of K, then its vector from there."""
+    z = nodes.T.copy()
     for _ in range(2):
-        matrix, slope = system.matrix_and_slope(energies)
+        matrix, slope = (Joint.of(m) for m in system.matrix_and_slope(energies))
         for _ in range(2):
-            r = apply(slope, z / np.max(np.abs(z), axis=0))
-            z = solve_shifted(matrix, r)
-        energies = energies - np.sum(z * r, axis=0) / np.sum(z * apply(slope, z), axis=0)
-    return energies, z / np.sqrt(-H2M * np.sum(z * apply(slope, z), axis=0))
+            r = slope.apply(z / np.abs(z).max(axis=1)[:, None])
+            z = matrix.solve(r)
+        rate = dot(z, slope.apply(z))
+        energies = energies - dot(z, r) / rate
+    return energies, (z / np.sqrt(-H2M * rate)[:, None]).T
 
 
 def _signed(z: Floats) -> Floats:
@@ -82,17 +83,19 @@ def _ritz(system: System, energies: Floats, room: float) -> Floats:
     size = len(energies)
     spread = float(energies[-1] - energies[0])
     shift = float(energies[0]) + 0.43 * spread - min(1e-11, 0.05 * room)
-    matrix, slope = (_repeat(m, size) for m in system.matrix_and_slope(np.array([shift])))
-    z = np.random.default_rng(11).uniform(-1.0, 1.0, (len(matrix.diagonal), size))
+    matrix, slope = (
+        Joint.of(m).repeated(size) for m in system.matrix_and_slope(np.array([shift]))
+    )
+    z = np.random.default_rng(11).uniform(-1.0, 1.0, (size, system.nodes))
     before = np.full(size, np.inf)
     mu = np.zeros(size)
     for _ in range(_RITZ_STEPS):
-        z = solve_shifted(matrix, -apply(slope, z))
-        z = _orthonormal(z, -apply(slope, z))
-        small = z.T @ apply(matrix, z)
-        mass = -(z.T @ apply(slope, z))
+        z = matrix.solve(-slope.apply(z))
+        z = _orthonormal(z, -slope.apply(z))
+        small = z @ matrix.apply(z).T
+        mass = -(z @ slope.apply(z).T)
         mu, mix = eigh(0.5 * (small + small.T), 0.5 * (mass + mass.T))
-        z = z @ mix
+        z = mix.T @ z
         if np.max(np.abs(mu - before)) < 1e-16 + 1e-3 * spread:
             break
         before = mu
@@ -101,23 +104,14 @@ def _ritz(system: System, energies: Floats, room: float) -> Floats:
             f"{size} levels near {energies[0]:.9f} eV could not be told apart from each other and"
             " from their neighbours"
         )
-    return np.asarray(z / np.sqrt(H2M))
-
-
-def _repeat(matrix: Matrix, size: int) -> Matrix:
-    """Return one energy's matrix once for each vector."""
-    return Matrix(
-        np.repeat(matrix.diagonal, size, axis=1),
-        np.repeat(matrix.off, size, axis=1),
-        None,
-    )
+    return np.asarray(z.T / np.sqrt(H2M))
 
 
 def _orthonormal(z: Floats, mz: Floats) -> Floats:
-    """Orthonormalise columns in the product z.Mz."""
-    gram = z.T @ mz
+    """Orthonormalise rows in the product z.Mz."""
+    gram = z @ mz.T
     scale = 1.0 / np.sqrt(np.diag(gram))
     gram = gram * scale[:, None] * scale
     values, vectors = eigh(0.5 * (gram + gram.T))
     values = np.maximum(values, 1e-14)
-    return np.asarray((z * scale) @ (vectors / np.sqrt(values)))
+    return np.asarray((vectors / np.sqrt(values)).T @ (z * scale[:, None]))

@@ -15,7 +15,7 @@ from .certificate import certify, halving_error
 from .find import Asked, Found, Solvable, find, guess_levels
 from .need import MOST_SLICES, needed
 from .polish import polish
-from .slices import cut
+from .slices import Slices, cut
 from .states import States
 from .system import System, open_ends
 
@@ -29,6 +29,8 @@ MOST_KEPT_SLICES, MOST_CELLS = 150_000, 10_000_000
 NEAREST = 1e-7
 # ... to this part of each other at a tolerance of 1e-9 eV
 _MIXED = 1e-5
+#: an energy with so many levels more than asked below it is near enough to cut for
+_NEAR = 3
 #: tolerance [eV] of the slices on which the energy to cut for is looked up
 ROUGH = 1e-4
 
@@ -177,7 +179,7 @@ def solve_profile(
             break
         system = System(cut(profile, counts), ends, outside)
         fine = system if exact else system.halved()
-        found = find(system, _asked(system, floor, top, skip, at_most), accuracy)
+        found = find(system, asked_of(system.slices, floor, top, skip, at_most), accuracy)
         error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
         worst = float(error.max(initial=0.0))
         if 3.0 * worst <= tolerance:
@@ -204,10 +206,13 @@ def solve_profile(
 
 def refuse_huge(profile: Profile, counts: Indices, high: float, at_most: int | None) -> None:
     """Raise `SolveError` before work that no memory holds, as for a thickness in a wrong unit."""
+    slices = int(counts.sum())
+    if slices * slices <= MOST_CELLS:  # a slice holds at most two thirds of a level
+        return
     numbers = profile.numbers
     levels = int(guess_levels(numbers.thickness, numbers.lowest, numbers.mass,
                               numbers.inverse_gap, high)[0])  # fmt: skip
-    slices, kept = int(counts.sum()), min(levels, at_most or levels)
+    kept = min(levels, at_most or levels)
     if slices <= MOST_KEPT_SLICES and slices * kept <= MOST_CELLS:
         return
     thickest = int(np.argmax(numbers.thickness))
@@ -218,8 +223,8 @@ def refuse_huge(profile: Profile, counts: Indices, high: float, at_most: int | N
     )
 
 
-def _asked(system: System, low: float, high: float, skip: int, at_most: int | None) -> Asked:
-    slices = system.slices
+def asked_of(slices: Slices, low: float, high: float, skip: int, at_most: int | None) -> Asked:
+    """Return what is asked of one design, as `find` takes it."""
     guess = guess_levels(slices.thickness, slices.edge, slices.mass, slices.inverse_gap, high)
     most = np.iinfo(np.int64).max if at_most is None else at_most
     return Asked(np.array([low]), np.array([high]), np.array([skip]), np.array([most]), guess)
@@ -240,12 +245,17 @@ def lowest_edge(profile: Profile) -> Any:
 def tops(system: Solvable, low: Floats, high: Floats, wanted: int) -> Floats:
     """Return an energy not far above each design's level of this number, or its ``high``."""
     designs = np.arange(len(low))
-    part = np.linspace(0.0, 1.0, 33)
+    part = np.arange(33) / 32.0
     for _ in range(2):
         trial = low[:, None] + (high - low)[:, None] * part
         counts = system.count_and_pivot(trial.reshape(-1), np.repeat(designs, len(part)))[0]
-        above = counts.reshape(trial.shape) > wanted
+        counts = counts.reshape(trial.shape)
+        above = counts > wanted
         place = np.where(above.any(axis=1), np.argmax(above, axis=1), len(part) - 1)
         place = np.maximum(place, 1)
-        low, high = trial[designs, place - 1], trial[designs, place]
+        crowded = counts[designs, place] > wanted + _NEAR
+        high = trial[designs, place]
+        if not crowded.any():
+            break
+        low = np.where(crowded, trial[designs, place - 1], high)
     return high

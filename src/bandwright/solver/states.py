@@ -134,7 +134,8 @@ class States:
                                 & (numbers.inverse_gap > 0.0))  # fmt: skip
         edge, slope = numbers.edge[rising], numbers.slope[rising]
         top = self.energies[:, None] + (1.0 - MASS_FLOOR) / numbers.inverse_gap[rising]
-        depth = (top - edge) / slope
+        with np.errstate(over="ignore"):  # the floor of a field next to none lies at infinity
+            depth = (top - edge) / slope
         inside = (depth > 0.0) & (depth < numbers.thickness[rising])
         return np.asarray((profile.faces[rising] + depth)[inside])
 

@@ -142,23 +142,50 @@ def chunks(columns: int, rows: int, cells: int = 60_000) -> list[slice]:
     return [slice(i, min(i + width, columns)) for i in range(0, columns, width)]
 
 
-def solve_shifted(matrix: Matrix, right: Floats) -> Floats:
-    """Solve K(E_j) z_j = r_j for every energy at once, shapes (n_nodes, n_energies).
+class Joint(NamedTuple):
+    """The matrices of all energies as one, block beside block: rows are energies.
 
-    All energies stand as one block-diagonal tridiagonal matrix, one LAPACK call.
+    ``diagonal`` and ``off`` (n_energies, n_nodes), the last column of ``off`` zero.
     """
-    n, m = matrix.diagonal.shape
-    if n == 1:
-        return np.asarray(right / np.where(matrix.diagonal == 0.0, 1e-300, matrix.diagonal))
-    joint = np.zeros((m, n))
-    joint[:, : n - 1] = matrix.off.T
-    between = joint.reshape(-1)[:-1]
-    diagonal = matrix.diagonal.T.reshape(-1)
-    _, _, _, z, info = dgtsv(between, diagonal, between, right.T.reshape(-1, 1))
-    if info > 0:  # an exact singularity: a shift by the rounding of K is as good
-        size = np.abs(matrix.diagonal).max(axis=0) + np.abs(matrix.off).max(axis=0)
-        return solve_shifted(Matrix(matrix.diagonal + np.spacing(size), matrix.off, None), right)
-    return np.asarray(z).reshape(m, n).T
+
+    diagonal: Floats
+    off: Floats
+
+    @classmethod
+    def of(cls, matrix: Matrix) -> Joint:
+        """Return the matrices of all energies as one."""
+        diagonal = matrix.diagonal.T.copy()
+        off = np.zeros_like(diagonal)
+        off[:, :-1] = matrix.off.T
+        return cls(diagonal, off)
+
+    def rows(self, which: npt.NDArray[np.bool_]) -> Joint:
+        """Return the matrices of these energies."""
+        return Joint(self.diagonal[which], self.off[which])
+
+    def repeated(self, times: int) -> Joint:
+        """Return one energy's matrix as often."""
+        return Joint(self.diagonal.repeat(times, axis=0), self.off.repeat(times, axis=0))
+
+    def solve(self, right: Floats) -> Floats:
+        """Return the solutions of K(E_j) z_j = r_j, one row an energy, by one LAPACK call."""
+        size = self.diagonal.size
+        if size == 1:
+            return np.asarray(right / np.where(self.diagonal == 0.0, 1e-300, self.diagonal))
+        off = self.off.reshape(-1)[: size - 1]
+        z, info = dgtsv(off, self.diagonal.reshape(-1), off, right.reshape(-1))[3:]
+        if info > 0:  # an exact singularity: a shift by the rounding of K is as good
+            scale = np.abs(self.diagonal).max(axis=1) + np.abs(self.off).max(axis=1)
+            return Joint(self.diagonal + np.spacing(scale)[:, None], self.off).solve(right)
+        return np.asarray(z.reshape(right.shape))
+
+    def apply(self, z: Floats) -> Floats:
+        """Return the product of each energy's matrix with its row."""
+        result = np.multiply(self.diagonal, z, order="C")
+        flat, given, off = result.reshape(-1), z.reshape(-1), self.off.reshape(-1)[:-1]
+        flat[:-1] += off * given[1:]
+        flat[1:] += off * given[:-1]
+        return result
 
 
 def apply(matrix: Matrix, z: Floats) -> Floats:
@@ -167,3 +194,8 @@ def apply(matrix: Matrix, z: Floats) -> Floats:
     result[:-1] += matrix.off * z[1:]
     result[1:] += matrix.off * z[:-1]
     return result
+
+
+def dot(one: Floats, two: Floats) -> Floats:
+    """Return the product of each row with the other's."""
+    return np.asarray(np.add.reduce(one * two, axis=1))
