@@ -93,9 +93,7 @@ def error_budget(
         mixed = np.zeros_like(slopes.levels)
         if not checked:
             known = np.flatnonzero(np.isfinite(slopes.ends).all(axis=1))
-            mixed[known] = mixing(
-                levels, chosen, [c for c, k in zip(every, known, strict=True) if k]
-            )
+            mixed[known] = mixing(levels, chosen, [every[place] for place in known])
         for place, (change, (up, down)) in enumerate(zip(every, slopes.ends, strict=True)):
             shift = float(up - down) * change.amount
             if not math.isfinite(shift):
