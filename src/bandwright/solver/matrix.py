@@ -107,22 +107,20 @@ def count_and_pivot(matrix: Matrix) -> tuple[Counts, Floats]:
     if not len(diagonal):
         none = np.zeros(diagonal.shape[1], dtype=np.int64)
         return none if clamped is None else clamped.astype(np.int64), np.ones(len(none))
-    rows, columns = diagonal.shape
-    total = np.zeros(columns, dtype=np.int64) if clamped is None else clamped.astype(np.int64)
-    step = max(1, min(_ROWS, _CELLS // max(columns, 1)))
-    quotient = np.empty(columns)
-    pivot = np.empty(0)
+    pivot = diagonal[0]
+    total = np.signbit(pivot).astype(np.int64)
+    if clamped is not None:
+        total += clamped
+    quotient = np.empty_like(pivot)
+    step = min(_ROWS, max(1, _CELLS // max(1, len(pivot))))
     with np.errstate(divide="ignore", over="ignore"):
-        for start in range(0, rows, step):
-            pivots = diagonal[start : start + step].copy()
-            later = pivots
-            if start == 0:
-                pivot, later = pivots[0], pivots[1:]
-            squares = np.square(off[max(start - 1, 0) : start + step - 1])
+        for start in range(0, len(off), step):
+            squares = np.square(off[start : start + step])
             squares += _TINY
-            for square, row in zip(squares, later, strict=True):
-                np.divide(square, pivot, out=quotient)
-                pivot = np.subtract(row, quotient, out=row)
+            pivots = diagonal[start + 1 : start + 1 + step].copy()
+            for square, row in zip(squares, pivots, strict=True):
+                np.divide(square, pivot, quotient)
+                pivot = np.subtract(row, quotient, row)
             negative = np.signbit(pivots).view(np.uint8)
             total += np.add.reduce(negative, axis=0, dtype=np.uint8)
     return total, pivot
