@@ -5,6 +5,7 @@ import pytest
 
 import bandwright as bw
 from bandwright.errors import QuantityError, SolveError, StackError
+from bandwright.solver import alike
 
 
 def single(width, barrier=250.0):
@@ -123,3 +124,64 @@ def test_a_generator_is_enough():
     many = bw.solve_many(single(width) for width in WIDTHS)
     assert len(many) == len(WIDTHS)
     assert not any(isinstance(one, StackError) for one in many)
+
+
+def near(designs=40, spread=0.003):
+    """Coupled wells of an invented emitter, each number its own hair off."""
+    rng = np.random.default_rng(5)
+    lines = (
+        "20 nm {{edge {} meV, mass 0.09}}, {} nm {{edge 0 meV, mass 0.067}}, {} nm {{edge {} meV,"
+        " mass 0.09}}, {} nm {{edge 0 meV, mass 0.067}}, 20 nm {{edge {} meV, mass 0.09}}"
+    )
+    stacks = []
+    for _ in range(designs):
+        off = 1.0 + spread * rng.uniform(-1.0, 1.0, 6)
+        numbers = np.array([280.0, 7.0, 2.0, 280.0, 5.0, 280.0]) * off
+        stacks.append(bw.parse_line(lines.format(*numbers.round(6))))
+    return stacks
+
+
+@pytest.fixture
+def scanned(monkeypatch):
+    """How many designs each scan of a family took."""
+    sizes, scan = [], alike.find
+
+    def find(system, asked, accuracy):
+        sizes.append(len(asked.low))
+        return scan(system, asked, accuracy)
+
+    monkeypatch.setattr(alike, "find", find)
+    return sizes
+
+
+@pytest.mark.filterwarnings("ignore::bandwright.BandwrightWarning")
+@pytest.mark.parametrize(
+    "asked", [{}, {"at_most": 2}, {"below": "0.1 eV"}, {"tolerance": "1e-9 eV"}]
+)
+@pytest.mark.parametrize("field", [None, "20 kV/cm"])
+def test_neighbours_are_foretold_by_one_of_them(asked, field, scanned):
+    stacks = [stack.replace(field=field) for stack in near()]
+    many = bw.solve_many(stacks, **asked)
+    assert many.alone == 0
+    assert sum(scanned) < len(stacks) / 2  # each pattern's leader, and patterns of very few
+    if field is None:
+        assert set(scanned) == {1}
+    for stack, levels in zip(stacks, many, strict=True):
+        alone = bw.solve(stack, **asked)
+        assert len(levels) == len(alone) > 0
+        assert np.max(np.abs(levels.energies - alone.energies)) < 1e-10
+        assert levels.complete and levels.count_checked.all()
+
+
+@pytest.mark.filterwarnings("ignore::bandwright.BandwrightWarning")
+def test_what_nobody_foretells_is_scanned(scanned):
+    """Wells from one level to nine, and a limit that levels cross: each as it is alone."""
+    stacks = [single(width) for width in np.linspace(2.0, 40.0, 30).round(3)]
+    for asked in ({}, {"below": "0.1 eV"}, {"at_most": 3}):
+        many = bw.solve_many(stacks, **asked)
+        assert many.alone == 0
+        for stack, levels in zip(stacks, many, strict=True):
+            alone = bw.solve(stack, **asked)
+            assert len(levels) == len(alone)
+            assert np.max(np.abs(levels.energies - alone.energies), initial=0.0) < 1e-10
+    assert max(scanned) > 1

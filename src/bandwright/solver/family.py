@@ -13,8 +13,9 @@ import numpy.typing as npt
 
 from ..profile import Origin, Profile
 from ..profile.alike import chosen
+from .alike import find_alike
 from .certificate import certify, halving_error
-from .find import Asked, find, guess_levels
+from .find import Asked, guess_levels
 from .kinds import joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
@@ -58,6 +59,10 @@ class Family:
             matrix = self._matrix(energies[part], owner[part], slopes=False)
             counts[part], pivots[part] = count_and_pivot(matrix)
         return counts, pivots
+
+    def matrix(self, energies: Floats, owner: Indices) -> Matrix:
+        """Return K of each energy's design."""
+        return self._matrix(energies, owner, slopes=False)
 
     def matrix_and_slope(self, energies: Floats, owner: Indices) -> tuple[Matrix, Matrix]:
         """Return K of each energy's design, and its derivative by E."""
@@ -155,7 +160,7 @@ def _solve_pattern(
         slices.thickness.T, slices.edge.T, slices.mass.T, slices.inverse_gap.T, high
     )
     asked = Asked(low, high, np.zeros(designs, dtype=np.int64), most, guess)
-    found = find(family, asked, min(1e-3 * tolerance, 1e-9))
+    found = find_alike(family, asked, min(1e-3 * tolerance, 1e-9))
     exact = slices.profile.numbers.all_flat
     fine = family if exact else family.halved()
     error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)

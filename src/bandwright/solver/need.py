@@ -18,6 +18,9 @@ Indices = npt.NDArray[np.int64]
 
 #: largest phase of a slice [rad], at the highest energy; a pole would stand at pi
 PHASE_LIMIT = 2.0
+# shares of each error term's own length that a slice takes at a tolerance of 1e-6 eV, and the least
+# slices a radian at the highest energy: random stacks then stay some three times below it
+_TILTED, _SLOPE, _BEND, _DRIFT, _WAVE = 0.48, 0.42, 0.44, 0.42, 0.75
 #: most slices one profile may take
 MOST_SLICES = 2_000_000
 
@@ -46,8 +49,8 @@ def needed(
         heavy = local / H2M
         depth = np.maximum(above, numbers.lowest - numbers.lowest.min(axis=0))
         steep = (heavy * np.abs(numbers.slope)) ** (1 / 3)
-        rate = _mixed(steep, np.sqrt(heavy * depth), 3) / (0.48 * share)
-        rate = np.maximum(rate, 0.75 * wave)
+        rate = _mixed(steep, np.sqrt(heavy * depth), 3) / (_TILTED * share)
+        rate = np.maximum(rate, _WAVE * wave)
         tilted = np.flatnonzero(~numbers.flat)
         counts[tilted] = np.ceil(numbers.thickness * rate)[tilted]
         for index in np.flatnonzero(numbers.curved):
@@ -106,12 +109,12 @@ def _curved_need(section: Section, high: Floats | float, share: float) -> Floats
     wave = np.sqrt(mass * np.maximum(high - edge, 0.0) / H2M)
     reach = np.sqrt(heavy * np.maximum(np.abs(high - edge), edge - edge.min(axis=0)) / H2M)
     rates = (
-        _mixed(k3, reach, 3) / 0.42,
-        _mixed(k4, reach, 4) / 0.44,
-        _mixed(drift, reach, 1) / 0.42,
+        _mixed(k3, reach, 3) / _SLOPE,
+        _mixed(k4, reach, 4) / _BEND,
+        _mixed(drift, reach, 1) / _DRIFT,
     )
     rate = np.max(rates, axis=(0, 1)) / share
-    return np.asarray(np.ceil(section.thickness * np.maximum(rate, 0.75 * wave.max(axis=0))))
+    return np.asarray(np.ceil(section.thickness * np.maximum(rate, _WAVE * wave.max(axis=0))))
 
 
 def _mixed(rate: Floats, reach: Floats, power: int) -> Floats:
