@@ -15,6 +15,8 @@ Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 
 _RITZ_STEPS = 60
+#: a smaller step [eV] ends at rounding, and so does the vector it is taken with
+_ROUNDED = 1e-10
 
 
 def polish(system: System, found: Found) -> tuple[Floats, Floats]:
@@ -48,7 +50,10 @@ def _sharpen(system: System, energies: Floats, nodes: Floats) -> tuple[Floats, F
             r = slope.apply(z / np.abs(z).max(axis=1)[:, None])
             z = matrix.solve(r)
         rate = dot(z, slope.apply(z))
-        energies = energies - dot(z, r) / rate
+        step = dot(z, r) / -rate
+        energies = energies + step
+        if np.abs(step).max(initial=0.0) < _ROUNDED:
+            break
     return energies, (z / np.sqrt(-H2M * rate)[:, None]).T
 
 

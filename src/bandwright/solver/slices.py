@@ -117,7 +117,8 @@ class Slices:
 
     def _distinct(self) -> tuple[Indices | slice, Indices | None]:
         """Return one row of each kind of equal flat slices, and where every slice finds its own."""
-        if len(self) < _MANY:
+        few = len(self) < _MANY
+        if few or 2 * len(set(_columns(self.thickness)[:, 0].tolist())) > len(self):
             return slice(None), None
         seen: dict[bytes, int] = {}
         keys = np.stack((self.thickness, self.edge, self.mass, self.inverse_gap), axis=1)
