@@ -168,12 +168,14 @@ def parse(formula: str, **fractions: Value) -> Composition:
     >>> parse("AlxGa1-xAs", x=0.9).cations
     (('Al', 0.9), ('Ga', 0.1))
     """
-    return _composition(formula, fractions) if fractions else _literal(formula)
+    if all(isinstance(fraction, float) for fraction in fractions.values()):
+        return _of_numbers(formula, *fractions.items())
+    return _composition(formula, fractions)
 
 
 @lru_cache(maxsize=4096)
-def _literal(formula: str) -> Composition:
-    return _composition(formula, {})
+def _of_numbers(formula: str, *fractions: tuple[str, float]) -> Composition:
+    return _composition(formula, dict(fractions))
 
 
 def _composition(formula: str, fractions: dict[str, Value]) -> Composition:
