@@ -168,10 +168,12 @@ class States:
         q = self._quadrature
         centre = self.system.slices.faces[-1] / 2.0
         z = q.z - centre
+        partnered = bool(q.p.any())  # not in the one-band model
         moments = []
         for power in (0, 1, 2):
             w = q.weight * z**power
-            moments.append((q.u * w) @ q.u.T + (q.p * w) @ q.p.T)
+            moment = (q.u * w) @ q.u.T
+            moments.append(moment + (q.p * w) @ q.p.T if partnered else moment)
         for tail in self._tails:
             row = 0 if tail.outward < 0 else -1
             partner = self._tail_partner(tail, row)
