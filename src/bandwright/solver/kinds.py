@@ -32,9 +32,6 @@ Indices = npt.NDArray[np.int64]
 GAUSS = 0.5 * np.sqrt(0.6) * np.array([-1.0, 0.0, 1.0])
 #: numbers an array holds at most while rows are evaluated, so that all of them stay in the cache
 _CELLS = 12_000
-# The system's fresh pages cost more time than the maths done in them. The GNU allocator keeps
-# freed memory for the next arrays, up to twice the largest block (of 32 MiB at most) freed so far.
-np.empty(4_000_000)
 
 
 class Kind(Protocol):

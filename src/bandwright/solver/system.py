@@ -136,9 +136,14 @@ def open_ends(profile: Profile, ends: tuple[str, str]) -> tuple[OpenEnd | None, 
     return first, last
 
 
-def chunks(columns: int, rows: int, cells: int = 60_000) -> list[slice]:
-    """Return column ranges that keep each array of ``rows`` under ``cells`` numbers."""
-    width = max(1, cells // max(rows, 1))
+def chunks(columns: int, rows: int) -> list[slice]:
+    """Return column ranges that keep each array of ``rows`` small.
+
+    About 60,000 numbers stay in the cache; many rows take up to 100 columns all the same, which a
+    march from row to row needs to be worth its calls, and at most a million numbers.
+    """
+    rows = max(rows, 1)
+    width = max(60_000 // rows, min(100, 1_000_000 // rows), 1)
     return [slice(i, min(i + width, columns)) for i in range(0, columns, width)]
 
 
