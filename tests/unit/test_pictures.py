@@ -303,6 +303,13 @@ def test_a_long_name_is_folded():
     assert ax.get_title(loc="left").count("\n") >= 2
 
 
+@pytest.mark.parametrize("size", [("50 mm", None), ("85 mm", "45 mm")])
+def test_small_paper_folds_texts_and_names_fewer_levels(stage, size):
+    ax = band_diagram(stage, width=size[0], height=size[1])
+    assert_tidy(ax)
+    assert 1 <= len(labels(ax)) <= len(stage)
+
+
 def test_bad_band_diagrams():
     levels = solve("30 nm Al0.3Ga0.7As, 7 nm GaAs, 30 nm Al0.3Ga0.7As", below="10 meV")
     assert len(levels) == 0

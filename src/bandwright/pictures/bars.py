@@ -7,7 +7,21 @@ from typing import TYPE_CHECKING
 
 from ..errors import PictureError, close_matches
 from ..quantities import show
-from .sheet import BLACK, BLUE, COLUMN, FAINT, GAP, SMALL, THIN, VERMILION, axes, dress, folded
+from .sheet import (
+    BLACK,
+    BLUE,
+    COLUMN,
+    FAINT,
+    GAP,
+    SMALL,
+    THIN,
+    VERMILION,
+    axes,
+    cell,
+    depth,
+    dress,
+    folded,
+)
 from .words import checked, column
 
 if TYPE_CHECKING:
@@ -18,8 +32,8 @@ UNITS = {"um": ("shift_um", "shift of the wavelength", "µm"),
          "meV": ("shift_meV", "shift of the energy", "meV")}  # fmt: skip
 #: a shift below this [um, meV] is rounding
 _NOTHING = 1e-9
-#: letters of a row's name on one line
-_LETTERS = 24
+#: the rows' names take at most this part of the width
+NAMES = 0.38
 
 
 def budget_bars(
@@ -84,19 +98,18 @@ def budget_bars(
     remarks = table["remark"].tolist() if "remark" in table.columns else [None] * len(table)
     remarked = [isinstance(remark, str) and bool(remark) for remark in remarks]
     names = [f"{table['what'].iloc[row]}, {table['change'].iloc[row]}" for row in shown]
-    ticks = [folded(text, _LETTERS) for text in names]
-    lines = sum(tick.count("\n") + 1.6 for tick in ticks)
     widest = max((abs(shifts[row]) for row in shown), default=0.0)
     if widest < _NOTHING:
         raise PictureError(f"table: no {name} is above rounding; there is nothing to draw")
-    ax = axes(ax, width, height, 20.0 + 3.0 * lines)
+    ax = axes(ax, width, height, 20.0 + 5.0 * len(shown))
+    left = NAMES * cell(ax)[0]
     for place, row in enumerate(shown):
         _bar(ax, place, shifts[row], widest, remarked[row])
     ax.axvline(0.0, color=BLACK, linewidth=THIN)
-    ax.set_yticks(range(len(shown)), ticks)
+    ax.set_yticks(range(len(shown)), [folded(text, left, SMALL) for text in names])
     ax.set_ylim(len(shown) - 0.4, -0.6)
     ax.set_xlim(*_limits([shifts[row] for row in shown], widest))
-    dress(ax, f"{words}{GAP}({printed_unit})", "", title)
+    dress(ax, f"{words}{GAP}({printed_unit})", "", title, left)
     ax.tick_params(axis="y", length=0.0)
     ax.spines["left"].set_visible(False)
     notes = []
@@ -105,9 +118,12 @@ def budget_bars(
     if left_out:
         notes.append(f"{left_out} smaller or unknown not shown")
     if notes:
-        ax.annotate("\n".join(notes), xy=(1.0, 0.0), xycoords="axes fraction", xytext=(0.0, -26.0),
-                    textcoords="offset points", fontsize=SMALL, color=FAINT, ha="right", va="top",
-                    annotation_clip=False).set_gid("note")  # fmt: skip
+        note = ax.annotate(
+            "\n".join(notes), xy=(1.0, 0.0), xycoords="axes fraction", xytext=(0.0, -depth(ax)),
+            textcoords="offset points", fontsize=SMALL, color=FAINT, ha="right", va="top",
+            annotation_clip=False,
+        )  # fmt: skip
+        note.set_gid("note")
     return ax
 
 

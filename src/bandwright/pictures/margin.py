@@ -17,6 +17,8 @@ Floats = npt.NDArray[np.float64]
 
 #: height of a line of type, and the way from the axis to the label [pt]
 LINE, LEAD = 1.25 * SMALL, 9.0
+#: where there is room for fewer labels the line above them gives way
+FEW = 3
 
 
 class Label(NamedTuple):
@@ -88,10 +90,13 @@ def margin_labels(ax: Axes, labels: Sequence[Label], head: str = "") -> None:
     low, high = ax.get_ylim()
     seen = sorted(one for one in labels if low <= one.value <= high)
     first = len(head.splitlines())
+    if rows_for(height) < first + FEW:
+        first, head = 0, ""
     room = max(1, rows_for(height) - first)
-    if len(seen) > room:
+    if len(seen) > room and head:
         first, room = first + 1, max(1, room - 1)
         head += f"\n({room} of {len(seen)} named)"
+    if len(seen) > room:
         chosen = np.rint(np.linspace(0, len(seen) - 1, room)).astype(int)
         seen = [seen[i] for i in chosen]
     wanted = [(one.value - low) / (high - low) * height for one in seen]

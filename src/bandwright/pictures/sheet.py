@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import os
+import re
 from pathlib import Path
-from textwrap import wrap
 from typing import TYPE_CHECKING, Any
 
 from ..errors import PictureError
@@ -36,6 +36,8 @@ FAINT = "#6E6E6E"
 GAP = "\N{NO-BREAK SPACE}"
 #: type [pt] that is read without a glass when printed one to one
 BODY, SMALL = 7.0, 6.0
+#: width of a line or patch in the legend with the gap behind it, and between columns [pt]
+HANDLE, SPACE = 3.0 * SMALL, 1.2 * SMALL
 #: lines [pt]
 BOLD, PLAIN, THIN, HAIR = 1.1, 0.8, 0.6, 0.4
 #: a column of a paper, and the height that goes with it [mm]
@@ -101,36 +103,65 @@ def _mm(value: object, name: str) -> float:
     return length
 
 
-def dress(ax: Axes, x_label: str, y_label: str, title: str = "") -> None:
-    """Set labels, type and lines of an Axes; a title that is there already stays."""
-    across, up = letters(ax)
-    ax.set_xlabel(folded(x_label, across), fontsize=BODY)
-    ax.set_ylabel(folded(y_label, up), fontsize=BODY)
+def dress(ax: Axes, x_label: str, y_label: str, title: str = "", left: float = 0.0) -> None:
+    """Set labels, type and lines of an Axes; a title that is there already stays.
+
+    ``left`` is what else stands left of the Axes [pt].
+    """
+    ax.set_ylabel(folded(y_label, max(60.0, cell(ax)[1] - 65.0)), fontsize=BODY)
+    across = _across(ax)
+    ax.set_xlabel(folded(x_label, across - 35.0), fontsize=BODY)
     ax.tick_params(labelsize=SMALL, width=THIN, length=2.5)
     for side, spine in ax.spines.items():
         spine.set_linewidth(THIN)
         spine.set_visible(side in ("left", "bottom"))
     if title and not ax.get_title(loc="left"):
-        lines = [folded(line, across) for line in title.split("\n")]
+        lines = [folded(line, across - left) for line in title.split("\n")]
         ax.set_title("\n".join(lines), loc="left", fontsize=BODY)
 
 
-def folded(text: str, width: int) -> str:
-    """Return a text in as few lines as a width needs, all about as long.
+def width_of(text: str, size: float = BODY) -> float:
+    """Return how wide a line of text is [pt]."""
+    from matplotlib.font_manager import FontProperties
+    from matplotlib.textpath import text_to_path
+
+    font = FontProperties(size=size)
+    return float(text_to_path.get_text_width_height_descent(text, font, False)[0])
+
+
+def folded(text: str, width: float, size: float = BODY) -> str:
+    """Return a text in as few lines as a width [pt] needs, all about as long.
 
     Examples
     --------
-    >>> print(folded("energy from the lowest band edge", 25))
+    >>> print(folded("energy from the lowest band edge", 100.0))
     energy from the
     lowest band edge
     """
-    lines = wrap(text, width, break_on_hyphens=False)
-    for narrower in range(width - 1, 0, -1) if lines else ():
-        tried = wrap(text, narrower, break_on_hyphens=False)
-        if len(tried) > len(lines) or max(map(len, tried)) > narrower:
+    # a no-break space is no place to break
+    words = [(word, width_of(word, size)) for word in re.split(r"[ \n]+", text) if word]
+    gap = width_of("n n", size) - width_of("nn", size)
+    lines = _lines(words, gap, width)
+    for narrower in range(int(width), 0, -4):
+        tried = _lines(words, gap, float(narrower))
+        if len(tried) > len(lines):
             break
         lines = tried
     return "\n".join(lines)
+
+
+def _lines(words: list[tuple[str, float]], gap: float, width: float) -> list[str]:
+    """Return words in lines, each as long as fits."""
+    lines: list[str] = []
+    left = 0.0
+    for word, wide in words:
+        if lines and wide + gap <= left:
+            lines[-1] += f" {word}"
+            left -= wide + gap
+        else:
+            lines.append(word)
+            left = width - wide
+    return lines
 
 
 def paper(ax: Axes) -> Figure:
@@ -141,31 +172,39 @@ def paper(ax: Axes) -> Figure:
     return whole
 
 
-def letters(ax: Axes) -> tuple[int, int]:
-    """Return how many letters of body size go along an Axes and up it, margins allowed for."""
-    figure = paper(ax)
-    place, letter = ax.get_position(), 0.54 * BODY
-    across = 72.0 * figure.get_figwidth() * min(0.8, place.width) / letter
-    up = 72.0 * figure.get_figheight() * min(0.6, place.height) / letter
-    return max(16, int(across)), max(12, int(up))
+def cell(ax: Axes) -> tuple[float, float]:
+    """Return width and height [pt] of what an Axes and all around it may take."""
+    figure, place = paper(ax), ax.get_position()
+    # an Axes has these parts of its cell before a layout is made
+    width = 72.0 * figure.get_figwidth() * min(1.0, place.width / 0.775)
+    height = 72.0 * figure.get_figheight() * min(1.0, place.height / 0.77)
+    return width, height
+
+
+def _across(ax: Axes) -> float:
+    """Return how far it is from the left side of an Axes to the end of its cell [pt]."""
+    lines = 1 + ax.get_ylabel().count("\n") if ax.get_ylabel() else 0
+    return cell(ax)[0] - 30.0 - 1.25 * BODY * lines
+
+
+def depth(ax: Axes) -> float:
+    """Return how far below an Axes its numbers and label reach [pt]."""
+    return 18.0 + 1.3 * BODY * (1 + ax.get_xlabel().count("\n"))
 
 
 def legend(ax: Axes, handles: list[Any], note: str = "") -> None:
     """Set what lines mean below the Axes, where no curve runs, and a note above that."""
     from matplotlib.transforms import offset_copy
 
-    across, _ = letters(ax)
-    lines = 1 + ax.get_xlabel().count("\n")
-    below = offset_copy(
-        ax.transAxes, fig=paper(ax), y=-18.0 - 1.3 * BODY * lines, units="points"
-    )
-    longest = max((len(handle.get_label()) for handle in handles), default=1) + 7
+    across = _across(ax)
+    below = offset_copy(ax.transAxes, fig=paper(ax), y=-depth(ax), units="points")
+    longest = max((width_of(one.get_label(), SMALL) for one in handles), default=0.0)
+    fit = int((across + SPACE) / (longest + HANDLE + SPACE))
     made = ax.legend(
         handles=handles, loc="upper left", bbox_to_anchor=(0.0, 0.0), bbox_transform=below,
-        frameon=False, fontsize=SMALL, title=folded(note, int(1.2 * across)) or None,
-        title_fontsize=SMALL, ncols=max(1, min(4, int(1.2 * across) // longest)),
-        borderaxespad=0.0, borderpad=0.0, handlelength=2.2, columnspacing=1.2, labelspacing=0.3,
-        alignment="left",
+        frameon=False, fontsize=SMALL, title=folded(note, across, SMALL) or None,
+        title_fontsize=SMALL, ncols=max(1, min(4, fit)), borderaxespad=0.0, borderpad=0.0,
+        handlelength=2.2, columnspacing=SPACE / SMALL, labelspacing=0.3, alignment="left",
     )  # fmt: skip
     made.set_gid("legend")
 
