@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Hashable, Iterable, Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -13,7 +13,7 @@ import numpy.typing as npt
 from .errors import BandwrightError, SolveError, StackError
 from .frames import frame
 from .levels import Levels
-from .levels.ranges import Ends, ranges, ranges_of_many
+from .levels.ranges import Ends, Range, ranges, ranges_of_many
 from .levels.result import Part
 from .levels.solving import Request, check_stack, read_request, shoot
 from .profile import Profile, Ready
@@ -21,7 +21,7 @@ from .profile.alike import build_alike, chosen, together
 from .profile.build import Blueprint, build_profile
 from .profile.sections import Unlike
 from .quantities import show
-from .solver.family import solve_family
+from .solver.family import Batch, solve_family
 from .stack import Stack
 from .stack.layout import layout
 
@@ -31,31 +31,77 @@ if TYPE_CHECKING:
 Floats = npt.NDArray[np.float64]
 
 
-@dataclass(frozen=True)
+class _Later(NamedTuple):
+    """A design solved in a batch, whose `Levels` are made when asked for."""
+
+    batch: Batch
+    place: int
+    stack: Stack
+    span: Range
+    request: Request
+
+    @property
+    def energies(self) -> Floats:
+        return self.batch.energies(self.place)
+
+    @property
+    def checked(self) -> npt.NDArray[np.bool_]:
+        return self.batch.checked[self.batch.bounds[self.place] : self.batch.bounds[self.place + 1]]
+
+    def levels(self) -> Levels:
+        origin = Blueprint(self.stack, self.request.bands)
+        solution = self.batch.solution(self.place, origin)
+        part = Part(self.span, solution.numbers, solution.energies, solution)
+        return self.request.levels(self.stack, origin, (part,))
+
+
+_Entry = Levels | BandwrightError | _Later
+
+
+@dataclass(frozen=True, eq=False)
 class Many:
     """Levels of many designs, in the order given; a bad design is its error.
 
     Made by `bandwright.solve_many`. ``many[i]`` is the `Levels` of design i, or the
-    `BandwrightError` that stopped it; iteration gives all of them.
+    `BandwrightError` that stopped it; iteration gives all of them. Where energies are enough,
+    `energies` gives them without an object a design.
 
     Attributes
     ----------
-    results : tuple of Levels or BandwrightError
     alone : int
         How many designs one pass left unchecked, so that they were solved alone.
     """
 
-    results: tuple[Levels | BandwrightError, ...]
+    _entries: list[_Entry] = field(default_factory=list, repr=False)
     alone: int = 0
 
     def __len__(self) -> int:
-        return len(self.results)
+        return len(self._entries)
 
     def __getitem__(self, index: int) -> Levels | BandwrightError:
-        return self.results[index]
+        entry = self._entries[index]
+        if isinstance(entry, _Later):
+            self._entries[index] = entry = entry.levels()
+        return entry
 
     def __iter__(self) -> Iterator[Levels | BandwrightError]:
-        return iter(self.results)
+        return (self[index] for index in range(len(self)))
+
+    @property
+    def results(self) -> tuple[Levels | BandwrightError, ...]:
+        """Levels or error of every design."""
+        return tuple(self)
+
+    @property
+    def energies(self) -> list[Floats]:
+        """Energies of each design [eV], (n_levels,); none of a design that failed."""
+        none = np.zeros(0)
+        return [none if isinstance(e, BandwrightError) else e.energies for e in self._entries]
+
+    @property
+    def errors(self) -> dict[int, BandwrightError]:
+        """What is wrong with each design that failed, by its index."""
+        return {i: e for i, e in enumerate(self._entries) if isinstance(e, BandwrightError)}
 
     @property
     def share_alone(self) -> float:
@@ -74,22 +120,23 @@ class Many:
         energy: list[float | None] = []
         checked: list[bool] = []
         reason: list[str | None] = []
-        for index, result in enumerate(self.results):
-            if isinstance(result, Levels):
-                count = len(result)
-                design += [index] * count
-                name += [result.stack.name] * count
-                level += range(1, count + 1)
-                energy += (1e3 * result.energies).tolist()
-                checked += result.count_checked.tolist()
-                reason += [None] * count
-            else:
+        for index, entry in enumerate(self._entries):
+            if isinstance(entry, BandwrightError):
                 design.append(index)
                 name.append(None)
                 level.append(None)
                 energy.append(None)
                 checked.append(False)
-                reason.append(str(result))
+                reason.append(str(entry))
+                continue
+            count = len(entry.energies)
+            design += [index] * count
+            name += [entry.stack.name] * count
+            level += range(1, count + 1)
+            energy += (1e3 * entry.energies).tolist()
+            own = entry.checked if isinstance(entry, _Later) else entry.count_checked
+            checked += own.tolist()
+            reason += [None] * count
         columns: dict[str, list[Any]] = {
             "design": design, "name": name, "level": level, "energy_meV": energy,
             "count_checked": checked, "reason": reason,
@@ -146,7 +193,7 @@ def solve_many(
     request = read_request(below, at_most, tolerance, group, "shooting", 1, bands)
     if not isinstance(chunk, int) or chunk < 1:
         raise SolveError(f"chunk: got {chunk!r}; a whole number from 1 is due")
-    results: list[Levels | BandwrightError] = []
+    results: list[_Entry] = []
     alone = 0
     batch: list[Stack] = []
     if isinstance(stacks, Stack | str) or not isinstance(stacks, Iterable):
@@ -158,62 +205,62 @@ def solve_many(
             alone += _solve_batch(batch, request, results)
             batch = []
     alone += _solve_batch(batch, request, results)
-    return Many(tuple(results), alone)
+    return Many(results, alone)
 
 
-def _solve_batch(
-    stacks: Sequence[Stack], request: Request, results: list[Levels | BandwrightError]
-) -> int:
+def _solve_batch(stacks: Sequence[Stack], request: Request, results: list[_Entry]) -> int:
     """Append the results of some stacks; return how many of a family were solved alone."""
-    found: dict[int, Levels | BandwrightError] = {}
+    found: list[_Entry | None] = [None] * len(stacks)
     layouts: dict[Hashable, list[int]] = {}
     numbers = []
     for index, stack in enumerate(stacks):
         kind, own = layout(stack)
         layouts.setdefault(kind, []).append(index)
         numbers.append(own)
-    alone = 0
     for indices in layouts.values():
         if len(indices) > 1:
             columns = np.array([numbers[i] for i in indices]).T
-            for place, levels in _solve_alike([stacks[i] for i in indices], columns, request):
-                found[indices[place]] = levels
+            for place, later in _solve_alike([stacks[i] for i in indices], columns, request):
+                found[indices[place]] = later
+    alone = 0
+    for indices in layouts.values():
         for index in indices:
-            if index not in found:
+            if found[index] is None:
                 found[index] = one = _alone(stacks[index], request)
                 alone += len(indices) > 1 and isinstance(one, Levels)
-    results += [found[index] for index in range(len(stacks))]
+    results += [entry for entry in found if entry is not None]
     return alone
 
 
 def _solve_alike(
     stacks: Sequence[Stack], numbers: Floats, request: Request
-) -> Iterator[tuple[int, Levels]]:
-    """Yield the levels of designs of one layout, those that one pass leaves unchecked left out."""
-    origins = [Blueprint(stack, request.bands) for stack in stacks]
+) -> Iterator[tuple[int, _Later]]:
+    """Yield the designs of one layout, those that one pass leaves unchecked left out."""
     try:
         profile = build_alike(stacks[0], numbers, request.bands)
-        yield from _solve_group(profile, range(len(stacks)), origins, request)
+        yield from _solve_group(profile, range(len(stacks)), stacks, request)
         return
     except (Unlike, BandwrightError):
         pass  # they are not all of one kind, or one of them can't be built
     kinds: dict[Hashable, list[int]] = {}
-    for index, origin in enumerate(origins):
+    profiles: dict[int, Profile] = {}
+    for index, stack in enumerate(stacks):
         try:
-            sections = origin.profile.numbers
+            profiles[index] = profile = build_profile(stack, request.bands)
         except BandwrightError:
             continue  # alone it says why
-        kind = (sections.flat.tobytes(), sections.curved.tobytes(), origin.profile.bands)
+        sections = profile.numbers
+        kind = (sections.flat.tobytes(), sections.curved.tobytes(), profile.bands)
         kinds.setdefault(kind, []).append(index)
     for indices in kinds.values():
-        profile = together([origins[i].profile for i in indices])
-        yield from _solve_group(profile, indices, origins, request)
+        joined = together([profiles[i] for i in indices])
+        yield from _solve_group(joined, indices, stacks, request)
 
 
 def _solve_group(
-    profile: Profile, indices: Sequence[int], origins: Sequence[Blueprint], request: Request
-) -> Iterator[tuple[int, Levels]]:
-    """Yield the levels of designs that are one profile of many, if their ranges are alike."""
+    profile: Profile, indices: Sequence[int], stacks: Sequence[Stack], request: Request
+) -> Iterator[tuple[int, _Later]]:
+    """Yield the designs that are one profile of many, if one range each is asked of them."""
     try:
         spans = ranges_of_many(profile, request.below, request.at_most)
     except SolveError:
@@ -225,15 +272,14 @@ def _solve_group(
     for pair, places in ends.items():
         some = profile if len(places) == len(spans) else chosen(profile, np.array(places))
         high = np.array([spans[place][0].high for place in places])
-        mine = [origins[indices[place]] for place in places]
         try:
-            solutions = solve_family(some, mine, high, pair, request.at_most, request.tolerance)
+            for batch in solve_family(some, high, pair, request.at_most, request.tolerance):
+                for row in np.flatnonzero(batch.good).tolist():
+                    place = places[batch.which[row]]
+                    index = indices[place]
+                    yield index, _Later(batch, row, stacks[index], spans[place][0], request)
         except (SolveError, np.linalg.LinAlgError):
             continue
-        for place, origin, solution in zip(places, mine, solutions, strict=True):
-            if solution is not None:
-                part = Part(spans[place][0], solution.numbers, solution.energies, solution)
-                yield indices[place], request.levels(origin.stack, origin, (part,))
 
 
 def _alone(stack: Stack, request: Request) -> Levels | BandwrightError:

@@ -6,7 +6,8 @@ agree to rounding.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
+from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
@@ -15,7 +16,7 @@ from ..profile import Origin, Profile
 from ..profile.alike import chosen
 from .alike import find_alike
 from .certificate import certify, halving_error
-from .find import Asked, guess_levels
+from .find import Asked, Found, guess_levels
 from .kinds import joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
@@ -83,18 +84,64 @@ class Family:
         return joined(parts, self.rows)
 
 
+@dataclass(frozen=True)
+class Batch:
+    """The levels of all designs of one slice pattern, and their evidence.
+
+    Attributes
+    ----------
+    which : array (n_designs,)
+        Index of each design among those given.
+    found : Found
+        Levels, design after design.
+    bounds : array (n_designs + 1,)
+        Where each design's levels begin in ``found``, and where the last one's end.
+    error, checked : array (n_levels,)
+        As in `Solution`.
+    good : array of bool (n_designs,)
+        Whether counts prove the design's levels and their errors are within the tolerance.
+    low, high : array (n_designs,)
+        Bounds of each set [eV].
+    """
+
+    which: Indices
+    counts: Indices
+    ends: tuple[str, str]
+    found: Found
+    bounds: Indices
+    error: Floats
+    checked: npt.NDArray[np.bool_]
+    good: npt.NDArray[np.bool_]
+    low: Floats
+    high: Floats
+    tolerance: float
+
+    def energies(self, place: int) -> Floats:
+        """Return the energies of a design [eV], by its place in this batch."""
+        return self.found.energies[self.bounds[place] : self.bounds[place + 1]]
+
+    def solution(self, place: int, origin: Origin) -> Solution:
+        """Return the solution of a design, by its place in this batch and what has its profile."""
+        own = slice(int(self.bounds[place]), int(self.bounds[place + 1]))
+        return Solution(
+            origin, self.counts, self.ends, self.found.part(own), self.error[own],
+            self.checked[own], True, float(self.low[place]), float(self.high[place]),
+            self.tolerance,
+        )  # fmt: skip
+
+
 def solve_family(
-    profile: Profile, origins: Sequence[Origin], high: Floats, ends: tuple[str, str],
-    at_most: int | None, tolerance: float,
-) -> list[Solution | None]:  # fmt: skip
-    """Return the levels of many designs of one layout, solved at once, each count-checked.
+    profile: Profile, high: Floats, ends: tuple[str, str], at_most: int | None, tolerance: float
+) -> Iterator[Batch]:
+    """Yield the levels of many designs of one layout, those of one slice pattern at once.
+
+    Each design is count-checked; those too large to be held are left out. What is left out, or
+    not good, is for `solve_profile` alone.
 
     Parameters
     ----------
     profile : Profile
         Of many designs.
-    origins : sequence of Origin
-        What has each design's own profile.
     high : array (n_designs,)
         Highest energy asked of each [eV].
     ends : (str, str)
@@ -102,28 +149,18 @@ def solve_family(
         Most levels of each.
     tolerance : float
         Largest error of an energy [eV].
-
-    Returns
-    -------
-    list
-        None for a design that one pass leaves unchecked: it is for `solve_profile` alone.
     """
-    results: list[Solution | None] = [None] * len(origins)
     low = lowest_edge(profile)
-    edges = [end.edge for end in open_ends(profile, ends) if end is not None]
     top = high
-    for edge in edges:  # nothing is bound above an open end's edge
-        top = np.minimum(top, edge)
+    for end in open_ends(profile, ends):
+        if end is not None:  # nothing is bound above an open end's edge
+            top = np.minimum(top, end.edge)
     top = np.maximum(low, top)
     if at_most is not None:
         for which, family in _families(profile, top, ROUGH, ends, at_most):
             top[which] = tops(family, low[which], top[which], at_most)
     for which, family in _families(profile, top, tolerance, ends, at_most):
-        mine = [origins[i] for i in which.tolist()]
-        solved = _solve_pattern(family, mine, low[which], top[which], at_most, tolerance)
-        for i, solution in zip(which.tolist(), solved, strict=True):
-            results[i] = solution
-    return results
+        yield _solve_pattern(which, family, low[which], top[which], at_most, tolerance)
 
 
 def _families(
@@ -151,9 +188,9 @@ def _families(
 
 
 def _solve_pattern(
-    family: Family, origins: Sequence[Origin], low: Floats, high: Floats, at_most: int | None,
+    which: Indices, family: Family, low: Floats, high: Floats, at_most: int | None,
     tolerance: float,
-) -> list[Solution | None]:  # fmt: skip
+) -> Batch:  # fmt: skip
     designs, slices = len(low), family.slices
     most = np.full(designs, np.iinfo(np.int64).max if at_most is None else at_most)
     guess = guess_levels(
@@ -169,17 +206,9 @@ def _solve_pattern(
     last = np.append(found.energies, 0.0)[bounds[1:] - 1] + tolerance
     upper = np.where(cut_short, last, high)
     proof = certify(fine, found, low, upper, tolerance)
-    wrong = np.zeros(designs, dtype=bool)
-    wrong[found.owner[3.0 * error > tolerance]] = True
-    return [
-        Solution(
-            origin, slices.counts, family.ends, found.part(slice(first, end)), error[first:end],
-            proof.checked[first:end], True, floor, above, tolerance,
-        )
-        if good
-        else None
-        for origin, first, end, floor, above, good in zip(
-            origins, bounds[:-1].tolist(), bounds[1:].tolist(), low.tolist(), upper.tolist(),
-            (proof.complete & ~wrong).tolist(), strict=True,
-        )
-    ]  # fmt: skip
+    good = proof.complete.copy()
+    good[found.owner[3.0 * error > tolerance]] = False
+    return Batch(
+        which, slices.counts, family.ends, found, bounds, error, proof.checked, good, low, upper,
+        tolerance,
+    )  # fmt: skip
