@@ -27,6 +27,9 @@ if TYPE_CHECKING:
     from .errors import StackError as StackError
     from .errors import StackFileError as StackFileError
     from .errors import UnknownName as UnknownName
+    from .following import follow as follow
+    from .following import follow_line as follow_line
+    from .following import overlaps as overlaps
     from .gradients import Gradient as Gradient
     from .gradients import LineGradient as LineGradient
     from .levels import Levels as Levels
@@ -76,6 +79,7 @@ _ROOMS = {
     "lines": ("Lines",),
     "many": ("Many", "solve_many"),
     "gradients": ("Gradient", "LineGradient"),
+    "following": ("follow", "follow_line", "overlaps"),
     "comparison": ("compare",),
     "pictures": (
         "band_diagram",

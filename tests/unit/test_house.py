@@ -35,6 +35,7 @@ HOUSE = [
     "lines",
     "budget",
     "metrics",
+    "following",
     "comparison",
     "sweeps",
     "report",

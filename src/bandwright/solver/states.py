@@ -154,6 +154,28 @@ class States:
         clamped = (b == 0.0) & (here.inverse_gap > 0.0)
         return _Quadrature(z, weight, section, u, np.sqrt(H2M * b) * p, clamped, p)
 
+    def components(self, z: Floats) -> tuple[Floats, Floats]:
+        """Return u and its valence-like partner at ascending positions z [nm] of the structure.
+
+        Both (n_levels, n_points); the product <i|j> is the integral of u_i u_j and that of the
+        partners.
+        """
+        q = self._on(z, np.zeros_like(z))
+        return q.u, q.p
+
+    def beyond(self, end: int) -> tuple[Floats, Floats, Floats] | None:
+        """Return decay [1/nm], u and partner at an outer face; None if nothing lies beyond it.
+
+        ``end`` is 0 for the first-grown face, 1 for the last; each (n_levels,).
+        """
+        row = -end
+        for tail in self._tails:
+            if (tail.outward > 0) == bool(end):
+                face = self.system.slices.profile.faces[row]
+                shrink = np.exp(-tail.decay * abs(face - tail.position))
+                return tail.decay, shrink * tail.u, shrink * self._tail_partner(tail, row)
+        return None
+
     def _tail_partner(self, tail: _Tail, row: int) -> Floats:
         section = self.system.slices.profile.sections[row]
         depth = np.array([0.0 if row == 0 else section.thickness])
@@ -315,11 +337,7 @@ def _cells(
     ``cuts`` are further positions [nm] between cells.
     """
     slices = system.slices
-    tilt = 0.5 * np.abs(slices.drop)
-    heavy = slices.mass * (1.0 + np.maximum(0.0, high - slices.edge + tilt) * slices.inverse_gap)
-    reach = np.maximum(np.abs(high - slices.edge), np.abs(slices.edge - low)) + tilt
-    rate = np.sqrt(heavy * reach / H2M)
-    cells = np.maximum(1, np.ceil(slices.thickness * rate / _CELL)).astype(np.int64)
+    cells = cells_for(slices.thickness * rates(system, low, high))
     width = np.repeat(slices.thickness / cells, cells)
     within = np.arange(len(width)) - np.repeat(np.cumsum(cells) - cells, cells)
     begin = np.repeat(slices.faces[:-1], cells) + within * width
@@ -328,6 +346,33 @@ def _cells(
         width = np.diff(begin, append=slices.faces[-1])
     z = (begin[:, None] + 0.5 * width[:, None] * (1.0 + _NODES)).reshape(-1)
     return z, (0.5 * width[:, None] * _WEIGHTS).reshape(-1)
+
+
+def rates(system: System, low: float, high: float) -> Floats:
+    """Return how fast states of these energies turn or decay at most in each slice [1/nm]."""
+    slices = system.slices
+    tilt = 0.5 * np.abs(slices.drop)
+    heavy = slices.mass * (1.0 + np.maximum(0.0, high - slices.edge + tilt) * slices.inverse_gap)
+    reach = np.maximum(np.abs(high - slices.edge), np.abs(slices.edge - low)) + tilt
+    return np.asarray(np.sqrt(heavy * reach / H2M))
+
+
+def cells_for(turns: Floats) -> npt.NDArray[np.int64]:
+    """Return how many quadrature cells stretches need in which states turn so far [rad]."""
+    return np.maximum(1, np.ceil(turns / _CELL)).astype(np.int64)
+
+
+def gauss(cells: npt.NDArray[np.int64]) -> tuple[npt.NDArray[np.int64], Floats, Floats]:
+    """Return stretch, place and weight of each Gauss point, stretches in so many equal cells.
+
+    Places and weights are fractions of the stretch.
+    """
+    stretch = np.repeat(np.arange(len(cells)), cells)
+    within = np.arange(len(stretch)) - np.repeat(np.cumsum(cells) - cells, cells)
+    share = 1.0 / cells[stretch]
+    place = (within[:, None] + 0.5 * (1.0 + _NODES)) * share[:, None]
+    weight = 0.5 * share[:, None] * _WEIGHTS
+    return np.repeat(stretch, _ORDER), place.reshape(-1), weight.reshape(-1)
 
 
 def cross_moment(bound: States, boxed: States) -> Floats:
