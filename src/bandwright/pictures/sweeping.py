@@ -250,7 +250,8 @@ def _map(
         ax.contourf(x, y, masked, levels=steps, cmap=shades).set_gid("map")
         lines = ax.contour(x, y, masked, levels=steps, colors=BLACK, linewidths=THIN)
         lines.set_gid("contours")
-        ax.clabel(lines, fontsize=SMALL, fmt=printed, inline_spacing=2)
+        for number in ax.clabel(lines, fontsize=SMALL, fmt=printed, inline_spacing=2):
+            number.set_clip_on(False)  # one at the side is read in full
     else:
         ax.text(0.5, 0.5, f"{printed(low)} everywhere", transform=ax.transAxes, fontsize=SMALL,
                 ha="center")  # fmt: skip
