@@ -19,6 +19,7 @@ COMMANDS = {
     "levels": ("STACK", "Find every level of a stack."),
     "lines": ("STACK", "Find the wavelengths a stack emits or detects."),
     "compare": ("STACK ...", "Set designs side by side, a row each."),
+    "sweep": ("STACK --over NAME=VALUES", "Vary a stack over one or several ranges."),
     "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),
     "materials": ("[FORMULA ...]", "List the materials, or show formulas."),
 }
@@ -132,8 +133,9 @@ def main(argv: Sequence[str] | None = None) -> int:
         return _fail(str(error))
     except OSError as error:
         return _fail(f"{error.filename or 'output'}: {error.strerror or error}")
-    except KeyboardInterrupt:
-        print("bandwright: interrupted", file=sys.stderr)
+    except KeyboardInterrupt as stopped:
+        said = ["bandwright: interrupted", *getattr(stopped, "__notes__", ())]
+        print("; ".join(said), file=sys.stderr)
         return 130
     return 0
 

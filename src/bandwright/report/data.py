@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 Columns = dict[str, list[Any]]
 
 #: columns of counts and level numbers
-WHOLE = {"copies", "design", "level", "levels", "lower", "upper"}
+WHOLE = {"copies", "design", "level", "levels", "levels_found", "lower", "upper"}
 
 
 def plain(value: Any) -> Any:

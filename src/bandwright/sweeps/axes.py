@@ -142,11 +142,21 @@ def _of_stack(stack: Stack, name: str, given: Any) -> Axis:
         values = Values([number for number, _ in pairs], units[0])
     if parameter.unit in ("nm^-2", "nm^-3") and values.unit != parameter.unit:
         raise StackError(f"the layer's density is in {parameter.unit}; give densities alike", name)
-    suffix, power = _COLUMNS.get(values.unit, ("", 0))
-    shown = values.numbers
-    if power:
-        shown = [float(Decimal(repr(value)).scaleb(power)) for value in values.numbers]
+    suffix = _COLUMNS.get(values.unit, ("", 0))[0]
+    shown = [in_column(value, values.unit) for value in values.numbers]
     return Axis(parameter.name, parameter.name + suffix, values.unit, values.numbers, shown)
+
+
+def in_column(value: float, unit: str) -> float:
+    """Return a number in core units as its column shows it.
+
+    Examples
+    --------
+    >>> in_column(0.0012, "V/nm")
+    12.0
+    """
+    power = _COLUMNS.get(unit, ("", 0))[1]
+    return float(Decimal(repr(value)).scaleb(power)) if power else value
 
 
 def _parameter(stack: Stack, name: str) -> tuple[Parameter, int | None]:
