@@ -12,7 +12,7 @@ guesses then bracket every level, as a scan would; where they do not, the design
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import NamedTuple, Protocol
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -30,19 +30,11 @@ _FEW = 6
 _LEADERS = 4
 
 
-class Alike(Solvable, Protocol):
-    """A family of designs of one slice pattern."""
-
-    def matrix(self, energies: Floats, owner: Indices) -> Matrix:
-        """Return K of each energy's design."""
-        ...
-
-
 @dataclass(frozen=True)
 class Some:
     """Some designs of a family, counted anew from 0."""
 
-    family: Alike
+    family: Solvable
     which: Indices
 
     @property
@@ -64,6 +56,10 @@ class Some:
         """Return how many levels of each energy's design lie below it, and K's last pivot."""
         return self.family.count_and_pivot(energies, self.which[owner])
 
+    def matrix(self, energies: Floats, owner: Indices) -> Matrix:
+        """Return K of each energy's design."""
+        return self.family.matrix(energies, self.which[owner])
+
     def matrix_and_slope(self, energies: Floats, owner: Indices) -> tuple[Matrix, Matrix]:
         """Return K of each energy's design, and its derivative by E."""
         return self.family.matrix_and_slope(energies, self.which[owner])
@@ -76,12 +72,12 @@ class _Led(NamedTuple):
     brackets: Brackets
 
 
-def find_alike(family: Alike, asked: Asked, accuracy: float) -> Found:
+def find_alike(family: Solvable, asked: Asked, accuracy: float) -> Found:
     """Return the levels asked of a family, design after design.
 
     Parameters
     ----------
-    family : Alike
+    family : Solvable
     asked : Asked
         Of each design; ``skip`` is 0.
     accuracy : float
@@ -115,7 +111,9 @@ def _of(asked: Asked, which: Indices) -> Asked:
     return Asked(low[which], high[which], skip[which], at_most[which], guess[which])
 
 
-def _foretold(family: Alike, leader: Found, lead: Indices, others: Indices, asked: Asked) -> _Led:
+def _foretold(
+    family: Solvable, leader: Found, lead: Indices, others: Indices, asked: Asked
+) -> _Led:
     """Return brackets of the designs where the leader's levels foretell every level asked."""
     levels, designs = len(leader.energies), len(others)
     slope = family.matrix_and_slope(leader.energies, np.repeat(lead, levels))[1]

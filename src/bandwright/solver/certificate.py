@@ -8,8 +8,9 @@ import numpy as np
 import numpy.typing as npt
 
 from .find import Found, Solvable
+from .matrix import Matrix
 from .newton import random_vector
-from .system import Joint, chunks, dot
+from .system import Joint, apply, chunks, dot
 
 Floats = npt.NDArray[np.float64]
 Flags = npt.NDArray[np.bool_]
@@ -24,29 +25,43 @@ class Proof(NamedTuple):
 
 
 def halving_error(fine: Solvable, found: Found) -> Floats:
-    """Estimate each error from one Rayleigh step on slices half as thick (factor 64/63)."""
+    """Estimate each error from slices half as thick: to first order, times 64/63.
+
+    With u at the faces of whole slices and K(E) u at the middles zero, -(u.Ku)/(u.K'u) is the way
+    to the level of the halved slices. A vector that is not known is found first.
+    """
     error = np.empty(len(found.energies))
     for part in chunks(len(error), fine.rows):
-        matrix, slope = (
-            Joint.of(m) for m in fine.matrix_and_slope(found.energies[part], found.owner[part])
-        )
-        z = _refine(fine, found.nodes[:, part]).T.copy()
-        z[~found.single[part]] = random_vector(fine.nodes)
-        for _ in range(1 if found.single[part].all() else 2):  # so near a level one is enough
-            r = slope.apply(z)
-            r /= np.abs(r).max(axis=1)[:, None]
-            z = matrix.solve(r)
-        error[part] = np.abs(dot(z, r) / dot(z, slope.apply(z)))
+        energies, owner = found.energies[part], found.owner[part]
+        if found.single[part].all():
+            matrix = fine.matrix(energies, owner)
+            u = _between(matrix, found.nodes[:, part], fine.ends)
+            error[part] = np.abs((u * apply(matrix, u)).sum(axis=0))  # u.K'u is -1
+        else:
+            error[part] = _inverse_error(fine, energies, owner)
     return error * 64.0 / 63.0
 
 
-def _refine(fine: Solvable, nodes: Floats) -> Floats:
-    """Carry u at the coarse free faces to those of halved slices, midpoints by the mean."""
-    first, last = (int(end == "wall") for end in fine.ends)
+def _inverse_error(fine: Solvable, energies: Floats, owner: Indices) -> Floats:
+    """Return how far each level of halved slices is, by inverse iteration from any vector."""
+    matrix, slope = (Joint.of(m) for m in fine.matrix_and_slope(energies, owner))
+    z = np.empty_like(matrix.diagonal)
+    z[:] = random_vector(fine.nodes)
+    for _ in range(3):
+        r = slope.apply(z)
+        r /= np.abs(r).max(axis=1)[:, None]
+        z = matrix.solve(r)
+    return np.abs(dot(z, r) / dot(z, slope.apply(z)))
+
+
+def _between(matrix: Matrix, nodes: Floats, ends: tuple[str, str]) -> Floats:
+    """Carry u at whole slices' free faces to those of halved ones, K(E) u = 0 at the middles."""
+    first, last = (int(end == "wall") for end in ends)
     u = np.pad(nodes, [(first, last), (0, 0)])
+    off = np.pad(matrix.off, [(first, last), (0, 0)])
     full = np.empty((2 * len(u) - 1, u.shape[1]))
     full[::2] = u
-    full[1::2] = 0.5 * (u[:-1] + u[1:])
+    full[1::2] = (off[::2] * u[:-1] + off[1::2] * u[1:]) / -matrix.diagonal[1 - first :: 2]
     return np.asarray(full[first : len(full) - last])
 
 

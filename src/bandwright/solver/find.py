@@ -102,6 +102,10 @@ class Solvable(Protocol):
         """Return how many levels of each energy's design lie below it, and K's last pivot."""
         ...
 
+    def matrix(self, energies: Floats, owner: Indices) -> Matrix:
+        """Return K of each energy's design."""
+        ...
+
     def matrix_and_slope(self, energies: Floats, owner: Indices) -> tuple[Matrix, Matrix]:
         """Return K of each energy's design, and its derivative by E."""
         ...

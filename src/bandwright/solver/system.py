@@ -86,7 +86,7 @@ class System:
         """Number of slices."""
         return len(self.slices)
 
-    def matrix(self, energies: Floats) -> Matrix:
+    def matrix(self, energies: Floats, owner: object = None) -> Matrix:
         """Return K at each energy [eV]."""
         first, last = self.outside
         return assemble(
