@@ -58,7 +58,7 @@ def settle(
 def _probes(plan: Plan, task: Task) -> list[Levels]:
     designs = plan.probes()
     found = solve_part(task, Part(designs, plan.values(designs)))
-    return [one for one in found if isinstance(one, Levels)]
+    return [levels for _, levels in found.levels()]
 
 
 def _default(probes: Sequence[Levels], arguments: Mapping[str, Any]) -> dict[str, Metric]:

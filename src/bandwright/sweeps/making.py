@@ -122,17 +122,20 @@ class _Exchange:
 
     def __init__(self, base: Stack, names: Sequence[str]) -> None:
         self._base = base
-        self._around = [i for i, name in enumerate(names) if name in _AROUND]
-        self._set_around = _Replace(base, [names[i] for i in self._around])
-        self._groups = [(group, _Layers(base, names, group)) for group in _groups(base, names)]
+        around = [i for i, name in enumerate(names) if name in _AROUND]
+        self._set_around = _Replace(base, [names[i] for i in around])
+        self._around = _OnceAValue(self._surroundings, around)
+        self._groups = [
+            _OnceAValue(_Layers(base, names, group), group) for group in _groups(base, names)
+        ]
         self._nested = any(isinstance(layer, Repeat) for layer in base.layers)
 
     def __call__(self, values: Sequence[Sequence[Any]]) -> list[Made]:
         """Return each design's stack, or what is wrong with it."""
         count = len(values[0])
         bad: dict[int, BandwrightError] = {}
-        around = _looked_up(self._surroundings, values, self._around, count, bad)
-        exchanged = [_looked_up(make, values, group, count, bad) for group, make in self._groups]
+        around = self._around(values, count, bad)
+        exchanged = [group(values, count, bad) for group in self._groups]
         made: list[Made] = []
         for index, (inner, *parts) in enumerate(zip(around, *exchanged, strict=True)):
             if index in bad:
@@ -161,19 +164,38 @@ class _Exchange:
         return {name: getattr(stack, name) for name in _FIELDS}
 
 
-def _looked_up(
-    make: Callable[[Sequence[Any]], Result], values: Sequence[Sequence[Any]],
-    axes: Sequence[int], count: int, bad: dict[int, BandwrightError],
-) -> list[Result | Any]:  # fmt: skip
-    """Return what is made of some axes' values for each design, made once a value."""
-    keys = list(zip(*(values[i] for i in axes), strict=True)) if axes else [()] * count
-    table = {key: _made(make, key) for key in dict.fromkeys(keys)}
-    wrong = {key: made for key, made in table.items() if isinstance(made, BandwrightError)}
-    if wrong:
-        for index, key in enumerate(keys):
-            if key in wrong:
-                bad.setdefault(index, wrong[key])
-    return [table[key] for key in keys]
+class _OnceAValue:
+    """What is made of some axes' values; those of the last designs are kept for the next.
+
+    Parameters
+    ----------
+    make : callable
+        Takes values of the axes.
+    axes : sequence of int
+    """
+
+    def __init__(self, make: Callable[[Sequence[Any]], Any], axes: Sequence[int]) -> None:
+        self._make, self._axes = make, tuple(axes)
+        self._known: dict[tuple[Any, ...], Any] = {}
+
+    def __call__(
+        self, values: Sequence[Sequence[Any]], count: int, bad: dict[int, BandwrightError]
+    ) -> list[Any]:
+        """Return what is made for each design, and add to what is wrong with some."""
+        known = self._known
+        columns = [values[i] for i in self._axes]
+        keys = list(zip(*columns, strict=True)) if columns else [()] * count
+        table = {
+            key: known[key] if key in known else _made(self._make, key)
+            for key in dict.fromkeys(keys)
+        }
+        self._known = table
+        wrong = {key: made for key, made in table.items() if isinstance(made, BandwrightError)}
+        if wrong:
+            for index, key in enumerate(keys):
+                if key in wrong:
+                    bad.setdefault(index, wrong[key])
+        return [table[key] for key in keys]
 
 
 class _Layers:

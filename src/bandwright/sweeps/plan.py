@@ -61,12 +61,12 @@ class Plan:
     def values(self, designs: Sequence[int] | Indices) -> list[list[Any]]:
         """Return, axis by axis, what each design is made with."""
         places = self.places(designs)
-        return [[axis.values[k] for k in at] for axis, at in zip(self.axes, places, strict=True)]
+        return [_picked(axis.values, at) for axis, at in zip(self.axes, places, strict=True)]
 
     def shown(self, designs: Sequence[int] | Indices) -> list[list[Any]]:
         """Return, axis by axis, what the columns of the parameters show."""
         places = self.places(designs)
-        return [[axis.shown[k] for k in at] for axis, at in zip(self.axes, places, strict=True)]
+        return [_picked(axis.shown, at) for axis, at in zip(self.axes, places, strict=True)]
 
     def before(self, design: int) -> int | None:
         """Return the neighbour that a design's levels are followed from; None for the first.
@@ -90,3 +90,7 @@ class Plan:
         ]
         middle = int(np.ravel_multi_index(tuple(n // 2 for n in self.shape), self.shape))
         return list(dict.fromkeys([0, len(self) - 1, middle, *picked]))
+
+
+def _picked(values: Sequence[Any], at: Indices) -> list[Any]:
+    return [values[place] for place in at.tolist()]

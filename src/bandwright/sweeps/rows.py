@@ -97,8 +97,9 @@ class Rows:
         texts = ["reason"]
         shown = self._plan.shown(range(size))
         for name, column in zip(self.parameters, shown, strict=True):
-            columns[name] = column
-            texts += [name] if any(isinstance(cell, str) for cell in set(column)) else []
+            floats = set(map(type, column)) == {float}
+            columns[name] = np.array(column) if floats else column
+            texts += [name] if any(isinstance(cell, str) for cell in column) else []
         for name, cells in self._metrics.items():
             columns[name] = cells.column()
             texts += [name] if cells.holds_text else []

@@ -48,8 +48,9 @@ def run(
     if executor is not None:
         yield from _submitted(task, parts, workers, executor)
     elif workers == 1:
+        make = task.maker()
         for part in parts:
-            yield compute(task, part)
+            yield compute(task, part, make)
     else:
         yield from _in_processes(task, parts, workers)
 

@@ -5,7 +5,7 @@ What is here runs wherever an executor runs it: a task and a part are sent, a bl
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any, NamedTuple
 
@@ -14,10 +14,10 @@ import numpy.typing as npt
 
 from ..errors import BandwrightError, StackError
 from ..levels import Levels
-from ..many import solve_many
+from ..many import Many, solve_many
 from ..metrics import Choice, Floats, Metric
 from ..stack import Stack
-from .making import maker
+from .making import Maker, maker
 
 #: a column of some designs: numbers, or whatever a metric gives, None where a design has nothing
 Column = npt.NDArray[Any] | list[Any]
@@ -48,6 +48,10 @@ class Task:
     group: float
     arguments: Mapping[str, Any] = field(default_factory=dict)
 
+    def maker(self) -> Maker:
+        """Return what makes the stacks."""
+        return maker(self.design, self.names, self.units)
+
 
 class Part(NamedTuple):
     """Some designs: their numbers from 0, and what each is made with, axis by axis."""
@@ -75,24 +79,61 @@ class Block(NamedTuple):
         )
 
 
+class Solutions:
+    """The levels of some designs, made one by one only for what takes more than energies.
+
+    Parameters
+    ----------
+    made : sequence of Stack or BandwrightError
+        Each design.
+    many : Many
+        Of those that are stacks, in this order.
+    """
+
+    def __init__(self, made: Sequence[Stack | BandwrightError], many: Many) -> None:
+        self._many = many
+        self._places = [i for i, one in enumerate(made) if isinstance(one, Stack)]
+        self.errors: list[BandwrightError | None] = [
+            None if isinstance(one, Stack) else one for one in made
+        ]
+        for index, error in many.errors.items():
+            self.errors[self._places[index]] = error
+
+    @property
+    def energies(self) -> Floats:
+        """Energies of all designs [eV] (n_designs, n_levels), nan where there are fewer."""
+        each = self._many.energies
+        most = max(map(len, each), default=0)
+        energies = np.full((len(self.errors), most), np.nan)
+        for place, own in zip(self._places, each, strict=True):
+            energies[place, : len(own)] = own
+        return energies
+
+    def levels(self) -> Iterator[tuple[int, Levels]]:
+        """Yield the place and the levels of each design that has them."""
+        for index, place in enumerate(self._places):
+            levels = self._many[index]
+            if isinstance(levels, Levels):
+                yield place, levels
+
+
 def _taken(column: Column, kept: Sequence[int]) -> Column:
     return column[kept] if isinstance(column, np.ndarray) else [column[i] for i in kept]
 
 
-def compute(task: Task, part: Part) -> Block:
-    """Return the rows of some designs."""
-    found = solve_part(task, part)
-    reasons: list[str | None] = [None if isinstance(one, Levels) else _reason(one) for one in found]
+def compute(task: Task, part: Part, make: Maker | None = None) -> Block:
+    """Return the rows of some designs; ``make``, if it is at hand, is ``task.maker()``."""
+    found = solve_part(task, part, make)
+    reasons = [None if error is None else _reason(error) for error in found.errors]
     columns = _columns(task, found, reasons)
     return Block(part.designs, columns, reasons)
 
 
-def solve_part(task: Task, part: Part) -> list[Levels | BandwrightError]:
+def solve_part(task: Task, part: Part, make: Maker | None = None) -> Solutions:
     """Return the levels of some designs, or what is wrong with them."""
-    made = maker(task.design, task.names, task.units)(part.values)
-    stacks = [one for one in made if isinstance(one, Stack)]
-    solved = iter(solve_many(stacks, **task.arguments))
-    return [next(solved) if isinstance(one, Stack) else one for one in made]
+    made = (make or task.maker())(part.values)
+    many = solve_many([one for one in made if isinstance(one, Stack)], **task.arguments)
+    return Solutions(made, many)
 
 
 def _reason(error: BaseException) -> str:
@@ -100,12 +141,10 @@ def _reason(error: BaseException) -> str:
     return " ".join(str(error).split())
 
 
-def _columns(
-    task: Task, found: Sequence[Levels | BandwrightError], reasons: list[str | None]
-) -> dict[str, Column]:
+def _columns(task: Task, found: Solutions, reasons: list[str | None]) -> dict[str, Column]:
     """Return every metric of designs, and add to the reasons of those where one fails."""
-    energies = _energies(found)
-    solved = [isinstance(one, Levels) for one in found]
+    energies = found.energies
+    solved = [error is None for error in found.errors]
     columns: dict[str, Column | None] = {}
     for name, metric in task.metrics.items():
         together = getattr(metric, "of_energies", None)
@@ -124,26 +163,15 @@ def _where_solved(column: npt.NDArray[Any], solved: Sequence[bool]) -> Column:
     return [cell if there else None for cell, there in zip(column.tolist(), solved, strict=True)]
 
 
-def _energies(found: Sequence[Levels | BandwrightError]) -> Floats:
-    """Return the energies of all designs [eV] (n_designs, n_levels), nan where there are fewer."""
-    each = [one.energies if isinstance(one, Levels) else () for one in found]
-    energies = np.full((len(each), max(map(len, each), default=0)), np.nan)
-    for row, own in zip(energies, each, strict=True):
-        row[: len(own)] = own
-    return energies
-
-
 def _one_by_one(
     metrics: Mapping[str, Metric],
     choice: Choice,
-    found: Sequence[Levels | BandwrightError],
+    found: Solutions,
     reasons: list[str | None],
 ) -> dict[str, Column | None]:
     """Return metrics that take more than energies, design by design."""
-    columns: dict[str, list[Any]] = {name: [None] * len(found) for name in metrics}
-    for index, levels in enumerate(found):
-        if not isinstance(levels, Levels):
-            continue
+    columns: dict[str, list[Any]] = {name: [None] * len(reasons) for name in metrics}
+    for index, levels in found.levels():
         solved = choice.solved(levels)
         for name, metric in metrics.items():
             try:
