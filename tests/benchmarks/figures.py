@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import platform
+import tempfile
 import time
 import warnings
 
@@ -11,7 +12,7 @@ import numpy as np
 import scipy
 
 import bandwright as bw
-from benchmarks import breakdown, floor, growth, memory, sides
+from benchmarks import breakdown, floor, grids, growth, memory, sides
 from benchmarks.cases import CASES
 from benchmarks.timing import table, text
 
@@ -99,6 +100,27 @@ def families(cases, options):
             ratios([(c, ratio) for c, ratio in column if ratio is not None], stick)
 
 
+def sweeps(_, options):
+    values = 20 if options.quick else 100
+    for tolerance in options.tolerance:
+        say(f"\nsweep of a double well, {values} x {values} designs with their table, per design,"
+            f" true error {tolerance:g} eV")  # fmt: skip
+        try:
+            one = grids.measure(tolerance, values, seconds=2 * options.seconds)
+        except sides.Wrong as wrong:
+            options.missed.append(str(wrong))
+            say(f"MISSED {wrong}")
+            continue
+        row = [one["ms"], one["error"], *(one["ratio"].get(k) for k in STICKS[:3])]
+        say(table(("ms a design", "error, eV", *(f"{k}, x" for k in STICKS[:3])), [row]))
+    say("\npeak memory of a process that sweeps, without and with a results file")
+    rows = []
+    for designs in (2000, 4000) if options.quick else (2000, 20_000, 200_000):
+        with tempfile.TemporaryDirectory() as folder:
+            rows.append([designs, grids.peak(designs), grids.peak(designs, f"{folder}/r.csv")])
+    say(table(("designs", "MB", "MB, with a file"), rows))
+
+
 def kernels(_, options):
     say("\nkernel (elements, matrix, count) beside the roots and tangents alone")
     rows = []
@@ -147,7 +169,8 @@ def rooms(cases, options):
 
 
 PARTS = {
-    "levels": levels_alone, "states": with_states, "many": families, "floor": kernels,
+    "levels": levels_alone, "states": with_states, "many": families, "sweep": sweeps,
+    "floor": kernels,
     "growth": growths, "memory": memories, "breakdown": rooms,
 }  # fmt: skip
 

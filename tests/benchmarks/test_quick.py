@@ -3,10 +3,12 @@
 No test asserts an absolute time. `python tests/benchmarks/run.py` gives the figures.
 """
 
+from pathlib import Path
+
 import numpy as np
 import pytest
 
-from benchmarks import breakdown, floor, growth, memory, sides, spectral, yardstick
+from benchmarks import breakdown, floor, grids, growth, memory, sides, spectral, yardstick
 from benchmarks.cases import CASES, Vary
 from benchmarks.figures import PARTS, main
 from benchmarks.plain import question
@@ -25,6 +27,20 @@ def test_sides_hold_their_error(name):
     found = sides.one(CASES[name], 1e-4, **short)
     assert found["levels"] > 0 and found["error"] <= 1e-4 and found["yardstick_error"] <= 1e-4
     assert all(ratio > 0.0 for ratio in found["ratio"].values())
+
+
+def test_a_sweep_holds_its_error():
+    """`measure` raises where a design of the sweep misses the error it is timed at."""
+    found = grids.measure(1e-6, values=12, sampled=3, seconds=0.05)
+    assert found["designs"] == 144 and found["error"] <= 1e-6
+    assert set(found["ratio"]) == {"m", "1/m", "loose"}
+
+
+@pytest.mark.skipif(not Path("/proc/self/status").exists(), reason="Linux tells a process's peak")
+def test_memory_of_a_sweep_is_bounded(tmp_path):
+    """Four times as many designs take little more: their table, not their states."""
+    few, many = (grids.peak(designs, tmp_path / f"{designs}.csv") for designs in (5000, 20_000))
+    assert many - few < 25.0  # MB; 15,000 designs of 9 columns are a tenth of that
 
 
 def test_states_and_dipoles_agree_with_the_yardstick():
