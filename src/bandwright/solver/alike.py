@@ -89,26 +89,21 @@ def find_alike(family: Solvable, asked: Asked, accuracy: float) -> Found:
         if len(left) < _FEW:
             break
         middle = left[len(left) // 2 : len(left) // 2 + 1]
-        leader = find(Some(family, middle), _of(asked, middle), accuracy)
+        leader = find(Some(family, middle), asked.of(middle), accuracy)
         others = left[left != middle[0]]
         found.append(leader._replace(owner=middle[leader.owner]))
         left = others
         if not len(leader.energies) or not leader.single.all():
             break
-        led = _foretold(family, leader, middle, others, _of(asked, others))
+        led = _foretold(family, leader, middle, others, asked.of(others))
         found.append(refine(family, led.brackets, min(accuracy, 1e-11)))
         left = others[~np.isin(others, led.which)]
         if 2 * len(left) > len(others):
             break
     if len(left):
-        rest = find(Some(family, left), _of(asked, left), accuracy)
+        rest = find(Some(family, left), asked.of(left), accuracy)
         found.append(rest._replace(owner=left[rest.owner]))
     return _merged(found)
-
-
-def _of(asked: Asked, which: Indices) -> Asked:
-    low, high, skip, at_most, guess = asked
-    return Asked(low[which], high[which], skip[which], at_most[which], guess[which])
 
 
 def _foretold(

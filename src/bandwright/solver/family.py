@@ -14,9 +14,9 @@ import numpy.typing as npt
 
 from ..profile import Origin, Profile
 from ..profile.alike import chosen
-from .alike import find_alike
+from .alike import Some, find_alike
 from .certificate import certify, halving_error
-from .find import Asked, Found, guess_levels
+from .find import Asked, Found, Solvable, find, guess_levels
 from .kinds import joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
@@ -135,8 +135,8 @@ def solve_family(
 ) -> Iterator[Batch]:
     """Yield the levels of many designs of one layout, those of one slice pattern at once.
 
-    Each design is count-checked; those too large to be held are left out. What is left out, or
-    not good, is for `solve_profile` alone.
+    Each design is count-checked; those too large to be held are left out, those that are not good
+    may come again in a later batch. What is good in none is for `solve_profile` alone.
 
     Parameters
     ----------
@@ -160,7 +160,7 @@ def solve_family(
         for which, family in _families(profile, top, ROUGH, ends, at_most):
             top[which] = tops(family, low[which], top[which], at_most)
     for which, family in _families(profile, top, tolerance, ends, at_most):
-        yield _solve_pattern(which, family, low[which], top[which], at_most, tolerance)
+        yield from _solve_pattern(which, family, low[which], top[which], at_most, tolerance)
 
 
 def _families(
@@ -190,7 +190,7 @@ def _families(
 def _solve_pattern(
     which: Indices, family: Family, low: Floats, high: Floats, at_most: int | None,
     tolerance: float,
-) -> Batch:  # fmt: skip
+) -> Iterator[Batch]:  # fmt: skip
     designs, slices = len(low), family.slices
     most = np.full(designs, np.iinfo(np.int64).max if at_most is None else at_most)
     guess = guess_levels(
@@ -198,17 +198,32 @@ def _solve_pattern(
     )
     asked = Asked(low, high, np.zeros(designs, dtype=np.int64), most, guess)
     found = find_alike(family, asked, min(1e-3 * tolerance, 1e-9))
-    exact = slices.profile.numbers.all_flat
-    fine = family if exact else family.halved()
-    error = np.zeros(len(found.numbers)) if exact else halving_error(fine, found)
+    fine = None if slices.profile.numbers.all_flat else family.halved()
+    batch = _proven(which, family, fine, asked, found, tolerance, slices.counts)
+    yield batch
+    left = np.flatnonzero(~batch.good)
+    if len(left):  # a Newton stopped too soon is one reason: go on to rounding, as one design does
+        some = Some(family, left)
+        again = find(some, asked.of(left), 1e-14)
+        halves = None if fine is None else Some(fine, left)
+        yield _proven(which[left], some, halves, asked.of(left), again, tolerance, slices.counts)
+
+
+def _proven(
+    which: Indices, family: Solvable, fine: Solvable | None, asked: Asked, found: Found,
+    tolerance: float, counts: Indices,
+) -> Batch:  # fmt: skip
+    """Return levels with their errors and counts on halved slices, None where whole are exact."""
+    designs = len(which)
+    error = np.zeros(len(found.numbers)) if fine is None else halving_error(fine, found)
     bounds = np.concatenate(([0], np.cumsum(np.bincount(found.owner, minlength=designs))))
-    cut_short = np.diff(bounds) == most
+    cut_short = np.diff(bounds) == asked.at_most
     last = np.append(found.energies, 0.0)[bounds[1:] - 1] + tolerance
-    upper = np.where(cut_short, last, high)
-    proof = certify(fine, found, low, upper, tolerance)
+    upper = np.where(cut_short, last, asked.high)
+    proof = certify(fine or family, found, asked.low, upper, tolerance)
     good = proof.complete.copy()
     good[found.owner[3.0 * error > tolerance]] = False
     return Batch(
-        which, slices.counts, family.ends, found, bounds, error, proof.checked, good, low, upper,
+        which, counts, family.ends, found, bounds, error, proof.checked, good, asked.low, upper,
         tolerance,
     )  # fmt: skip

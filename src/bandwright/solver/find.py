@@ -62,6 +62,11 @@ class Asked(NamedTuple):
     at_most: Indices
     guess: Indices
 
+    def of(self, designs: Indices) -> Asked:
+        """Return what is asked of some designs."""
+        low, high, skip, at_most, guess = self
+        return Asked(low[designs], high[designs], skip[designs], at_most[designs], guess[designs])
+
 
 class Brackets(NamedTuple):
     """Where each level is looked for, design after design, ascending; arrays (n_levels,).
