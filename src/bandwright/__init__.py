@@ -17,6 +17,7 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from .comparison import compare as compare
+    from .crossings import anticrossings as anticrossings
     from .errors import BandwrightError as BandwrightError
     from .errors import BandwrightWarning as BandwrightWarning
     from .errors import MaterialError as MaterialError
@@ -89,6 +90,7 @@ _ROOMS = {
         "yield_histogram",
     ),
     "sweeps": ("sweep",),
+    "crossings": ("anticrossings",),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
 

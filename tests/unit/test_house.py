@@ -38,6 +38,7 @@ HOUSE = [
     "following",
     "comparison",
     "sweeps",
+    "crossings",
     "report",
     "pictures",
     "cli",
