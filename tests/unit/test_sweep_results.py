@@ -133,7 +133,7 @@ def test_a_finished_sweep_is_only_read(tmp_path, monkeypatch):
 
     def never(task, parts, workers, executor):
         assert list(parts) == []
-        return iter(())
+        yield from ()
 
     monkeypatch.setattr(sweeping, "run", never)
     again = bw.sweep(wells.well, over, metrics=metrics, results=results)

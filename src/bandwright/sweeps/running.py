@@ -7,7 +7,7 @@ import pickle
 import signal
 import sys
 import threading
-from collections.abc import Iterator
+from collections.abc import Generator, Iterator
 from concurrent.futures import FIRST_COMPLETED, Executor, Future, wait
 from typing import Any
 
@@ -17,13 +17,14 @@ from .work import Block, Part, Task, compute
 
 _GUARD = (
     "a worker process ended before its work; in a script, put the call below"
-    " if __name__ == '__main__':, and give a function from a file that can be imported"
+    " if __name__ == '__main__':, and give a function from a file that can be imported; if memory"
+    " ran out, give a smaller chunk"
 )
 
 
 def run(
     task: Task, parts: Iterator[Part], workers: int, executor: Executor | None
-) -> Iterator[Block]:
+) -> Generator[Block, None, None]:
     """Yield the rows of each part, in the order in which they come.
 
     No more than ``workers`` parts are unfinished at any time, so that a run that is killed has so
@@ -84,7 +85,7 @@ def _size_of(executor: Any) -> int:
     return sum(threads().values()) if callable(threads) else 0
 
 
-def _in_processes(task: Task, parts: Iterator[Part], workers: int) -> Iterator[Block]:
+def _in_processes(task: Task, parts: Iterator[Part], workers: int) -> Generator[Block, None, None]:
     from concurrent.futures import ProcessPoolExecutor
     from concurrent.futures.process import BrokenProcessPool
     from multiprocessing import get_context
@@ -102,7 +103,7 @@ def _in_processes(task: Task, parts: Iterator[Part], workers: int) -> Iterator[B
 
 def _submitted(
     task: Task, parts: Iterator[Part], workers: int, executor: Executor
-) -> Iterator[Block]:
+) -> Generator[Block, None, None]:
     waiting: set[Future[Block]] = set()
     try:
         for part in parts:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import Executor
-from contextlib import ExitStack
+from contextlib import ExitStack, closing
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -139,8 +139,10 @@ def sweep(
             stack.enter_context(record)
             rows.restore(record.rows())
         bar = stack.enter_context(Progress(len(plan), rows.done, progress))
+        # closed here, so that no worker outlives a sweep that is stopped
+        work = run(task, _parts(plan, rows.missing, size), count, executor)
         try:
-            for found in run(task, _parts(plan, rows.missing, size), count, executor):
+            for found in stack.enter_context(closing(work)):
                 block = found.only(rows.missing)
                 if record is not None:
                     record.write(rows.listed(block))
