@@ -6,10 +6,23 @@ relative change of volume, negative for a layer pressed together by its substrat
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 import numpy.typing as npt
 
+from .errors import UnknownName, close_matches
+
 Value = float | npt.NDArray[np.float64]
+
+#: K of `critical_thickness`: a film with nothing on it (one dislocation line at its foot), a film
+#: between others (two lines, so half the force on each), and the layers of a superlattice that
+#: lies on its own mean lattice (each layer bears half the misfit to its neighbour)
+CASES = {
+    "free surface": 8.0 * math.pi,
+    "single layer": 4.0 * math.pi,
+    "superlattice": 2.0 * math.pi,
+}
 
 
 def in_plane(lattice: Value, substrate: float) -> Value:
@@ -111,3 +124,76 @@ def monolayer(lattice: Value, ezz: Value) -> Value:
     0.2525
     """
     return 0.5 * lattice * (1.0 + ezz)
+
+
+def biaxial_stiffness(c11: Value, c12: Value) -> Value:
+    """Return A = C11 + C12 - 2 C12^2/C11, the stress in the plane per strain in the plane.
+
+    Parameters
+    ----------
+    c11, c12 : float or array
+        Elastic constants of a layer free to move along growth [GPa].
+
+    Returns
+    -------
+    float or array
+        [GPa].
+
+    Examples
+    --------
+    >>> biaxial_stiffness(100.0, 50.0)
+    100.0
+    """
+    return c11 + c12 - 2.0 * c12 * c12 / c11
+
+
+def critical_thickness(
+    misfit: float, lattice: float, poisson: float = 1.0 / 3.0, case: str = "single layer"
+) -> float:
+    """Return the thickness [nm] beyond which a strained layer makes misfit dislocations.
+
+    Parameters
+    ----------
+    misfit : float
+        Relative difference of the layer's relaxed lattice from what it lies on, of either sign:
+        the substrate; for ``"superlattice"`` the layers beside it.
+    lattice : float
+        The lattice constant of what it lies on [nm].
+    poisson : float
+        C12/(C11 + C12) of the layer.
+    case : {"single layer", "free surface", "superlattice"}
+        Buried between others, nothing on it, or one of a superlattice on its own mean lattice:
+        K = 4 pi, 8 pi, 2 pi.
+
+    Returns
+    -------
+    float
+        0 where even the thinnest layer is too much, inf without misfit.
+
+    Raises
+    ------
+    UnknownName
+        If there is no such case.
+
+    Notes
+    -----
+    h = b (1 - nu cos^2 a) [ln(h/b) + 1] / (K f (1 + nu) cos l), with b = lattice/sqrt 2 and
+    cos a = cos l = 1/2 of 60 degree dislocations: J. W. Matthews and A. E. Blakeslee, J. Cryst.
+    Growth 27, 118 (1974). The three values of K are from memory.
+
+    Examples
+    --------
+    >>> print(f"{critical_thickness(0.0143298103, 0.565325, 0.322120116):.4f} nm")
+    14.0863 nm
+    """
+    if case not in CASES:
+        raise UnknownName(f"case: there is no {case!r}{close_matches(str(case), CASES)}")
+    if misfit == 0.0:
+        return math.inf
+    from scipy.special import lambertw
+
+    b = lattice / math.sqrt(2.0)
+    scale = (1.0 - 0.25 * poisson) / (CASES[case] * abs(misfit) * (1.0 + poisson) * 0.5)
+    if scale <= 1.0:  # h/b = scale [ln(h/b) + 1] then has no root above b
+        return 0.0
+    return -b * scale * float(lambertw(-math.exp(-1.0) / scale, -1).real)

@@ -12,9 +12,9 @@ from ..errors import BandwrightWarning
 from ..levels import Levels
 from .layers import charges, directions, materials, own_numbers, thicknesses
 from .states import boxes, clusters, counts, nothing, phases, tops, two_band
-from .strained import critical_thickness, strains
+from .strained import strains
 
-__all__ = ["at_once", "collect", "critical_thickness", "warn"]
+__all__ = ["at_once", "collect", "warn"]
 
 
 def at_once(levels: Levels) -> tuple[str, ...]:

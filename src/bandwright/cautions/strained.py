@@ -5,10 +5,12 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Sequence
 from itertools import groupby
+from typing import NamedTuple
 
 from ..levels import Levels
 from ..materials import Library
 from ..profile import LayerFacts
+from ..strain import critical_thickness
 from .words import listed
 
 #: lattices that differ by less than this, relative, count as matched
@@ -56,59 +58,24 @@ def _sized(fact: LayerFacts) -> str:
     return f"{word} {abs(fact.mismatch):.2%}"
 
 
-def critical_thickness(
-    misfit: float, lattice: float, poisson: float = 1.0 / 3.0, buried: bool = True
-) -> float:
-    """Return the thickness [nm] beyond which a strained layer makes misfit dislocations.
-
-    Parameters
-    ----------
-    misfit : float
-        Relative difference of the layer's relaxed lattice from the substrate's, of either sign.
-    lattice : float
-        The substrate's lattice constant [nm].
-    poisson : float
-        C12/(C11 + C12) of the layer.
-    buried : bool
-        Whether another layer lies on it (two dislocation lines, half the force each).
-
-    Returns
-    -------
-    float
-        0 where even the thinnest layer is too much, inf without misfit.
-
-    Notes
-    -----
-    h = b (1 - nu cos^2 a) [ln(h/b) + 1] / (K f (1 + nu) cos l), with b = lattice/sqrt 2 and
-    cos a = cos l = 1/2 of 60 degree dislocations, K = 4 pi for a buried layer and 8 pi for an
-    uncapped one: J. W. Matthews and A. E. Blakeslee, J. Cryst. Growth 27, 118 (1974). The two
-    values of K are from memory.
-
-    Examples
-    --------
-    >>> print(f"{critical_thickness(0.0143298103, 0.565325, 0.322120116):.4f} nm")
-    14.0863 nm
-    """
-    if misfit == 0.0:
-        return math.inf
-    from scipy.special import lambertw
-
-    b = lattice / math.sqrt(2.0)
-    k = (4.0 if buried else 8.0) * math.pi
-    scale = (1.0 - 0.25 * poisson) / (k * abs(misfit) * (1.0 + poisson) * 0.5)
-    if scale <= 1.0:  # h/b = scale [ln(h/b) + 1] then has no root above b
-        return 0.0
-    return -b * scale * float(lambertw(-math.exp(-1.0) / scale, -1).real)
-
-
 def _too_thick(levels: Levels, substrate: str) -> list[str]:
+    profile = levels.profile
+    grown = [profile.facts[index] for index in profile.written]
+    return too_thick(grown, Library.with_files(levels.stack.materials).lattice(substrate))
+
+
+def too_thick(grown: Sequence[LayerFacts], lattice: float) -> list[str]:
     """Return runs of layers strained alike, and the whole stack, beyond their critical thickness.
 
     Neighbours strained in the same sense count as one film of their mean misfit.
+
+    Parameters
+    ----------
+    grown : sequence of LayerFacts
+        Every grown layer.
+    lattice : float
+        The substrate's lattice constant [nm].
     """
-    profile = levels.profile
-    grown = [profile.facts[index] for index in profile.written]
-    lattice = Library.with_files(levels.stack.materials).lattice(substrate)
     found: dict[str, str] = {}
     place = 0
     for _, run in groupby(grown, key=_sense):
@@ -117,7 +84,7 @@ def _too_thick(levels: Levels, substrate: str) -> list[str]:
         if _sense(film[0]) == 0:
             continue
         names = " + ".join(dict.fromkeys(fact.name for fact in film))
-        text = _beyond(film, lattice, place < len(grown))
+        text = _beyond(as_one(film, lattice, place < len(grown)))
         if text:
             found[names] = f"{names}: {text}; make it thinner, or its misfit smaller"
     if not found:
@@ -127,11 +94,11 @@ def _too_thick(levels: Levels, substrate: str) -> list[str]:
 
 def _whole(grown: Sequence[LayerFacts], lattice: float) -> str:
     """Return whether all from the first to the last strained layer is too much as one film."""
-    places = [i for i, fact in enumerate(grown) if _sense(fact) != 0]
-    if len(places) < 2 or any(fact.own for fact in grown):
+    first, last = strained_part(grown)
+    if last <= first or any(fact.own for fact in grown):
         return ""
-    film = grown[places[0] : places[-1] + 1]
-    text = _beyond(film, lattice, places[-1] < len(grown) - 1)
+    film = grown[first : last + 1]
+    text = _beyond(as_one(film, lattice, last < len(grown) - 1))
     if text is None:
         return ""
     return (
@@ -140,22 +107,42 @@ def _whole(grown: Sequence[LayerFacts], lattice: float) -> str:
     )
 
 
+def strained_part(grown: Sequence[LayerFacts]) -> tuple[int, int]:
+    """Return the places of the first and the last strained layer, (0, -1) where none is."""
+    places = [i for i, fact in enumerate(grown) if _sense(fact) != 0]
+    return (places[0], places[-1]) if places else (0, -1)
+
+
 def _sense(fact: LayerFacts) -> int:
     """Return whether a layer is pressed together (-1), matched or unknown (0), stretched (1)."""
     return 0 if abs(fact.mismatch) <= MATCHED else int(math.copysign(1.0, fact.mismatch))
 
 
-def _beyond(film: Sequence[LayerFacts], lattice: float, buried: bool) -> str | None:
-    """Return how far a film is beyond its critical thickness, None if it is not."""
+class AsOne(NamedTuple):
+    """Layers taken as one film: thickness [nm], mean misfit, critical thickness [nm], its case."""
+
+    thickness: float
+    misfit: float
+    limit: float
+    case: str
+
+
+def as_one(film: Sequence[LayerFacts], lattice: float, buried: bool) -> AsOne:
+    """Return neighbouring layers as one film on a substrate of a lattice constant [nm]."""
     thickness = sum(fact.thickness for fact in film)
     misfit = sum(-f.mismatch / (1.0 + f.mismatch) * f.thickness for f in film) / thickness
     poisson = sum(_poisson(fact) * fact.thickness for fact in film) / thickness
-    limit = critical_thickness(misfit, lattice, poisson, buried)
-    if thickness <= limit or abs(misfit) < 1e-6:
+    case = "single layer" if buried else "free surface"
+    return AsOne(thickness, misfit, critical_thickness(misfit, lattice, poisson, case), case)
+
+
+def _beyond(film: AsOne) -> str | None:
+    """Return how far a film is beyond its critical thickness, None if it is not."""
+    if film.thickness <= film.limit or abs(film.misfit) < 1e-6:
         return None
     return (
-        f"{thickness:.3g} nm with a misfit of {misfit:+.2%} is beyond the critical thickness of"
-        f" {limit:.3g} nm (Matthews and Blakeslee 1974) and may relax"
+        f"{film.thickness:.3g} nm with a misfit of {film.misfit:+.2%} is beyond the critical"
+        f" thickness of {film.limit:.3g} nm (Matthews and Blakeslee 1974) and may relax"
     )
 
 

@@ -154,6 +154,17 @@ class Library:
         """
         return float(self._mix(composition).value("lattice"))
 
+    def stiffness(self, composition: str | Composition) -> tuple[Value, Value]:
+        """Return C11 and C12 [GPa]; arrays of fractions give arrays.
+
+        Examples
+        --------
+        >>> Library.shipped().stiffness("GaAs")
+        (122.1, 56.6)
+        """
+        mix = self._mix(composition)
+        return mix.value("c11"), mix.value("c12")
+
     def properties(
         self, composition: Composition, temperature_K: float, substrate: str | None = None
     ) -> BandPoint:
