@@ -166,13 +166,13 @@ def refine(system: Solvable, brackets: Brackets, accuracy: float) -> Found:
         todo = np.flatnonzero(single & ~done)
         if not len(todo):
             break
-        lows[todo], highs[todo] = _bisect(
-            system, owner[todo], numbers[todo], lows[todo], highs[todo], 6
+        lows[todo], highs[todo] = _narrowed(
+            system, owner[todo], numbers[todo], lows[todo], highs[todo], 2
         )
         energies[todo] = 0.5 * (lows[todo] + highs[todo])
     rest = np.flatnonzero(~done)
-    lows[rest], highs[rest] = _bisect(
-        system, owner[rest], numbers[rest], lows[rest], highs[rest], 60
+    lows[rest], highs[rest] = _narrowed(
+        system, owner[rest], numbers[rest], lows[rest], highs[rest], 20
     )
     energies[rest] = 0.5 * (lows[rest] + highs[rest])
     late = (energies[1:] < energies[:-1]) & (owner[1:] == owner[:-1])
@@ -270,26 +270,26 @@ def _isolate(
         some = np.flatnonzero(wide)
         if not len(some):
             break
-        for part in chunks(len(some), system.rows * len(_PARTS)):
-            here = some[part]
-            trial = lows[here] + _PARTS * (highs - lows)[here]
-            flat = np.broadcast_to(owner[here], trial.shape).reshape(-1)
-            counts = system.count_and_pivot(trial.reshape(-1), flat)[0].reshape(trial.shape)
-            above = np.maximum.accumulate(counts, axis=0) > numbers[here]
-            column = np.arange(len(here))
-            floor = len(_PARTS) - above.sum(axis=0)  # how many points lie at or below the level
-            ladder = np.vstack((lows[here], trial, highs[here]))
-            lows[here], highs[here] = ladder[floor, column], ladder[floor + 1, column]
+        lows[some], highs[some] = _narrowed(
+            system, owner[some], numbers[some], lows[some], highs[some], 1
+        )
     return lows, highs
 
 
-def _bisect(
+def _narrowed(
     system: Solvable, owner: Indices, numbers: Indices, lows: Floats, highs: Floats, times: int
 ) -> tuple[Floats, Floats]:
+    """Cut brackets by counts to an eighth, so many times."""
     lows, highs = lows.copy(), highs.copy()
-    for _ in range(times):
-        middle = 0.5 * (lows + highs)
-        above = system.count_and_pivot(middle, owner)[0] > numbers
-        highs = np.where(above, middle, highs)
-        lows = np.where(above, lows, middle)
+    for part in chunks(len(lows), system.rows * len(_PARTS)):
+        low, high, column = lows[part], highs[part], np.arange(len(lows[part]))
+        for _ in range(times):
+            trial = low + _PARTS * (high - low)
+            flat = np.broadcast_to(owner[part], trial.shape).reshape(-1)
+            counts = system.count_and_pivot(trial.reshape(-1), flat)[0].reshape(trial.shape)
+            above = np.maximum.accumulate(counts, axis=0) > numbers[part]
+            floor = len(_PARTS) - above.sum(axis=0)  # how many points lie at or below the level
+            ladder = np.vstack((low, trial, high))
+            low, high = ladder[floor, column], ladder[floor + 1, column]
+        lows[part], highs[part] = low, high
     return lows, highs
