@@ -47,6 +47,7 @@ def test_the_table(found):
     assert (row["lower"], row["upper"], row["lower_track"], row["upper_track"]) == (1, 2, 1, 2)
     assert row["exchange"] == pytest.approx(1.0, abs=0.02)
     assert not row["at_end"]
+    assert found.attrs == {"parameter": "field_kV_per_cm", "cautions": ()}
 
 
 def test_the_spacing_is_the_smallest_there_is(found):
@@ -155,10 +156,10 @@ def test_designs_that_fail_are_left_out_and_said():
             raise ValueError("no such field")
         return PAIR.replace(field=f"{field} kV/cm")
 
-    with pytest.warns(BandwrightWarning, match=r"2 of 11 designs have no levels and are left out: "
-                      r".*no such field"):  # fmt: skip
+    text = r"2 of 11 designs have no levels and are left out, the first at field = 55: .*no such f"
+    with pytest.warns(BandwrightWarning, match=text):
         some = bw.anticrossings(design, {"field": "10..60 count 11"})
-    assert len(some) == 1
+    assert len(some) == 1 and len(some.attrs["cautions"]) == 1
 
     def never(field):
         raise ValueError("no such field")

@@ -13,6 +13,7 @@ from .words import (
     Parser,
     UsageError,
     output_options,
+    over_of,
     solve_arguments,
     solve_options,
     stack_of,
@@ -102,15 +103,7 @@ def _designs(args: argparse.Namespace) -> dict[str, Any]:
         )
     if args.designs:
         return _columns(args.designs)
-    over: dict[str, Any] = {}
-    for text in args.over:
-        name, sign, values = (part.strip() for part in text.partition("="))
-        if not (name and sign and values):
-            raise UsageError(f"--over: got {text!r}; write a parameter, '=', and its values")
-        if name in over:
-            raise UsageError(f"--over: {name} is given more than once")
-        over[name] = values
-    return over
+    return dict(over_of(args.over))
 
 
 def _columns(path: Path) -> dict[str, Any]:

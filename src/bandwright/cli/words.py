@@ -48,6 +48,7 @@ class Layout(argparse.HelpFormatter):
 
     def __init__(self, prog: str) -> None:
         super().__init__(prog, max_help_position=26, width=92)
+        self._action_max_length = 18  # argparse forgets that commands are indented twice
 
 
 class Version(argparse.Action):
@@ -133,6 +134,19 @@ def solve_arguments(args: argparse.Namespace) -> dict[str, Any]:
     names = ("below", "at_most", "bands", "tolerance", "group", "method", "phase_order")
     given = {name: getattr(args, name, None) for name in names}
     return {name: value for name, value in given.items() if value is not None}
+
+
+def over_of(texts: Sequence[str]) -> dict[str, str]:
+    """Return what each ``--over NAME=VALUES`` varies, by name."""
+    over: dict[str, str] = {}
+    for text in texts:
+        name, sign, values = (part.strip() for part in text.partition("="))
+        if not (name and sign and values):
+            raise UsageError(f"--over: got {text!r}; write a parameter, '=', and its values")
+        if name in over:
+            raise UsageError(f"--over: {name} is given more than once")
+        over[name] = values
+    return over
 
 
 def levels_of(args: argparse.Namespace) -> Levels:

@@ -24,8 +24,9 @@ Indices = npt.NDArray[np.int64]
 #: how many half-widths before and after the middle characters are compared: far enough for half
 #: of the whole exchange, and no nearer to the anticrossings with further levels than need be
 REACH = 1.0
-#: least exchange of character that a window must be able to show: a rotation by pi/16
-LEAST = float(np.sin(np.pi / 16) ** 2)
+#: least exchange of character that a range must be able to show: a rotation of the states by
+#: pi/8, or half as much where their middle lies at its end
+LEAST, LEAST_AT_END = (float(np.sin(np.pi / n) ** 2) for n in (8, 16))
 #: share of the two-level formula's exchange that is asked of a refined anticrossing, and of one
 #: judged by the coarse sweep's own designs
 SHARE, COARSE = 0.6, 0.3
@@ -191,7 +192,7 @@ class Coarse:
         second = int(there[min(int(np.searchsorted(at, after, side="right")), len(at) - 1)])
         first, second = min(first, found.low), max(second, found.high)
         due = formula.exchange(self.values[first], self.values[second])
-        if due < COARSE * LEAST:
+        if due < COARSE * (LEAST_AT_END if at_end else LEAST):
             return False
         return self.exchange(found.tracks, first, second) >= COARSE * due
 

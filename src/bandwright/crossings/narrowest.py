@@ -12,7 +12,7 @@ from ..errors import BandwrightError
 from ..following import overlaps
 from ..levels import Levels
 from ..quantities import energy_text
-from .candidates import LEAST, REACH, SHARE, Bend, bend, exchanged
+from .candidates import LEAST, LEAST_AT_END, REACH, SHARE, Bend, bend, exchanged
 from .path import Path
 
 #: tolerance of refined levels, unless a finer one is asked [eV]
@@ -67,6 +67,8 @@ class Narrowest(NamedTuple):
         Distance from the middle at which the spacing has grown by the root of two.
     exchange : float
         How much of their character the two exchange, over what two levels of their own would.
+    due : float
+        The exchange of two levels of their own within the range, between 0 and 1.
     at_end : bool
         Whether the spacing is smallest at an end of the range.
     of_box : bool
@@ -77,6 +79,7 @@ class Narrowest(NamedTuple):
     error: float
     width: float
     exchange: float
+    due: float
     at_end: bool
     of_box: bool
 
@@ -184,7 +187,10 @@ def _refined(pair: Pair, low: Point, high: Point, ends: tuple[float, float]) -> 
             return _at_end(pair, pair.at(end.value), low, high, ends)
     formula = _around(best, low, high)
     place = best.spacing - np.sqrt(max(best.spacing**2 - (formula.slope * off) ** 2, 0.0))
-    return _judged(pair, best, formula, REACH, float(place), ends)
+    found = _judged(pair, best, formula, REACH, ends)
+    if found is None or found.due < LEAST:
+        return None
+    return found._replace(error=best.error + float(place))
 
 
 def _around(best: Point, low: Point, high: Point) -> Bend:
@@ -205,12 +211,14 @@ def _at_end(
     formula = bend([p.value for p in points], [p.spacing for p in points])
     if formula is None or formula.splitting == 0.0:
         return None
-    found = _judged(pair, best, formula, 2.0 * REACH, 0.0, ends)
-    return None if found is None else found._replace(at_end=True)
+    found = _judged(pair, best, formula, 2.0 * REACH, ends)
+    if found is None or found.due < LEAST_AT_END:
+        return None
+    return found._replace(at_end=True)
 
 
 def _judged(
-    pair: Pair, best: Point, formula: Bend, reach: float, place: float, ends: tuple[float, float]
+    pair: Pair, best: Point, formula: Bend, reach: float, ends: tuple[float, float]
 ) -> Narrowest | None:
     """Return the anticrossing if the two levels exchange their character across it."""
     # closer than this the states can't be told apart
@@ -218,10 +226,10 @@ def _judged(
     around = _around_middle(pair, best, seen, reach, ends)
     due = formula.exchange(around[0].value, around[1].value)
     found = exchanged(overlaps(around[0].levels, around[1].levels), *(p.pair for p in around))
-    if due < LEAST or found < SHARE * due:
+    if not found >= SHARE * due > 0.0:
         return None
     of_box = all(point.of_box for point in around)
-    return Narrowest(best, best.error + place, formula.width, found / due, False, of_box)
+    return Narrowest(best, best.error, formula.width, found / due, due, False, of_box)
 
 
 def _around_middle(

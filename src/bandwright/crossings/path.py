@@ -24,7 +24,8 @@ Solved = Levels | BandwrightError
 
 #: values of a range that says neither step nor count
 COUNT = 31
-_LEAST = 3
+#: fewest designs that show where two levels are closest
+LEAST_VALUES = 3
 
 
 @dataclass(frozen=True)
@@ -67,9 +68,9 @@ class Path:
             if isinstance(value, bool) or not isinstance(value, int | float):
                 raise StackError(f"got {show(value)}; anticrossings are looked for along numbers",
                                  axes[0].name)  # fmt: skip
-        if len(set(values)) < _LEAST:
-            raise StackError(f"got {len(set(values))} values; {_LEAST} are the least that show"
-                             " where two levels are closest", axes[0].name)  # fmt: skip
+        if len(set(values)) < LEAST_VALUES:
+            raise StackError(f"got {len(set(values))} values; {LEAST_VALUES} are the least that"
+                             " show where two levels are closest", axes[0].name)  # fmt: skip
         return path
 
     @property

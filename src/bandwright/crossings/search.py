@@ -16,7 +16,7 @@ from ..quantities import show
 from ..stack import Stack
 from .candidates import Candidate, Coarse, Floats
 from .narrowest import Narrowest, Pair, Point, refine
-from .path import Path
+from .path import LEAST_VALUES, Path
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -63,7 +63,8 @@ def anticrossings(
         root of two; ``exchange``, how much of their character the two exchange within that, over
         what the two-level formula gives: far from 1 where a third level takes part; ``at_end``,
         whether the spacing is smallest at an end of the range, so that the true minimum may lie
-        beyond. With ``of_box`` also whether a level of the box takes part.
+        beyond. With ``of_box`` also whether a level of the box takes part. ``attrs`` hold the
+        name of the parameter's column and cautions on designs that were left out.
 
     Raises
     ------
@@ -108,7 +109,11 @@ def anticrossings(
         narrowest = refine(Pair(path, (low, high), request.tolerance), low, high, ends)
         if narrowest is not None and (of_box or not narrowest.of_box):
             found.append((candidate, narrowest))
-    return _table(path, coarse, _distinct(found), of_box)
+    table = _table(path, coarse, _distinct(found), of_box)
+    table.attrs["parameter"], table.attrs["cautions"] = path.axis.column, _left_out(path, coarse)
+    for caution in table.attrs["cautions"]:
+        warnings.warn(caution, BandwrightWarning, stacklevel=2)
+    return table
 
 
 def _solution(solve_args: Mapping[str, Any]) -> tuple[Any, dict[str, Any]]:
@@ -122,7 +127,7 @@ def _solution(solve_args: Mapping[str, Any]) -> tuple[Any, dict[str, Any]]:
 
 def _swept(path: Path, of_box: bool) -> Coarse:
     """Return the coarse sweep, its steps halved where a level is not found again."""
-    values, levels = _solved(path, path.values)
+    values, levels = _solved(path)
     for _ in range(_HALVINGS):
         coarse = Coarse(values, levels, of_box)
         torn = coarse.torn()
@@ -138,19 +143,23 @@ def _swept(path: Path, of_box: bool) -> Coarse:
     return Coarse(values, levels, of_box)
 
 
-def _solved(path: Path, values: Floats) -> tuple[Floats, list[Levels]]:
+def _solved(path: Path) -> tuple[Floats, list[Levels]]:
     """Return the designs of the coarse sweep that have levels."""
-    found = path.solve(values)
+    found = path.solve(path.values)
     good = [isinstance(one, Levels) for one in found]
-    if sum(good) < 3:
+    if sum(good) < LEAST_VALUES:
         raise next(one for one in found if isinstance(one, BandwrightError))
-    if not all(good):
-        first = next(one for one in found if isinstance(one, BandwrightError))
-        warnings.warn(
-            f"{good.count(False)} of {len(good)} designs have no levels and are left out: {first}",
-            BandwrightWarning, stacklevel=3,
-        )  # fmt: skip
-    return values[good], [one for one in found if isinstance(one, Levels)]
+    return path.values[good], [one for one in found if isinstance(one, Levels)]
+
+
+def _left_out(path: Path, coarse: Coarse) -> tuple[str, ...]:
+    """Return what to say of designs that have no levels."""
+    missing = [value for value in path.values if value not in coarse.values]
+    if not missing:
+        return ()
+    (why,) = path.solve(missing[:1])
+    return (f"{len(missing)} of {len(path.values)} designs have no levels and are left out, the"
+            f" first at {path.axis.name} = {path.shown(missing[0]):.6g}: {why}",)  # fmt: skip
 
 
 def _distinct(
