@@ -189,7 +189,8 @@ class Levels:
         """dE/dwall of each level in a closed box [eV/nm], 0 for others, (n_levels,)."""
         if self.method == "phase-integral":
             return np.full(len(self), np.nan)
-        return np.where(self.boxed, self.states.wall_shifts, 0.0)
+        boxed = self.boxed
+        return np.where(boxed, self.states.wall_shifts, 0.0) if boxed.any() else np.zeros(len(self))
 
     @property
     def of_box(self) -> npt.NDArray[np.bool_]:
