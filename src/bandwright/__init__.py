@@ -16,6 +16,8 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from .aiming import Aimed as Aimed
+    from .aiming import aim as aim
     from .comparison import compare as compare
     from .crossings import anticrossings as anticrossings
     from .errors import BandwrightError as BandwrightError
@@ -90,6 +92,7 @@ _ROOMS = {
         "yield_histogram",
     ),
     "sweeps": ("sweep",),
+    "aiming": ("Aimed", "aim"),
     "crossings": ("anticrossings",),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}

@@ -8,7 +8,7 @@ import pytest
 
 from bandwright import cli
 
-COMMANDS = ("levels", "lines", "compare", "sweep", "anticrossings", "picture", "materials")
+COMMANDS = ("levels", "lines", "compare", "sweep", "aim", "anticrossings", "picture", "materials")
 
 PROBE = """
 import json, sys

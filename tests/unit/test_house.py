@@ -38,6 +38,7 @@ HOUSE = [
     "following",
     "comparison",
     "sweeps",
+    "aiming",
     "crossings",
     "report",
     "pictures",
@@ -48,6 +49,7 @@ HOUSE = [
 # levels.lines(), levels.gradient(), levels._repr_html_(), lines.error_budget(). Nothing else may
 # look up.
 HANDED_ON = {
+    ("aiming", "report"),
     ("levels", "cautions"),
     ("levels", "gradients"),
     ("levels", "lines"),

@@ -20,6 +20,7 @@ COMMANDS = {
     "lines": ("STACK", "Find the wavelengths a stack emits or detects."),
     "compare": ("STACK ...", "Set designs side by side, a row each."),
     "sweep": ("STACK --over NAME=VALUES", "Vary a stack over one or several ranges."),
+    "aim": ("STACK --free NAME=SPAN", "Find the design whose lines have the wavelengths asked."),
     "anticrossings": ("STACK --over NAME=RANGE", "Find where levels come closest along a range."),
     "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),
     "materials": ("[FORMULA ...]", "List the materials, or show formulas."),
