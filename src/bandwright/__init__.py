@@ -56,6 +56,8 @@ if TYPE_CHECKING:
     from .stackframe import stack_from_frame as stack_from_frame
     from .stackline import parse_line as parse_line
     from .sweeps import sweep as sweep
+    from .tolerances import Tolerance as Tolerance
+    from .tolerances import tolerance as tolerance
 
     __version__: str
 
@@ -92,6 +94,7 @@ _ROOMS = {
         "yield_histogram",
     ),
     "sweeps": ("sweep",),
+    "tolerances": ("Tolerance", "tolerance"),
     "aiming": ("Aimed", "aim"),
     "crossings": ("anticrossings",),
 }

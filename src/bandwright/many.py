@@ -110,7 +110,7 @@ class Many:
 
     @cached_property
     def table(self) -> pd.DataFrame:
-        """One row a level of each design: design (from 0), name, level, energy, checked, reason.
+        """One row a level of each design: design (from 1), name, level, energy, checked, reason.
 
         A design that failed keeps one row with its reason and no level.
         """
@@ -120,7 +120,7 @@ class Many:
         energy: list[float | None] = []
         checked: list[bool] = []
         reason: list[str | None] = []
-        for index, entry in enumerate(self._entries):
+        for index, entry in enumerate(self._entries, start=1):
             if isinstance(entry, BandwrightError):
                 design.append(index)
                 name.append(None)
@@ -198,7 +198,7 @@ def solve_many(
     batch: list[Stack] = []
     if isinstance(stacks, Stack | str) or not isinstance(stacks, Iterable):
         raise StackError(f"stacks: got {show(stacks)}; give a list of stacks, [stack, ...]")
-    for number, stack in enumerate(stacks):
+    for number, stack in enumerate(stacks, start=1):
         check_stack(stack, f"stack {number}")
         batch.append(stack)
         if len(batch) == chunk:

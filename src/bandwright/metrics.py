@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from types import MappingProxyType
 from typing import NamedTuple
 
 import numpy as np
@@ -14,6 +15,7 @@ from .constants import HC
 from .errors import StackError, UnknownName, close_matches
 from .levels import Levels
 from .lines import CONTINUUM, Line, Lines, continuum_edge, line_of, read_strength, read_window
+from .monolayers import in_monolayers, net_strain
 from .quantities import show
 from .stack import Stack
 
@@ -260,6 +262,21 @@ def _thickness(solved: Solved) -> float:
     return float(solved.levels.profile.thickness)
 
 
+def _net_strain(solved: Solved) -> float | None:
+    """Return the mean in-plane strain of the whole stack [%], None where it is not known."""
+    strain = net_strain(solved.levels)
+    return None if strain is None else strain * 100.0
+
+
+def _rounded_wavelength(solved: Solved) -> float | None:
+    """Return the line's wavelength with all layers of whole monolayers, solved again [um]."""
+    line = solved.line
+    if line is None:
+        return None
+    again = line_between(in_monolayers(solved.levels), (line.upper, line.lower), dipole=False)
+    return None if again is None else again.wavelength_um
+
+
 def _caution_count(solved: Solved) -> int:
     return len(solved.lines.cautions)
 
@@ -278,6 +295,8 @@ METRICS: dict[str, Metric] = {
     "oscillator_strength": OfLine("oscillator_strength"),
     "largest_difference_meV": _largest_difference,
     "thickness_nm": _thickness,
+    "net_strain_percent": _net_strain,
+    "rounded_wavelength_um": _rounded_wavelength,
     "cautions": _caution_count,
 }
 #: metrics of counts and level numbers
@@ -315,7 +334,10 @@ def add_metric(column: str, metric: Metric) -> None:
 
 
 def choose(
-    metrics: Sequence[str] | Mapping[str, Metric] | None, default: Sequence[str]
+    metrics: Sequence[str] | Mapping[str, Metric] | None,
+    default: Sequence[str],
+    more: Mapping[str, Metric] = MappingProxyType({}),
+    what: str = "metrics",
 ) -> dict[str, Metric]:
     """Return metrics by their columns.
 
@@ -326,6 +348,10 @@ def choose(
         ``"spacing_3_1_meV"`` for level 3 above level 1; or functions of a `Solved`.
     default : sequence of str
         What None stands for.
+    more : mapping of str to callable
+        Further names.
+    what : str
+        Begins the text of an error.
 
     Raises
     ------
@@ -341,16 +367,18 @@ def choose(
         metrics = default
     if isinstance(metrics, Mapping):
         return dict(metrics)
-    return {name: _named(name) for name in ((metrics,) if isinstance(metrics, str) else metrics)}
+    names = (metrics,) if isinstance(metrics, str) else metrics
+    return {name: _named(name, more, what) for name in names}
 
 
-def _named(name: str) -> Metric:
+def _named(name: str, more: Mapping[str, Metric], what: str) -> Metric:
     energies = _ENERGIES.fullmatch(str(name))
     if energies:
         numbers = [int(number) for number in energies.groups() if number]
         return OfEnergies(*numbers)
-    if name not in METRICS:
-        known = [*METRICS, "level_1_meV", "spacing_2_1_meV"]
-        raise UnknownName(f"metrics: there is none of the name {name!r}"
+    metric = more.get(name) or METRICS.get(name)
+    if metric is None:
+        known = [*METRICS, *more, "level_1_meV", "spacing_2_1_meV"]
+        raise UnknownName(f"{what}: there is none of the name {name!r}"
                           f"{close_matches(str(name), known)}")  # fmt: skip
-    return METRICS[name]
+    return metric

@@ -9,6 +9,8 @@ import pytest
 
 GOLDEN = Path(__file__).parent / "golden"
 
+PAIRS = "20 x (8 nm In0.2Ga0.8As {label well}, 10 nm GaAs0.9P0.1 {label barrier})"  # invented
+
 CASES = {
     "levels": ["levels", "demo/detector-well.toml"],
     "levels-graded": ["levels", "demo/graded-well.toml"],
@@ -20,6 +22,15 @@ CASES = {
     "lines-in-a-field": ["lines", "demo/emitter-period.toml", "--window", "8 um", "12 um"],
     "compare": ["compare", "demo/detector-well.toml", "demo/graded-well.toml",
                 "demo/emitter-period.toml"],
+    "compare-ranked": ["compare", "demo/detector-well.toml", "demo/graded-well.toml", "--metric",
+                       "wavelength_um", "--metric", "net_strain_percent", "--metric",
+                       "rounded_wavelength_um", "--metric", "yield_percent", "--spread",
+                       "every thickness=0.3ML", "--yield-window", "10um", "10.6um", "--wish",
+                       "wavelength_um=near 10.3, weight 2", "--wish", "yield_percent=large"],
+    "compare-html": ["compare", "demo/detector-well.toml", "--format", "html"],
+    "tolerance": ["tolerance", "demo/emitter-period.toml", "--spread", "every thickness=0.1 ML",
+                  "--spread", "field=2 %", "--spread", "flux Al=1 %", "--window", "10.2um",
+                  "10.4um", "--draws", "200"],
     "sweep": ["sweep", "demo/detector-well.toml", "--over",
               "well.thickness=6 nm..8 nm step 0.5 nm"],
     "sweep-grid": ["sweep", "demo/emitter-period.toml", "--over",
@@ -30,6 +41,9 @@ CASES = {
                       "field=20 kV/cm..80 kV/cm step 2 kV/cm"],
     "anticrossings-none": ["anticrossings", "demo/detector-well.toml", "--over",
                            "well.thickness=6 nm..8 nm"],
+    "strain": ["strain", PAIRS, "--substrate", "GaAs", "--balance", "barrier.thickness"],
+    "strain-graded": ["strain", "demo/graded-well.toml"],
+    "xray": ["xray", PAIRS, "--substrate", "GaAs"],
     "materials": ["materials"],
     "materials-formulas": ["materials", "In0.53Ga0.47As", "InP", "--substrate", "InP",
                            "--temperature", "77 K"],

@@ -8,7 +8,9 @@ import pytest
 
 from bandwright import cli
 
-COMMANDS = ("levels", "lines", "compare", "sweep", "aim", "anticrossings", "picture", "materials")
+COMMANDS = ("levels", "lines", "strain", "xray",
+            "compare", "sweep", "aim", "anticrossings", "tolerance", "picture",
+            "materials")  # fmt: skip
 
 PROBE = """
 import json, sys

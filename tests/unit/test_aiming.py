@@ -2,6 +2,7 @@
 
 import itertools
 import math
+import pickle
 import re
 
 import numpy as np
@@ -13,7 +14,7 @@ from bandwright.aiming.asking import read_wishes
 from bandwright.aiming.nearest import least_squares
 from bandwright.aiming.problem import Problem, at_most
 from bandwright.constants import H2M
-from bandwright.errors import QuantityError, StackError, UnknownName
+from bandwright.errors import QuantityError, SolveError, StackError, UnknownName
 from bandwright.parameters import read, replace
 from bandwright.quantities.spans import split_span
 
@@ -422,7 +423,7 @@ BAD = [
     (FREE, TARGET, {"grid": {"well.thickness": "0 nm"}}, StackError, r"a step above zero is due"),
     (FREE, TARGET, {"grid": {"well.thickness": "1 ML"}}, StackError, r"it is counted in nm"),
     ({"flux Al": "0.8..1.2"}, TARGET, {"grid": {"flux Al": 0.1}}, StackError,
-     r"grid, flux Al: a factor on all layers has no steps"),
+     r"grid, flux Al: what is relative to the stack has no whole steps"),
 ]  # fmt: skip
 
 
@@ -446,6 +447,58 @@ def test_monolayers_of_own_numbers_and_of_other_units():
 def test_no_stack():
     with pytest.raises(StackError, match="a Stack is due"):
         bw.aim("6 nm GaAs", FREE, TARGET)
+
+
+def test_a_stack_that_cannot_be_solved_is_said_at_once():
+    with pytest.raises(StackError, match=r"^zero = 'nothing' is neither a label nor a material"):
+        bw.aim(WELL.replace(zero="nothing"), FREE, TARGET)
+    with pytest.raises(SolveError, match="ends = 'periodic' is read but not solved yet"):
+        bw.aim(WELL.replace(ends="periodic"), FREE, TARGET)
+
+
+def test_a_field_is_free_and_the_result_pickles():
+    stack = PAIR.replace(field="20 kV/cm")
+    aimed = bw.aim(stack, {"field": "0 kV/cm..60 kV/cm"}, {"2 to 1": "50 meV"})
+    assert aimed.reached
+    assert aimed.values.unit[0] == "kV/cm"
+    assert aimed.values.value[0] == pytest.approx(aimed.stack.field * 1e4)
+    assert str(pickle.loads(pickle.dumps(aimed))) == str(aimed)
+
+
+SLOPE = bw.parse_line(
+    "20 nm Al0.3Ga0.7As {label wall}, 8 nm GaAs {label well}, 2 nm AlxGa1-xAs {x 0 to 0.3,"
+    " label slope}, 20 nm Al0.3Ga0.7As {label wall}", substrate="GaAs",
+)  # fmt: skip
+
+
+def test_a_grade_is_moved_by_its_shift_and_rounded():
+    aimed = bw.aim(SLOPE, {"slope.x_shift": "0..0.1", "well.thickness": "6nm..9nm"},
+                   {"2 to 1": "110 meV", "continuum to 1": "185 meV"})  # fmt: skip
+    table = aimed.values.set_index("parameter")
+    ends = dict(aimed.stack.written()[2].layer.shapes)["x"].at(np.array([0.0, 2.0]), 2.0, "first")
+    assert ends - [0.0, 0.3] == pytest.approx(table["value"]["slope.x_shift"], abs=1e-12)
+    assert table["monolayers"]["slope.thickness"] == round(table["monolayers"]["slope.thickness"])
+    assert aimed.targets.reached.tolist() == pytest.approx(
+        [float(aimed.found.energy(t.pair)) * 1e3 for t in aimed.wishes.targets]
+    )
+
+
+def test_a_flux_that_bends_a_grade_is_refused():
+    with pytest.raises(StackError, match="flux Al: it bends a grade, and can't be moved further"):
+        bw.aim(SLOPE, {"flux Al": "0.8..1.3"}, {"2 to 1": "110 meV"})
+
+
+def test_a_table_of_depths_stays_in_nm():
+    points = bw.Layer("10 nm", "AlxGa1-xAs", label="valley",
+                      x=[("0 nm", 0.3), ("5 nm", 0.0), ("10 nm", 0.3)])  # fmt: skip
+    wall = bw.Layer("20 nm", "Al0.3Ga0.7As", label="wall")
+    stack = bw.Stack([wall, points, wall], substrate="GaAs")
+    aimed = bw.aim(stack, {"valley.thickness": "6nm..20nm"}, {"2 to 1": "11 um"})
+    layer, fact = aimed.rounded.written()[1].layer, aimed.rounded_levels.profile.facts[1]
+    assert aimed.reached and layer.thickness.unit == "nm"
+    count = layer.thickness.value / fact.monolayer
+    assert count == pytest.approx(round(count), abs=1e-9)
+    assert aimed.values.monolayers[0] == round(count)
 
 
 def test_spans():

@@ -1,12 +1,15 @@
 import math
+import pickle
 
 import numpy as np
 import pytest
 
 import bandwright as bw
 from bandwright import metrics
+from bandwright.comparison import ENERGIES_ONLY
 from bandwright.errors import QuantityError, StackError, UnknownName
 from bandwright.metrics import METRICS, add_metric
+from bandwright.tolerances import OfTolerance
 
 DEFAULT = [
     "name", "levels", "upper", "lower", "wavelength_um", "energy_meV", "dipole_nm",
@@ -97,8 +100,8 @@ def test_a_metric_added_by_its_column(monkeypatch):
         add_metric("layers", len)
     with pytest.raises(StackError, match="metric 'reason' is taken"):
         add_metric("reason", len)
-    with pytest.raises(StackError, match="metric 'sigma_um': got 3; give a function"):
-        add_metric("sigma_um", 3)
+    with pytest.raises(StackError, match="metric 'sigma_K': got 3; give a function"):
+        add_metric("sigma_K", 3)
 
 
 def test_filters_choose_which_line_is_the_strongest():
@@ -142,3 +145,92 @@ def test_a_metric_that_does_not_exist_and_filters_that_mean_nothing():
         bw.compare([design(8)], window="8 um")
     with pytest.raises(TypeError, match="unexpected keyword"):
         bw.compare([design(8)], belw="1 eV")
+
+
+def test_the_phase_integral_has_levels_but_no_lines():
+    table = bw.compare([design(8), design(12)], method="phase-integral")
+    assert list(table.columns) == ["name", *ENERGIES_ONLY, "reason"]
+    assert table["reason"].tolist() == [None, None]
+    energies = bw.solve(design(12), method="phase-integral").energies * 1e3
+    assert table.loc[2, "levels"] == len(energies)
+    assert table.loc[2, "level_2_meV"] == energies[1]
+    asked = bw.compare([design(8)], ["dipole_nm"], method="phase-integral")
+    assert "the phase integral gives energies only" in asked.loc[1, "reason"]
+
+
+def test_sigma_and_yield_are_those_of_the_tolerance():
+    spreads, window = {"every thickness": "0.3 ML"}, ("9 um", "10 um")
+    stacks = [design(7, substrate="GaAs"), design(8, substrate="GaAs"), design(3, substrate="GaAs")]
+    names = ["sigma_um", "sigma_meV", "yield_percent"]
+    table = bw.compare(stacks, names, spreads=spreads, yield_window=window)
+    for number, stack in enumerate(stacks[:2], start=1):
+        found = bw.tolerance(stack, spreads, window=window)
+        wanted = [found.sigma_um, found.sigma_meV, 100.0 * found.linear_yield]
+        assert table.loc[number, names].tolist() == pytest.approx(wanted, rel=1e-12)
+    assert table.loc[3, names].isna().all() and table.loc[3, "reason"] is None  # it has no line
+    usual = bw.compare(stacks[:1], spreads=spreads)
+    assert list(usual.columns) == [*DEFAULT[:-1], "sigma_um", "sigma_meV", "reason"]
+    pickle.loads(pickle.dumps(OfTolerance("sigma_um", tuple(spreads.items()))))
+
+
+def test_a_spread_that_one_design_has_not_is_its_reason():
+    table = bw.compare([design(8)], ["sigma_um"], spreads={"well.thickness": "1 nm"})
+    assert "no layer has the label 'well'" in table.loc[1, "reason"]
+
+
+@pytest.mark.parametrize(
+    ("arguments", "error", "says"),
+    [
+        ({"metrics": ["sigma_um"]}, StackError, "metrics: sigma_um needs spreads, such as"),
+        ({"metrics": "yield_percent", "spreads": {"flux Al": "1 %"}}, StackError,
+         "metrics: yield_percent needs yield_window, such as"),
+        ({"yield_window": ("9 um", "10 um")}, StackError, "yield_window: a yield needs spreads"),
+        ({"spreads": "0.3 ML"}, StackError, "spreads: got '0.3 ML'; give a mapping"),
+        ({"spreads": {"flux Al": "1 %"}, "yield_window": ("9 um", "8 um")}, QuantityError,
+         "window: got .*; write the shorter wavelength first"),
+        ({"wishes": {"wavelenth_um": ("near", 10)}}, UnknownName,
+         "wishes: there is none of the name 'wavelenth_um'; did you mean 'wavelength_um'"),
+        ({"wishes": {"sigma_um": "small"}}, UnknownName, "wishes: there is none of the name"),
+        ({"metrics": {"score": len}}, StackError, "metrics: 'score' is the name of another column"),
+        ({"metrics": {"word": lambda solved: "good"}, "wishes": {"word": "large"}}, StackError,
+         "wish for word: its column holds words; wish for a number"),
+    ],
+)  # fmt: skip
+def test_what_a_comparison_can_not_do(arguments, error, says):
+    with pytest.raises(error, match=says):
+        bw.compare([design(8)], **arguments)
+
+
+def test_wishes_rank_designs_and_make_their_columns():
+    stacks = [design(6), design(7), BAD, design(8), design(3)]
+    wishes = {"wavelength_um": ("near", 9.0, 3.0), "dipole_nm": "large"}
+    table = bw.compare(stacks, ["levels"], wishes=wishes)
+    assert list(table.columns) == [
+        "name", "rank", "score", "levels", "wavelength_um", "dipole_nm", "reason"
+    ]  # fmt: skip
+    off = (table["wavelength_um"] - 9.0).abs()
+    dipole = table["dipole_nm"]
+    marks = 3.0 * (1.0 - off / off.max()) + (dipole - dipole.min()) / (dipole.max() - dipole.min())
+    for number in (1, 2, 4):
+        assert table.loc[number, "score"] == pytest.approx(marks[number] / 4.0, rel=1e-12)
+    assert math.isnan(table.loc[3, "score"]) and math.isnan(table.loc[3, "rank"])
+    assert table.loc[5, "score"] == 0.0  # no line: no wish is met
+    order = table["score"].dropna().sort_values(ascending=False).index.tolist()
+    assert table["rank"].dropna().sort_values().index.tolist() == order
+
+
+def test_rounded_to_whole_monolayers_and_solved_again():
+    stack = design(7.93, substrate="GaAs")
+    levels = bw.solve(stack)
+    each = [fact.monolayer for fact in levels.profile.facts]
+    counts = [round(layer.thickness.value / one) for layer, one in
+              zip(stack.layers, each, strict=True)]  # fmt: skip
+    whole = stack.replace(layers=[
+        layer.replace(thickness=f"{count} ML")
+        for layer, count in zip(stack.layers, counts, strict=True)
+    ])  # fmt: skip
+    wanted = bw.solve(whole).lines().find(2, 1).wavelength_um
+    found = bw.compare([stack, design(3)], ["rounded_wavelength_um", "wavelength_um"])
+    assert found.loc[1, "rounded_wavelength_um"] == pytest.approx(wanted, rel=1e-9)
+    assert abs(wanted - found.loc[1, "wavelength_um"]) > 1e-3
+    assert math.isnan(found.loc[2, "rounded_wavelength_um"])

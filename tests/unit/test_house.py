@@ -34,12 +34,15 @@ HOUSE = [
     "cautions",
     "lines",
     "budget",
+    "monolayers",
     "metrics",
     "following",
-    "comparison",
     "sweeps",
     "aiming",
     "crossings",
+    "tolerances",
+    "wishes",
+    "comparison",
     "report",
     "pictures",
     "cli",
@@ -57,6 +60,8 @@ HANDED_ON = {
     ("levels", "report"),
     ("lines", "budget"),
     ("lines", "report"),
+    ("tolerances", "pictures"),
+    ("tolerances", "report"),
 }
 
 KNOWN_TO_ONE = {

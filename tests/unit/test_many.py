@@ -84,7 +84,7 @@ def test_a_bad_design_is_its_error_and_stops_nobody():
     assert isinstance(many[1], bw.BandwrightError)
     assert "Zr" in str(many[1])
     assert len(many[0]) == len(many[2]) == 2
-    row = many.table.set_index("design").loc[1]
+    row = many.table.set_index("design").loc[2]
     assert "Zr" in row["reason"] and np.isnan(row["energy_meV"])
 
 
@@ -93,7 +93,7 @@ def test_the_table_is_tidy():
     assert list(table.columns) == [
         "design", "name", "level", "energy_meV", "count_checked", "reason",
     ]  # fmt: skip
-    assert table["design"].tolist() == [0, 0, 1, 1, 1]
+    assert table["design"].tolist() == [1, 1, 2, 2, 2]
     assert table["energy_meV"].is_monotonic_increasing is False
     assert table["count_checked"].all()
 

@@ -12,7 +12,7 @@ from ..constants import HC
 from ..errors import QuantityError, StackError, UnknownName, close_matches
 from ..lines import CONTINUUM, Line
 from ..metrics import Pair, read_pair
-from ..parameters import Parameter, find, read, replace
+from ..parameters import Parameter, find, list_parameters, read, replace
 from ..quantities import as_energy, as_length, as_value, show
 from ..quantities.spans import split_span
 from ..stack import Stack
@@ -25,7 +25,8 @@ SHOWN = {
 _LINE = re.compile(r"\s*(\d+|continuum)\s*to\s*(\d+)\s*", re.IGNORECASE)
 _QUANTITIES = {"dipole": "dipole_nm", "oscillator strength": "oscillator_strength"}
 _THICKNESS = "thickness"
-_FACTORS = ("scale", "flux")
+#: kinds of parameters that multiply what they find
+FACTORS = ("scale", "flux")
 
 
 @dataclass(frozen=True)
@@ -140,6 +141,17 @@ def read_wishes(
     return Wishes(stack, _free(stack, free), found, _limits(limits), wished)
 
 
+def relative(parameter: Parameter) -> bool:
+    """Return whether a parameter reads the same in every stack: a factor, or the shift of a grade.
+
+    Examples
+    --------
+    >>> relative(Parameter("all thicknesses", None, "scale", ""))
+    True
+    """
+    return parameter.kind in FACTORS or parameter.name.endswith("_shift")
+
+
 def name_of(pair: Pair) -> str:
     """Return a line in words.
 
@@ -190,7 +202,10 @@ def _one_free(stack: Stack, name: str, span: object) -> Free:
     if least == most:
         raise StackError(f"got {show(span)}, which leaves nothing free; leave it out", name)
     for end in (least, most):
-        replace(stack, name, end)  # what can't be grown is said before anything is solved
+        moved = replace(stack, name, end)  # what can't be grown is said before anything is solved
+        if name not in [p.name for p in list_parameters(moved)] and relative(parameter):
+            raise StackError("it bends a grade, and can't be moved further from there; free the"
+                             " fractions of its layer", name)  # fmt: skip
     return Free(parameter, start, least, most)
 
 
@@ -213,7 +228,7 @@ def _refuse_shared(one: Parameter, other: Parameter) -> None:
     """Raise if two free parameters move one number."""
     if not set(one.layer_numbers) & set(other.layer_numbers) and one.name != other.name:
         return
-    factor = one.kind in _FACTORS or other.kind in _FACTORS
+    factor = one.kind in FACTORS or other.kind in FACTORS
     keys = [p.name.rpartition(".")[2] for p in (one, other)]
     ends = {"first", "last"} == {key.rpartition("_")[2] for key in keys}
     same = keys[0].partition("_")[0] == keys[1].partition("_")[0] and not ends

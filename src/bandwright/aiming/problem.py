@@ -25,7 +25,7 @@ from ..metrics import Pair
 from ..parameters import replace
 from ..profile.build import build_profile
 from ..stack import Stack
-from .asking import Free, Limit, Wishes, name_of
+from .asking import FACTORS, Free, Limit, Wishes, name_of
 
 Floats = npt.NDArray[np.float64]
 
@@ -170,6 +170,7 @@ class Problem:
     why: str = ""
     edges: dict[bytes, str] = field(default_factory=dict)
     _known: dict[bytes, Point] = field(default_factory=dict)
+    _solved: dict[Stack, Levels] = field(default_factory=dict)
 
     @cached_property
     def weights(self) -> Floats:
@@ -206,7 +207,7 @@ class Problem:
         """Return what a scaled step is in units of the gradient there."""
         found: list[float] = [one.width for one in self.wishes.free]
         for place, one in enumerate(self.wishes.free):
-            if one.parameter.kind in ("scale", "flux"):  # the gradient's factor begins there anew
+            if one.parameter.kind in FACTORS:  # the gradient's factor begins there anew
                 found[place] /= _value(one, x[place])
         return np.array(found)
 
@@ -239,12 +240,16 @@ class Problem:
         return point
 
     def solve(self, stack: Stack) -> Levels:
-        """Return the levels of a design, counted."""
+        """Return the levels of a design, counted; those of the last one are kept."""
+        if stack in self._solved:
+            return self._solved[stack]
         self.solves += 1
         with warnings.catch_warnings():
             # the design that is found gives its own
             warnings.simplefilter("ignore", BandwrightWarning)
-            return solve(stack, **self.arguments)
+            levels = solve(stack, **self.arguments)
+        self._solved = {stack: levels}
+        return levels
 
     def _places(self, levels: Levels, near: Point | None) -> dict[int, int] | None:
         """Return where the levels asked about are; None where one is missing."""

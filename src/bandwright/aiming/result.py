@@ -10,10 +10,10 @@ import numpy as np
 
 from ..frames import frame
 from ..levels import Levels
-from ..parameters import Parameter, read
+from ..parameters import Parameter, read, replace
 from ..stack import Stack
-from .asking import SHOWN, Limit, Wishes, shown_energy
-from .problem import Point, design
+from .asking import SHOWN, Limit, Wishes, relative, shown_energy
+from .problem import Point
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -22,6 +22,8 @@ if TYPE_CHECKING:
 REACHED = 1e-6
 #: a parameter this close to a bound, in scaled parameters, is at it
 _AT_BOUND = 1e-6
+#: a number of monolayers this close to a whole one is whole
+_WHOLE = 1e-9
 
 
 @dataclass(frozen=True, eq=False, repr=False)
@@ -58,11 +60,16 @@ class Aimed:
         """The design, its parameters to the last digit."""
         return self.found.levels.stack
 
-    @cached_property
-    def shown(self) -> Stack:
-        """The design with its free parameters to seven digits, as texts print it."""
-        values = self.found.problem.values(self.found.x)
-        return design(self.wishes, [float(f"{value:.7g}") for value in values])
+    def shown(self, stack: Stack) -> Stack:
+        """Return a design with free parameters to seven digits, as texts print it.
+
+        Thicknesses in whole monolayers stay as they are.
+        """
+        for one in self.wishes.free:
+            if not relative(one.parameter):
+                value = float(f"{read(stack, one.name):.7g}")
+                stack = replace(stack, one.name, value)
+        return stack
 
     @property
     def rounded(self) -> Stack | None:
@@ -102,7 +109,7 @@ class Aimed:
     def _row(self, parameter: Parameter, free: bool) -> tuple[Any, ...]:
         unit, places = SHOWN.get(parameter.unit, (parameter.unit, 0))
         values = [read(stack, parameter.name) for stack in (self.wishes.stack, self.stack)]
-        if parameter.kind in ("scale", "flux"):
+        if free and relative(parameter):
             values[1] = dict(
                 zip(self.wishes.names, self.found.problem.values(self.found.x), strict=True)
             )[parameter.name]
@@ -112,19 +119,19 @@ class Aimed:
         return (parameter.name, *shown, unit, count, free)
 
     def _whole(self, parameter: Parameter, value: float) -> tuple[float | None, float | None]:
-        """Return a parameter of the rounded design, and its monolayers if it has been rounded."""
+        """Return a parameter of the rounded design, and its monolayers where they are whole."""
         if self.whole is None:
             return None, None
-        if parameter.kind in ("scale", "flux"):
+        if relative(parameter):
             return value, None
         stack = self.whole.levels.stack
         if parameter.kind != "thickness" or parameter.layer_number is None:
             return read(stack, parameter.name), None
         length = stack.written()[parameter.layer_number - 1].layer.thickness
         fact = self.whole.levels.profile.facts[parameter.layer_number - 1]
-        rounded = any(p.name == parameter.name for p in self.rounded_parameters)
-        count = fact.thickness / fact.monolayer if rounded else float("nan")
-        monolayers = round(count) if abs(count - round_or(count)) < 1e-6 else None
+        count = length.value if length.unit == "ML" else fact.thickness / fact.monolayer
+        whole = np.isfinite(count) and abs(count - round(count)) < _WHOLE
+        monolayers = round(count) if whole else None
         return (length.value if parameter.unit == "ML" else fact.thickness), monolayers
 
     @cached_property
@@ -237,14 +244,3 @@ class Aimed:
         from ..report.aimed import aimed_html
 
         return aimed_html(self)
-
-
-def round_or(count: float) -> float:
-    """Return the nearest whole number; nan of nan.
-
-    Examples
-    --------
-    >>> round_or(24.0000001), round_or(float("nan"))
-    (24, nan)
-    """
-    return count if count != count else round(count)

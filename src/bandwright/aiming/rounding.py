@@ -19,7 +19,7 @@ from ..parameters import Parameter, list_parameters, read, replace
 from ..quantities import Length, as_value, show
 from ..shapes import Function, Points
 from ..stack import Stack
-from .asking import Free, Wishes
+from .asking import Free, Wishes, relative
 from .problem import Point, Problem
 
 Floats = npt.NDArray[np.float64]
@@ -75,8 +75,9 @@ def read_grid(wishes: Wishes, grid: object) -> dict[str, float]:
     for name, step in grid.items():
         if name not in free:
             raise UnknownName(f"grid: {name!r} is no free parameter{close_matches(name, free)}")
-        if free[name].kind in ("scale", "flux"):
-            raise StackError(f"grid, {name}: a factor on all layers has no steps; leave it out")
+        if relative(free[name]):
+            raise StackError(f"grid, {name}: what is relative to the stack has no whole steps;"
+                             " leave it out")  # fmt: skip
         value, unit = as_value(step, f"grid, {name}", free[name].unit)
         if unit != free[name].unit:
             raise StackError(f"grid, {name}: got {show(step)}; it is counted in {free[name].unit}")

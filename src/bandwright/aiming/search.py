@@ -143,6 +143,7 @@ def aim(
 def _best(problem: Problem, starts: int | None) -> tuple[Point, int]:
     """Return the best design of all starts, and how many were followed."""
     most = _STARTS if starts is None else starts
+    problem.solve(problem.stack_at(problem.start))  # what keeps it from being solved is raised
     origin = problem.at(problem.start) if problem.follow else None
     best: Point | None = None
     followed, why = 0, ""

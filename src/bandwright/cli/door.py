@@ -22,6 +22,7 @@ COMMANDS = {
     "sweep": ("STACK --over NAME=VALUES", "Vary a stack over one or several ranges."),
     "aim": ("STACK --free NAME=SPAN", "Find the design whose lines have the wavelengths asked."),
     "anticrossings": ("STACK --over NAME=RANGE", "Find where levels come closest along a range."),
+    "tolerance": ("STACK --spread NAME=AMOUNT", "Find what a growth's spreads do to wavelengths."),
     "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),
     "materials": ("[FORMULA ...]", "List the materials, or show formulas."),
 }
@@ -99,6 +100,7 @@ def _format(args: argparse.Namespace) -> str:
     if args.format:
         return str(args.format)
     suffix = args.output.suffix[1:].lower() if args.output else ""
+    suffix = {"md": "markdown", "htm": "html"}.get(suffix, suffix)
     return suffix if suffix in args.formats else str(args.formats[0])
 
 

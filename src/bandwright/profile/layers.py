@@ -17,6 +17,9 @@ from ..stack import Layer, Stack
 from .curves import fit_depths, fitted, least, straight
 from .sections import ZERO, Curve, Floats, LayerFacts, Number, Polynomial, Sampled, Unlike
 
+#: weights of the mean over 17 depths, Simpson's
+_SIMPSON = np.array([1.0, *[4.0, 2.0] * 7, 4.0, 1.0]) / 48.0
+
 
 class Piece(NamedTuple):
     """A section of one layer: edge on the materials' or the own scale, without any field."""
@@ -78,7 +81,7 @@ def _uniform(
     inverse_gap = Polynomial((1.0 / gap,)) if two_band else ZERO
     piece = Piece(thickness, Polynomial((edge,)), Polynomial((mass,)), inverse_gap)
     facts = LayerFacts(name, thickness, False, layer.material, monolayer, lattice, exx,
-                       bool(np.all(point.direct)), point.cautions)  # fmt: skip
+                       bool(np.all(point.direct)), point.cautions, exx)  # fmt: skip
     return (piece,), facts
 
 
@@ -106,7 +109,7 @@ def _graded(
     return pieces, LayerFacts(
         name, thickness, False, layer.material or "", float(np.mean(along.monolayer)),
         float(np.ravel(lattice)[worst]), float(np.ravel(exx)[worst]), bool(np.all(along.direct)),
-        along.cautions,
+        along.cautions, float(_SIMPSON @ exx),
     )  # fmt: skip
 
 

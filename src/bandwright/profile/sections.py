@@ -146,6 +146,8 @@ class LayerFacts:
         Whether the lowest conduction edge is the zone centre's all along the layer.
     cautions : tuple of str
         What the material data say about their own use here.
+    mean_mismatch : float
+        In-plane strain as ``mismatch``, its mean along the layer.
     """
 
     name: str
@@ -157,6 +159,7 @@ class LayerFacts:
     mismatch: float = 0.0
     direct: bool = True
     cautions: tuple[str, ...] = ()
+    mean_mismatch: float = 0.0
 
 
 def _row(section: Section) -> tuple[Number, ...]:

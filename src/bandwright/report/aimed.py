@@ -18,14 +18,14 @@ _DIGITS = {"by": "+.4g"}
 
 def aimed_facts(aimed: Aimed) -> list[Fact]:
     """Return what was found, in the order it is read."""
-    stack = aimed.stack
+    stack = aimed.shown(aimed.stack)
     found: list[Fact] = [
         ("aimed", f"{stack.name or 'without a name'}: {drive(stack)};"
                   f" {held_at(stack.temperature, stack.substrate)}"),
-        ("grown", grown(aimed.shown)),
+        ("grown", grown(stack)),
     ]  # fmt: skip
     if aimed.rounded is not None:
-        found.append(("rounded", grown(aimed.rounded)))
+        found.append(("rounded", grown(aimed.shown(aimed.rounded))))
     starts = f"{aimed.starts} start{'s' if aimed.starts > 1 else ''}"
     by = "by character" if aimed.follow else "by number"
     found.append(("found", f"by {aimed.solves} solves from {starts}, levels followed {by}"))

@@ -1,0 +1,83 @@
+"""Designs side by side as Markdown and as a page of HTML; as text they are in `text`."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any
+
+from .data import Columns
+from .facts import Fact, drive, grown, held_at
+from .grid import DIGITS, cell, unit_of
+from .html import html_facts, html_table
+
+if TYPE_CHECKING:
+    from ..stack import Stack
+
+
+def shown_columns(columns: Columns) -> Columns:
+    """Return the columns of a comparison that say something, reasons and names left out."""
+    return {
+        name: cells
+        for name, cells in columns.items()
+        if name not in ("name", "reason") and any(value is not None for value in cells)
+    }
+
+
+def facts_of(
+    stacks: Sequence[Stack], columns: Columns, cautions: Sequence[Sequence[str]]
+) -> list[Fact]:
+    """Return what each design is, why one failed, and the cautions about each."""
+    reasons = columns.get("reason", [])
+    told: list[Fact] = []
+    for number, stack in enumerate(stacks, 1):
+        held = held_at(stack.temperature, stack.substrate)
+        said = f"{stack.name or 'without a name'}: {drive(stack)}; {held}; {grown(stack)}"
+        told.append((f"design {number}", said))
+    told += [(f"design {n}", f"failed: {why}") for n, why in enumerate(reasons, 1) if why]
+    for number, texts in enumerate(cautions, 1):
+        told += [("caution", f"design {number}: {text}") for text in texts]
+    return told
+
+
+def markdown_table(columns: Mapping[str, Sequence[Any]]) -> str:
+    r"""Return columns as a table in Markdown, numbers flush right.
+
+    Examples
+    --------
+    >>> print(markdown_table({"design": [1], "wavelength_um": [10.3271]}), end="")
+    | design | wavelength (um) |
+    | ---: | ---: |
+    | 1 | 10.327 |
+    """
+    heads, rules = [], []
+    for name, values in columns.items():
+        words, unit = unit_of(name)
+        heads.append(f"{words} ({unit})" if unit else words)
+        rules.append("---" if any(isinstance(value, str) for value in values) else "---:")
+    rows = [[cell(name, value, DIGITS) for name, value in zip(columns, row, strict=True)]
+            for row in zip(*columns.values(), strict=True)]  # fmt: skip
+    return "".join(f"| {' | '.join(map(_escaped, row))} |\n" for row in (heads, rules, *rows))
+
+
+def compare_markdown(
+    stacks: Sequence[Stack], columns: Columns, cautions: Sequence[Sequence[str]] = ()
+) -> str:
+    """Return a comparison in Markdown: the table, then what each design is."""
+    facts = facts_of(stacks, columns, cautions)
+    listed = "".join(f"- **{label}** {_escaped(text)}\n" for label, text in facts)
+    return f"{markdown_table(shown_columns(columns))}\n{listed}"
+
+
+def compare_html(
+    stacks: Sequence[Stack], columns: Columns, cautions: Sequence[Sequence[str]] = ()
+) -> str:
+    """Return a comparison as a page of HTML that needs no other file."""
+    body = html_table(shown_columns(columns)) + html_facts(facts_of(stacks, columns, cautions))
+    return (
+        '<!DOCTYPE html>\n<html lang="en"><head><meta charset="utf-8"><title>Designs side by side'
+        f"</title></head><body>\n{body}\n</body></html>\n"
+    )
+
+
+def _escaped(text: str) -> str:
+    return text.replace("\\", "\\\\").replace("|", "\\|").replace("*", "\\*").replace("<", "&lt;")
