@@ -41,6 +41,8 @@ if TYPE_CHECKING:
     from .many import Many as Many
     from .many import solve_many as solve_many
     from .materials import Library as Library
+    from .mismatch import Mismatches as Mismatches
+    from .mismatch import mismatches as mismatches
     from .pictures import band_diagram as band_diagram
     from .pictures import budget_bars as budget_bars
     from .pictures import save_picture as save_picture
@@ -58,6 +60,8 @@ if TYPE_CHECKING:
     from .sweeps import sweep as sweep
     from .tolerances import Tolerance as Tolerance
     from .tolerances import tolerance as tolerance
+    from .xray import XrayPattern as XrayPattern
+    from .xray import xray_pattern as xray_pattern
 
     __version__: str
 
@@ -84,6 +88,8 @@ _ROOMS = {
     "lines": ("Lines",),
     "many": ("Many", "solve_many"),
     "gradients": ("Gradient", "LineGradient"),
+    "mismatch": ("Mismatches", "mismatches"),
+    "xray": ("XrayPattern", "xray_pattern"),
     "following": ("follow", "follow_line", "overlaps"),
     "comparison": ("compare",),
     "pictures": (

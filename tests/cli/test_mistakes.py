@@ -82,6 +82,23 @@ def test_window_without_a_unit(capsys):
     assert "window: got '8'" in fails(capsys, "lines", BARRIERS, "--window", "8", "12")
 
 
+@pytest.mark.parametrize(
+    ("words", "says"),
+    [
+        (["strain", BARRIERS], "substrate: missing; strain counts from it"),
+        (["strain", OWN, "--substrate", "GaAs"], "no layer of a material"),
+        (["strain", BARRIERS, "--substrate", "GaAs", "--balance", "field"], "balances no strain"),
+        (["xray", BARRIERS], "substrate: missing"),
+        (["xray", BARRIERS, "--substrate", "GaAs", "--reflection", "014"], "forbidden"),
+        (["xray", BARRIERS, "--substrate", "GaAs", "--reflection", "four"], "write three indices"),
+        (["xray", BARRIERS, "--substrate", "GaAs", "--reflection", "008"], "beyond 90 degrees"),
+        (["xray", BARRIERS, "--substrate", "GaAs", "--wavelength", "8 keV"], "that is an energy"),
+    ],
+)
+def test_strain_and_xray(words, says, capsys):
+    assert says in fails(capsys, *words)
+
+
 def test_materials(capsys):
     assert "'Xs'" in fails(capsys, "materials", "GaXs")
     assert "needs a value for x" in fails(capsys, "materials", "AlxGa1-xAs")

@@ -231,3 +231,51 @@ def test_field_and_bias_take_the_place_of_what_a_file_has(run, tmp_path, has, op
     status, out, _ = run("levels", path, *option, "--format", "json")
     assert status == 0
     assert json.loads(out)["electrons_run"] == says
+
+
+PAIRS = "9 x (8 nm In0.2Ga0.8As {label well}, 10 nm GaAs0.9P0.1 {label barrier})"
+
+
+def test_strain_as_json_and_csv(run):
+    ask = ["strain", PAIRS, "--substrate", "GaAs", "--balance", "barrier.thickness"]
+    status, out, err = run(*ask, "--format", "json")
+    assert status == 0
+    found = json.loads(out)
+    strain = bw.mismatches(bw.parse_line(PAIRS, substrate="GaAs"))
+    assert found["mean_stress_GPa"] == strain.mean_stress_GPa
+    assert [row["layer"] for row in found["layers"]] == ["well", "barrier"]
+    assert found["layers"][0]["mismatch_percent"] == strain.table["mismatch_percent"].iloc[0]
+    assert found["whole"]["critical_thickness_nm"] == strain.whole.limit
+    (balance,) = found["balances"]
+    assert loads(balance["stack"]["toml"], None) == strain.balanced("barrier.thickness").stack
+    assert found["cautions"] == list(strain.cautions) != []
+    said = " ".join(err.split())
+    assert "brings the mean stress to zero" in said and "K = 8 pi" in said
+    status, out, err = run(*ask, "--format", "csv")
+    assert [float(r["stress_GPa"]) for r in rows(out)] == strain.table["stress_GPa"].tolist()
+    assert "caution    well to barrier" in err
+
+
+def test_what_is_infinite_or_not_there_is_null(run):
+    line = "9 nm GaAs, 8 nm In0.2Ga0.8As, 9 nm GaAs"
+    found = json.loads(run("strain", line, "--substrate", "GaAs", "--format", "json")[1])
+    assert found["layers"][0]["critical_thickness_nm"] is None
+    assert found["layers"][1]["critical_in_group_nm"] is None
+    line = "9 nm GaAs, 8 nm Al0.2Ga0.8As"
+    found = json.loads(run("strain", line, "--substrate", "GaAs", "--format", "json")[1])
+    assert found["whole"] is None
+
+
+def test_xray_as_json_and_csv(run):
+    ask = ["xray", PAIRS, "--substrate", "GaAs", "--reflection", "115", "--orders", "2",
+           "--wavelength", "1.5406 Å"]  # fmt: skip
+    status, out, err = run(*ask, "--format", "json")
+    assert status == 0
+    found = json.loads(out)
+    pattern = bw.xray_pattern(bw.parse_line(PAIRS, substrate="GaAs"), "115", "0.15406 nm", orders=2)
+    assert found["zero_order_deg"] == pattern.zero_order_deg
+    assert found["reflection"] == [1, 1, 5] and found["wavelength_nm"] == 0.15406
+    assert [row["order"] for row in found["satellites"]] == [-2, -1, 0, 1, 2]
+    status, out, err = run(*ask, "--format", "csv")
+    assert [float(r["bragg_angle_deg"]) for r in rows(out)] == pattern.columns["bragg_angle_deg"]
+    assert "period     18 nm (9 times): well + barrier" in err and "kinematic" in err

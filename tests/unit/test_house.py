@@ -36,6 +36,8 @@ HOUSE = [
     "budget",
     "monolayers",
     "metrics",
+    "mismatch",
+    "xray",
     "following",
     "sweeps",
     "aiming",
@@ -60,6 +62,8 @@ HANDED_ON = {
     ("levels", "report"),
     ("lines", "budget"),
     ("lines", "report"),
+    ("mismatch", "report"),
+    ("xray", "report"),
     ("tolerances", "pictures"),
     ("tolerances", "report"),
 }

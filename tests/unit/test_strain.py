@@ -92,3 +92,9 @@ def test_stress_in_the_plane_per_strain():
     stress = c11 * exx + c12 * exx + c12 * ezz
     assert strain.biaxial_stiffness(c11, c12) * exx == pytest.approx(stress, rel=1e-14)
     assert strain.biaxial_stiffness(c11, c12) == pytest.approx(126.2256347256, rel=1e-10)
+
+
+def test_layers_that_share_a_misfit_equally_are_single_layers_of_half_of_it():
+    # why K of a superlattice is half that of a single layer: each layer bears half the misfit
+    whole = strain.critical_thickness(0.01, 0.565, 0.32, "superlattice")
+    assert whole == pytest.approx(strain.critical_thickness(0.005, 0.565, 0.32), rel=1e-14)

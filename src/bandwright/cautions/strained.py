@@ -59,13 +59,20 @@ def _sized(fact: LayerFacts) -> str:
 
 
 def _too_thick(levels: Levels, substrate: str) -> list[str]:
+    """Return runs of layers strained alike, or else all, beyond their critical thickness."""
     profile = levels.profile
     grown = [profile.facts[index] for index in profile.written]
-    return too_thick(grown, Library.with_files(levels.stack.materials).lattice(substrate))
+    lattice = Library.with_files(levels.stack.materials).lattice(substrate)
+    texts = runs_too_thick(grown, lattice)
+    first, last = strained_part(grown)
+    if not texts and last > first and not any(fact.own for fact in grown):
+        film = as_one(grown[first : last + 1], lattice, last < len(grown) - 1)
+        texts = whole_too_thick(grown[first].name, grown[last].name, film)
+    return texts
 
 
-def too_thick(grown: Sequence[LayerFacts], lattice: float) -> list[str]:
-    """Return runs of layers strained alike, and the whole stack, beyond their critical thickness.
+def runs_too_thick(grown: Sequence[LayerFacts], lattice: float) -> list[str]:
+    """Return runs of layers strained alike that are beyond their critical thickness.
 
     Neighbours strained in the same sense count as one film of their mean misfit.
 
@@ -87,24 +94,18 @@ def too_thick(grown: Sequence[LayerFacts], lattice: float) -> list[str]:
         text = _beyond(as_one(film, lattice, place < len(grown)))
         if text:
             found[names] = f"{names}: {text}; make it thinner, or its misfit smaller"
-    if not found:
-        found[""] = _whole(grown, lattice)
-    return [text for text in found.values() if text]
+    return list(found.values())
 
 
-def _whole(grown: Sequence[LayerFacts], lattice: float) -> str:
-    """Return whether all from the first to the last strained layer is too much as one film."""
-    first, last = strained_part(grown)
-    if last <= first or any(fact.own for fact in grown):
-        return ""
-    film = grown[first : last + 1]
-    text = _beyond(as_one(film, lattice, last < len(grown) - 1))
+def whole_too_thick(first: str, last: str, film: AsOne) -> list[str]:
+    """Return whether all from one layer to another is too much as one film."""
+    text = _beyond(film)
     if text is None:
-        return ""
-    return (
-        f"{film[0].name} to {film[-1].name}: {text}, though no layer alone is; balance the strain"
-        " with layers of the other sign"
-    )
+        return []
+    return [
+        f"{first} to {last}: {text}, though no layer alone is; balance the strain with layers of"
+        " the other sign"
+    ]
 
 
 def strained_part(grown: Sequence[LayerFacts]) -> tuple[int, int]:

@@ -31,6 +31,9 @@ UNITS = {
     "_K": "K",
     "_m0": "m0",
     "_percent": "%",
+    "_GPa": "GPa",
+    "_deg": "deg",
+    "_arcsec": "arcsec",
 }
 
 NARROW = 11  # no heading is wrapped to less
@@ -67,6 +70,14 @@ DIGITS = {
     "lattice_nm": ".6f",
     "monolayer_nm": ".6f",
     "strain_percent": ".3f",
+    "mismatch_percent": "+.3f",
+    "worst_mismatch_percent": "+.3f",
+    "stress_GPa": "+.3f",
+    "critical_thickness_nm": ".2f",
+    "critical_in_group_nm": ".2f",
+    "bragg_angle_deg": ".4f",
+    "two_theta_deg": ".4f",
+    "from_substrate_arcsec": "+.1f",
 }
 
 
