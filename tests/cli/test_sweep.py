@@ -74,6 +74,17 @@ def test_options_reach_the_sweep(run):
     assert [row["upper"] for row in rows(out)] == ["", "", ""]
 
 
+def test_a_line_that_is_followed(run):
+    pair = WELL.replace("20 nm Al0.3Ga0.7As, 7 nm", "20 nm Al0.3Ga0.7As, 6 nm GaAs, 14 nm"
+                        " Al0.3Ga0.7As, 7 nm")  # fmt: skip
+    words = ["sweep", pair, "--substrate", "GaAs", "--over", "well.thickness=5.5 nm, 6.5 nm",
+             "--line", "4", "2", "--metric", "lower"]  # fmt: skip
+    assert [row["lower"] for row in rows(run(*words, "--format", "csv")[1])] == ["2", "2"]
+    status, out, _ = run(*words, "--follow", "--format", "csv")
+    assert status == 0 and [row["lower"] for row in rows(out)] == ["2", "1"]
+    assert "4 to 2, in the first design, followed by character" in run(*words, "--follow")[1]
+
+
 def test_designs_from_a_table(run, tmp_path):
     path = tmp_path / "designs.csv"
     path.write_text(

@@ -209,7 +209,7 @@ def test_a_spacing_that_is_no_parabola_is_searched(found, monkeypatch):
     path = Path.read(PAIR, FIELD, {})
     low, high = point(path, 15e-4), point(path, 45e-4)
     monkeypatch.setattr("bandwright.crossings.narrowest.bend", lambda *_: None)
-    at, off = Pair(path, (low, high), 1e-6).least(low, high, (10e-4, 60e-4))
+    at, off, _ = Pair(path, (low, high), 1e-6).least(low, high, (10e-4, 60e-4))
     assert off == pytest.approx(3e-7)
     assert 1e4 * at.value == pytest.approx(found["field_kV_per_cm"].iloc[0], abs=5 * 3e-3)
 

@@ -135,6 +135,9 @@ def test_the_very_middle_keeps_the_order():
     levels = [bw.solve(pair(first, 8.0)) for first in (5.0, 6.0)]
     assert np.abs(bw.overlaps(*levels)[:2, :2] - np.sqrt(0.5)).max() < 0.06
     assert bw.follow(levels)[:, :2].tolist() == [[0, 1], [0, 1]]
+    # and the next design is compared with the one before
+    assert bw.follow([*levels, bw.solve(pair(7.0, 8.0))])[-1, :2].tolist() == [1, 0]
+    assert bw.follow([*levels, levels[0]])[-1, :2].tolist() == [0, 1]
 
 
 @pytest.mark.parametrize("group", ["0.01 meV", "0 meV"])

@@ -50,6 +50,10 @@ def options(parser: Parser) -> None:
         "--strongest", action="store_true", help="each design's own strongest line, which may hop"
     )
     group.add_argument(
+        "--follow", action="store_true",
+        help="follow the line by character: its levels have these numbers in the first design",
+    )  # fmt: skip
+    group.add_argument(
         "--window", nargs=2, metavar=("FROM", "TO"), help="of wavelengths, '8 um' '12 um'"
     )
     group.add_argument("--strength", metavar="F", type=float, help="least oscillator strength")
@@ -75,13 +79,15 @@ def run(args: argparse.Namespace) -> Answer:
     table = sweep(
         stack, over, metrics=args.metric, line=_line(args), window=args.window,
         strength=args.strength, paired=args.paired or args.designs is not None,
+        follow=args.follow,
         results=args.results, workers=args.workers, chunk=args.chunk, **solve_arguments(args),
     )  # fmt: skip
     columns, line = data.columns_of(table), table.attrs["line"]
     if args.format == "text":
         tolerance = as_energy(args.tolerance or "1e-6 eV", "tolerance")
         parameters = table.attrs["parameters"]
-        return Answer(swept.sweep_text(stack, columns, parameters, line, tolerance))
+        text = swept.sweep_text(stack, columns, parameters, line, tolerance, args.follow)
+        return Answer(text)
     beside = swept.failures_text(columns)
     if args.format == "csv":
         return Answer(data.csv_text(columns), beside)

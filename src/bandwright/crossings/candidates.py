@@ -15,7 +15,7 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from ..following import follow, overlaps
+from ..following import Tracked, along, overlaps
 from ..levels import Levels
 
 Floats = npt.NDArray[np.float64]
@@ -101,8 +101,11 @@ class Coarse:
 
     @cached_property
     def tracks(self) -> Indices:
-        """Level index of each track in each design, -1 where it has none."""
-        return follow(self.levels)
+        """Level index of each track in each design, -1 where it has none.
+
+        Each step is judged by itself, so that a step on which tracks cross holds their middle.
+        """
+        return along(self.levels, Tracked(patient=False))
 
     @cached_property
     def energies(self) -> Floats:

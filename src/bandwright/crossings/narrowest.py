@@ -115,8 +115,10 @@ class Pair:
         self._known.append(point)
         return point
 
-    def least(self, low: Point, high: Point, ends: tuple[float, float]) -> tuple[Point, float]:
-        """Return where they are closest between two designs, and how far off that may be.
+    def least(
+        self, low: Point, high: Point, ends: tuple[float, float]
+    ) -> tuple[Point, float, Point]:
+        """Return where they are closest, how far off that may be, and a design beside it.
 
         The square of the spacing is nearly a parabola, whose vertex three designs give, more
         exactly the nearer they are; where it is none, a bounded search does without.
@@ -133,7 +135,7 @@ class Pair:
             if not low.value < formula.middle < high.value:
                 beyond = low if formula.middle <= low.value else high
                 if beyond.value in ends and beyond is points[0]:
-                    return beyond, 0.0
+                    return beyond, 0.0, high if beyond is low else low
                 break
             finest = max(_FINEST * reach, points[0].error / formula.slope)
             off = abs(points[0].value - formula.middle)
@@ -145,11 +147,11 @@ class Pair:
             elif abs(far.value - formula.middle) > 2.0 * near:
                 following = formula.middle + np.copysign(near, far.value - formula.middle)
             else:
-                return points[0], aim
+                return points[0], aim, far
             points.append(self.at(following))
         return self._searched(low, high)
 
-    def _searched(self, low: Point, high: Point) -> tuple[Point, float]:
+    def _searched(self, low: Point, high: Point) -> tuple[Point, float, Point]:
         seen: list[Point] = [low, high]
         nearer = 1e-4 * (high.value - low.value)
 
@@ -160,7 +162,8 @@ class Pair:
         minimize_scalar(
             square, bounds=(low.value, high.value), method="bounded", options={"xatol": nearer}
         )
-        return min(seen, key=lambda point: point.spacing), nearer
+        best = min(seen, key=lambda point: point.spacing)
+        return best, nearer, max((low, high), key=lambda point: abs(point.value - best.value))
 
 
 def refine(pair: Pair, low: Point, high: Point, ends: tuple[float, float]) -> Narrowest | None:
@@ -181,26 +184,17 @@ def refine(pair: Pair, low: Point, high: Point, ends: tuple[float, float]) -> Na
 
 
 def _refined(pair: Pair, low: Point, high: Point, ends: tuple[float, float]) -> Narrowest | None:
-    best, off = pair.least(low, high, ends)
+    best, off, near = pair.least(low, high, ends)
     for end in (low, high):
         if end.value in ends and abs(best.value - end.value) <= off:
             return _at_end(pair, pair.at(end.value), low, high, ends)
-    formula = _around(best, low, high)
+    slope = np.sqrt(max(near.spacing**2 - best.spacing**2, 1e-300)) / abs(near.value - best.value)
+    formula = Bend(best.value, float(slope), best.spacing)
     place = best.spacing - np.sqrt(max(best.spacing**2 - (formula.slope * off) ** 2, 0.0))
     found = _judged(pair, best, formula, REACH, ends)
     if found is None or found.due < LEAST:
         return None
     return found._replace(error=best.error + float(place))
-
-
-def _around(best: Point, low: Point, high: Point) -> Bend:
-    """Return the two-level formula with its middle and splitting where two levels are closest."""
-    slopes = [
-        (end.spacing**2 - best.spacing**2) / (end.value - best.value) ** 2
-        for end in (low, high)
-        if end.value != best.value
-    ]
-    return Bend(best.value, float(np.sqrt(max(*slopes, 1e-300))), best.spacing)
 
 
 def _at_end(

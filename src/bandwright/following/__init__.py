@@ -8,4 +8,6 @@ from .line import follow_line as follow_line
 from .line import followed_pairs as followed_pairs
 from .matching import matched as matched
 from .overlapping import overlaps as overlaps
+from .tracks import Tracked as Tracked
+from .tracks import along as along
 from .tracks import follow as follow

@@ -17,7 +17,7 @@ Indices = npt.NDArray[np.int64]
 #: what a level that is not found again has in place of an index
 LOST = -1
 #: a level has kept its character if more than half of its probability is there
-_HALF = 0.5
+HALF = 0.5
 #: what order weighs, against a probability, where two choices are equal
 _ORDER = 1e-9
 
@@ -73,7 +73,7 @@ def assign(squares: Floats, first: Sequence[slice], second: Sequence[slice]) -> 
     shared = _shared(squares, first, second)
     rows, columns = np.indices(shared.shape)
     taken, to = linear_sum_assignment(shared - _ORDER * (rows - columns) ** 2, maximize=True)
-    kept = shared[taken, to] > _HALF
+    kept = shared[taken, to] > HALF
     result = np.full(len(squares), LOST)
     result[taken[kept]] = to[kept]
     open_rows = result == LOST
@@ -104,9 +104,9 @@ def _mixtures(
     only changed places among themselves.
     """
     while True:
-        inside = squares[:, columns].sum(axis=1) > _HALF
+        inside = squares[:, columns].sum(axis=1) > HALF
         stay = rows & inside
-        filled = squares[stay].sum(axis=0) > _HALF
+        filled = squares[stay].sum(axis=0) > HALF
         keep = columns & filled
         if stay.sum() == rows.sum() and keep.sum() == columns.sum():
             break

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -10,10 +12,14 @@ import numpy.typing as npt
 from ..errors import BandwrightError, StackError
 from ..levels import Levels
 from ..quantities import show
-from .matching import LOST, matched
-from .overlapping import check_levels
+from .matching import HALF, LOST, assign
+from .overlapping import check_levels, overlaps
 
+Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
+
+#: a level that holds less of what it was has begun to mix: a rotation by more than pi/8
+CLEAR = float(np.cos(np.pi / 8) ** 2)
 
 
 def follow(levels: Iterable[Levels | BandwrightError]) -> Indices:
@@ -46,8 +52,9 @@ def follow(levels: Iterable[Levels | BandwrightError]) -> Indices:
     Where two levels meet in an anticrossing, the step decides. Steps longer than its width carry
     each track through it: the tracks cross, and each keeps its place in the structure. Steps much
     shorter see the states mix a little at a time: the tracks turn back from each other, keep their
-    order in energy, and change places. The limit is a step on which the states mix by half, an
-    overlap of 1/sqrt(2); a design in the very middle keeps the order.
+    order in energy, and change places. The limit is an overlap of 1/sqrt(2), where half of a
+    state has gone over, on one step, or on two where the first has turned it by more than pi/8: so
+    a design in the very middle, where the two keep their order in energy, is seen through.
 
     Examples
     --------
@@ -64,32 +71,100 @@ def follow(levels: Iterable[Levels | BandwrightError]) -> Indices:
     """
     if isinstance(levels, Levels | str) or not isinstance(levels, Iterable):
         raise StackError(f"follow: got {show(levels)}; give a list of Levels, [levels, ...]")
-    rows: list[dict[int, int]] = []  # track -> index
-    before: Levels | None = None
-    last: dict[int, int] = {}
-    tracks = 0
+    return along(levels, Tracked())
+
+
+def along(levels: Iterable[Levels | BandwrightError], state: Tracked) -> Indices:
+    """Return what `follow` does, from a state before the first design."""
+    rows: list[dict[int, int]] = []
     for number, one in enumerate(levels):
         if isinstance(one, BandwrightError):
             rows.append({})
             continue
         check_levels(one, f"design {number + 1}")
-        row = {} if before is None else _carried(before, one, last, number)
-        held = set(row.values())
-        fresh = [index for index in range(len(one)) if index not in held]
-        row |= dict(zip(range(tracks, tracks + len(fresh)), fresh, strict=True))
-        tracks += len(fresh)
-        rows.append(row)
-        before, last = one, row
-    result = np.full((len(rows), tracks), LOST)
+        try:
+            state = state.step(one)
+        except BandwrightError as error:
+            raise error.at(f"follow, design {number + 1}") from None
+        rows.append({track: place.at for track, place in state.places.items()})
+    result = np.full((len(rows), state.count), LOST)
     for design, row in enumerate(rows):
         result[design, list(row)] = list(row.values())
     return result
 
 
-def _carried(before: Levels, now: Levels, last: dict[int, int], number: int) -> dict[int, int]:
-    """Return the tracks of one design that the next one has."""
-    try:
-        found = matched(before, now)
-    except BandwrightError as error:
-        raise error.at(f"follow, design {number + 1}") from None
-    return {track: int(found[i]) for track, i in last.items() if found[i] != LOST}
+class Place(NamedTuple):
+    """A track in one design: the index of its level, ``at``.
+
+    ``earlier`` is the place before, if the level has begun to mix here, so that the next design is
+    better compared with that one.
+    """
+
+    levels: Levels
+    at: int
+    earlier: Place | None = None
+
+
+@dataclass(frozen=True)
+class Tracked:
+    """Where each track is after some designs.
+
+    Parameters
+    ----------
+    places : mapping of int to Place
+        By number of the track; those that are lost are not in it.
+    count : int
+        How many tracks there have been.
+    patient : bool
+        Whether a level that begins to mix is judged after the next step; else each step decides.
+    """
+
+    places: Mapping[int, Place] = field(default_factory=dict)
+    count: int = 0
+    patient: bool = True
+
+    def step(self, now: Levels) -> Tracked:
+        """Return where each track is in the next design; levels without a track begin one.
+
+        Raises
+        ------
+        StackError, SolveError
+            As `bandwright.overlaps`.
+        """
+        tracks = sorted(self.places, key=lambda track: self.places[track].at)
+        before = [self.places[track] for track in tracks]
+        every = [p for place in before for p in (place, place.earlier) if p is not None]
+        known = {id(place.levels): place.levels for place in every}
+        squares = {key: overlaps(levels, now) ** 2 for key, levels in known.items()}
+
+        def row(place: Place) -> Floats:
+            return np.asarray(squares[id(place.levels)][place.at])
+
+        sources = [
+            place.earlier
+            if place.earlier is not None and row(place.earlier).max(initial=0.0) > HALF
+            else place
+            for place in before
+        ]
+        each = np.array([row(source) for source in sources]).reshape(len(sources), len(now))
+        found = assign(each, _copies(sources), now.groups).tolist()
+        places: dict[int, Place] = {}
+        for track, place, own, index in zip(tracks, before, each, found, strict=True):
+            if index != LOST:
+                mixed = self.patient and own[index] < CLEAR and place.earlier is None
+                places[track] = Place(now, index, Place(*place[:2]) if mixed else None)
+        fresh = sorted(set(range(len(now))) - set(found))
+        new = {self.count + i: Place(now, index) for i, index in enumerate(fresh)}
+        return Tracked(places | new, self.count + len(fresh), self.patient)
+
+
+def _copies(places: Sequence[Place]) -> list[slice]:
+    """Return which of them, as ranges, are copies of each other."""
+    kinds = [
+        (id(levels), next(g.start for g in levels.groups if g.start <= index < g.stop))
+        for levels, index, _ in places
+    ]
+    if not kinds:
+        return []
+    starts = [i for i, kind in enumerate(kinds) if i == 0 or kind != kinds[i - 1]]
+    return [slice(a, b) for a, b in zip(starts, [*starts[1:], len(kinds)], strict=True)]

@@ -23,6 +23,7 @@ def sweep_text(
     parameters: Sequence[str],
     line: Sequence[Any] | None,
     tolerance: float,
+    followed: bool = False,
 ) -> str:
     """Return a sweep's table, of levels good to a tolerance [eV], under what it is a sweep of."""
     said = (stack.name or "without a name", drive(stack))
@@ -32,7 +33,8 @@ def sweep_text(
         words, unit = unit_of(name)
         head += paragraph("over", f"{words}, {_span(list(dict.fromkeys(columns[name])), unit)}")
     if line is not None:
-        head += paragraph("line", f"{line[0]} to {line[1]}, in every design")
+        where = "in the first design, followed by character" if followed else "in every design"
+        head += paragraph("line", f"{line[0]} to {line[1]}, {where}")
     # a dot is no place to break a heading; a space is
     shown = {
         name.replace(".", " "): cells

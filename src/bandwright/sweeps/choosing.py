@@ -28,6 +28,7 @@ def settle(
     strength: float | None,
     group: float,
     arguments: Mapping[str, Any],
+    follow: bool = False,
 ) -> Task:
     """Return what is done with every design.
 
@@ -37,9 +38,13 @@ def settle(
     Raises
     ------
     StackError
-        If a level is asked from the zero of a stack that names none.
+        If a level is asked from the zero of a stack that names none, or if the line to follow is
+        each design's own.
     """
     hops = isinstance(line, str) and line == STRONGEST
+    if hops and follow:
+        raise StackError("follow: each design's strongest line is not one line; name its levels,"
+                         " as line = (2, 1)")  # fmt: skip
     choice = read_choice(None if hops else line, window, strength)
     names = tuple(axis.name for axis in plan.axes)
     task = Task(plan.design, names, tuple(axis.unit for axis in plan.axes), {}, choice, group,
@@ -48,9 +53,11 @@ def settle(
     probes = _probes(plan, task)
     if chosen is None:
         chosen = _default(probes, arguments)
+        if follow:
+            chosen = {**choose(["upper", "lower"], ()), **chosen}
     _refuse_hopping(chosen, probes)
     about_line = any(isinstance(metric, OfLine) for metric in chosen.values())
-    if choice.pair is None and about_line and not hops:
+    if choice.pair is None and (about_line or follow) and not hops:
         choice = choice._replace(pair=_strongest(probes, choice))
     return Task(task.design, task.names, task.units, chosen, choice, group, arguments)
 

@@ -26,9 +26,10 @@ _OURS = re.compile(r"bandwright(\.|$)")
 _LONGEST = 4000
 
 
-def head_of(plan: Plan, task: Task) -> dict[str, Any]:
+def head_of(plan: Plan, task: Task, follow: bool = False) -> dict[str, Any]:
     """Return the first line of a results file, as JSON values: what decides its rows."""
     choice = task.choice
+    followed = {"followed": True} if follow else {}
     return {
         "bandwright": version("bandwright"),
         "design": _design(plan),
@@ -42,6 +43,7 @@ def head_of(plan: Plan, task: Task) -> dict[str, Any]:
             "levels": None if choice.pair is None else list(choice.pair),
             "window_nm": list(choice.window),
             "strength": choice.strength,
+            **followed,
         },
         "solved": dict(task.arguments),
     }

@@ -19,6 +19,7 @@ from ..stack import Stack
 from .axes import read_axes
 from .choosing import settle
 from .fingerprint import head_of
+from .followed import Following
 from .plan import Plan
 from .progress import Progress
 from .record import Record
@@ -43,6 +44,7 @@ def sweep(
     window: Sequence[object] | None = None,
     strength: float | None = None,
     paired: bool = False,
+    follow: bool = False,
     results: str | os.PathLike[str] | None = None,
     workers: int = 1,
     executor: Executor | None = None,
@@ -75,6 +77,11 @@ def sweep(
     paired : bool
         Whether design i takes value i of each parameter; else all values meet all others, the
         last parameter changing fastest.
+    follow : bool
+        Whether the line is followed by character from design to design (`bandwright.follow`):
+        its levels have the numbers given in the first design, and their own in each other. Each
+        design is followed from the one before it along the last parameter, or from the first of
+        the row before; this process solves it for that, besides whoever computes its row.
     results : path, optional
         A file (CSV) that rows are added to as they come. A sweep that was stopped goes on with
         the same call; a file of anything else is refused and stays as it is.
@@ -130,17 +137,20 @@ def sweep(
         raise StackError(f"paired: got {show(paired)}; True or False is due")
     size = _chunk(chunk, len(plan))
     count = worker_count(workers, executor)
-    task = settle(plan, metrics, line, window, strength, request.group, arguments)
+    if not isinstance(follow, bool):
+        raise StackError(f"follow: got {show(follow)}; True or False is due")
+    task = settle(plan, metrics, line, window, strength, request.group, arguments, follow)
+    following = Following(plan, task) if follow else None
     rows = Rows(plan, task)
     with ExitStack() as stack:
         record = None
         if results is not None:
-            record = Record(results, head_of(plan, task), rows.names, len(plan))
+            record = Record(results, head_of(plan, task, follow), rows.names, len(plan))
             stack.enter_context(record)
             rows.restore(record.rows())
         bar = stack.enter_context(Progress(len(plan), rows.done, progress))
         # closed here, so that no worker outlives a sweep that is stopped
-        work = run(task, _parts(plan, rows.missing, size), count, executor)
+        work = run(task, _parts(plan, rows.missing, size, following), count, executor)
         try:
             for found in stack.enter_context(closing(work)):
                 block = found.only(rows.missing)
@@ -186,13 +196,19 @@ def _chunk(chunk: object, designs: int) -> int:
     return chunk
 
 
-def _parts(plan: Plan, missing: np.ndarray[Any, Any], size: int) -> Iterator[Part]:
+def _parts(
+    plan: Plan, missing: np.ndarray[Any, Any], size: int, following: Following | None
+) -> Iterator[Part]:
     """Yield the chunks of a sweep that are not there yet.
 
     A chunk of which a part is there is solved as a whole, so that its designs keep their company,
     and their last digits.
     """
     for start in range(0, len(plan), size):
+        if not missing[start:].any():
+            return
+        designs = range(start, min(start + size, len(plan)))
+        # a line is followed through chunks that are there as well
+        pairs = None if following is None else following.pairs(designs)
         if missing[start : start + size].any():
-            designs = range(start, min(start + size, len(plan)))
-            yield Part(list(designs), plan.values(designs))
+            yield Part(list(designs), plan.values(designs), pairs)

@@ -5,6 +5,7 @@ What is here runs wherever an executor runs it: a task and a part are sent, a bl
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any, NamedTuple
@@ -15,12 +16,17 @@ import numpy.typing as npt
 from ..errors import BandwrightError, StackError
 from ..levels import Levels
 from ..many import Many, solve_many
-from ..metrics import Choice, Floats, Metric
+from ..metrics import Choice, Floats, Metric, Pair
 from ..stack import Stack
 from .making import Maker, maker
 
 #: a column of some designs: numbers, or whatever a metric gives, None where a design has nothing
 Column = npt.NDArray[Any] | list[Any]
+
+
+#: levels that no design has, for a line that is lost
+LOST_LINE: Pair = (sys.maxsize, 1)
+_LOST = "the line is lost: a level has left the range, or the step before is too long to follow it"
 
 
 @dataclass(frozen=True)
@@ -54,10 +60,15 @@ class Task:
 
 
 class Part(NamedTuple):
-    """Some designs: their numbers from 0, and what each is made with, axis by axis."""
+    """Some designs: their numbers from 0, and what each is made with, axis by axis.
+
+    ``pairs`` are the levels of the followed line in each, None where it is lost; without it the
+    line has its numbers in all.
+    """
 
     designs: list[int]
     values: list[list[Any]]
+    pairs: list[Pair | None] | None = None
 
 
 class Block(NamedTuple):
@@ -125,7 +136,7 @@ def compute(task: Task, part: Part, make: Maker | None = None) -> Block:
     """Return the rows of some designs; ``make``, if it is at hand, is ``task.maker()``."""
     found = solve_part(task, part, make)
     reasons = [None if error is None else _reason(error) for error in found.errors]
-    columns = _columns(task, found, reasons)
+    columns = _columns(task, found, reasons, part.pairs)
     return Block(part.designs, columns, reasons)
 
 
@@ -141,18 +152,21 @@ def _reason(error: BaseException) -> str:
     return " ".join(str(error).split())
 
 
-def _columns(task: Task, found: Solutions, reasons: list[str | None]) -> dict[str, Column]:
+def _columns(
+    task: Task, found: Solutions, reasons: list[str | None], pairs: Sequence[Pair | None] | None
+) -> dict[str, Column]:
     """Return every metric of designs, and add to the reasons of those where one fails."""
     energies = found.energies
+    choice = task.choice if pairs is None else task.choice._replace(pair=None)
     solved = [error is None for error in found.errors]
     columns: dict[str, Column | None] = {}
     for name, metric in task.metrics.items():
         together = getattr(metric, "of_energies", None)
-        column = together(energies, task.choice, task.group) if together else None
+        column = together(energies, choice, task.group) if together else None
         columns[name] = None if column is None else _where_solved(column, solved)
     slow = {name: task.metrics[name] for name, column in columns.items() if column is None}
     if slow:
-        columns |= _one_by_one(slow, task.choice, found, reasons)
+        columns |= _one_by_one(slow, _choices(task.choice, pairs, len(reasons)), found, reasons)
     return {name: columns[name] for name in task.metrics}  # type: ignore[misc]  # all are there
 
 
@@ -163,16 +177,27 @@ def _where_solved(column: npt.NDArray[Any], solved: Sequence[bool]) -> Column:
     return [cell if there else None for cell, there in zip(column.tolist(), solved, strict=True)]
 
 
+def _choices(
+    choice: Choice, pairs: Sequence[Pair | None] | None, count: int
+) -> Sequence[Choice]:
+    """Return the choice of each design, its line by the numbers that it has there."""
+    if pairs is None:
+        return [choice] * count
+    return [choice._replace(pair=pair or LOST_LINE) for pair in pairs]
+
+
 def _one_by_one(
     metrics: Mapping[str, Metric],
-    choice: Choice,
+    choices: Sequence[Choice],
     found: Solutions,
     reasons: list[str | None],
 ) -> dict[str, Column | None]:
     """Return metrics that take more than energies, design by design."""
     columns: dict[str, list[Any]] = {name: [None] * len(reasons) for name in metrics}
     for index, levels in found.levels():
-        solved = choice.solved(levels)
+        if choices[index].pair == LOST_LINE:
+            reasons[index] = reasons[index] or _LOST
+        solved = choices[index].solved(levels)
         for name, metric in metrics.items():
             try:
                 columns[name][index] = _plain(metric(solved), name)
