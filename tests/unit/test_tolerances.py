@@ -259,6 +259,16 @@ def test_draws_that_fail_or_have_not_the_line_are_counted_and_said(levels):
     assert "linear propagation and draws disagree" in said
 
 
+def test_reasons_that_differ_in_a_number_are_said_once():
+    stack = bw.parse_line("20 nm Al0.2Ga0.8As, 8 nm AlxGa1-xAs {x 0 to 0.01, label g},"
+                          " 20 nm Al0.2Ga0.8As", substrate="GaAs")  # fmt: skip
+    found = bw.tolerance(stack, {"g.x_shift": 0.002}, draws=60, chunk=10)
+    assert 10 < found.draws.failed < 50 and found.draws.missing == 0
+    (reason,) = found.draws.reasons
+    assert "a fraction lies between 0 and 1" in reason
+    assert found.cautions[0].endswith(reason)
+
+
 def test_a_level_that_has_changed_its_character_is_said():
     # invented: the deeper of two wells far apart changes from draw to draw
     text = ("20 nm Al0.3Ga0.7As, 7 nm GaAs {label a}, 9 nm Al0.3Ga0.7As, 6.9 nm GaAs {label b},"

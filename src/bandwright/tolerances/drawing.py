@@ -7,6 +7,7 @@ elsewhere than its slopes say) the states are compared with those of the design.
 from __future__ import annotations
 
 import math
+import re
 import warnings
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
@@ -33,8 +34,9 @@ NEARER = 0.5
 OFF = 0.5e-3
 #: how far above the upper level is looked if the usual range leaves it out [eV]
 ROOM = 0.1
-#: reasons kept word by word
+#: reasons kept, of those that differ in more than a number
 MOST_REASONS = 5
+_NUMBER = re.compile(r"[-+]?\d+\.?\d*(?:e[-+]?\d+)?")
 
 
 class Band(NamedTuple):
@@ -61,7 +63,7 @@ class Draws:
         Draws where a level of that number has another character than in the design; their
         wavelength is still that of the numbers.
     reasons : tuple of str
-        Why draws failed, the first few.
+        Why draws failed: the first few that differ in more than a number.
     """
 
     wavelengths_um: Floats
@@ -153,16 +155,15 @@ def draw(
     """
     work = _Work.of(levels, line, spreads, slopes)
     lengths, failed, missing, unlike = [np.zeros(0)], 0, 0, 0
-    reasons: dict[str, None] = {}
+    reasons: dict[str, str] = {}
     for steps in _steps(spreads, draws, seed, chunk):
         part = work.solved(steps)
         lengths.append(part.lengths)
         failed += part.failed
         missing += int(np.isnan(part.lengths).sum()) - part.failed
         unlike += part.unlike
-        if len(reasons) < MOST_REASONS:
-            reasons |= dict.fromkeys(part.reasons)
-    said = tuple(reasons)[:MOST_REASONS]
+        reasons = part.reasons | reasons  # the first of each kind stays
+    said = tuple(reasons.values())[:MOST_REASONS]
     return Draws(np.concatenate(lengths), seed, failed, missing, unlike, said, spreads)
 
 
@@ -176,12 +177,12 @@ def _steps(spreads: tuple[Spread, ...], draws: int, seed: int, chunk: int) -> It
 
 
 class _Part(NamedTuple):
-    """Some draws: wavelengths [um], and how many went wrong."""
+    """Some draws: wavelengths [um], how many went wrong, and a reason of each kind."""
 
     lengths: Floats
     failed: int
     unlike: int
-    reasons: list[str]
+    reasons: dict[str, str]
 
 
 @dataclass(frozen=True)
@@ -233,7 +234,9 @@ class _Work:
         unlike = sum(
             self._is_another(many[index]) for index, place in enumerate(places) if doubtful[place]
         )
-        reasons = [" ".join(str(error).split()) for error in errors[:MOST_REASONS]]
+        reasons: dict[str, str] = {}
+        for text in (" ".join(str(error).split()) for error in errors):
+            reasons.setdefault(_NUMBER.sub("#", text), text)
         return _Part(HC / photons * 1e-3, len(errors), unlike, reasons)
 
     def _photons(self, energies: Floats, many: Many, places: Sequence[int]) -> Floats:
