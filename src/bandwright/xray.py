@@ -114,8 +114,7 @@ class XrayPattern:
     @property
     def substrate_tilt_deg(self) -> float:
         """Angle between the reflecting planes of the substrate and its surface [degrees]."""
-        h, k, l = self.reflection  # noqa: E741
-        return math.degrees(math.atan2(math.hypot(h, k), l))
+        return self._tilt(self.reflection[2] / self.substrate_nm)
 
     def angle_deg(self, order: int) -> float:
         """Return the Bragg angle of a satellite [degrees], 0 for the zero order.
@@ -125,9 +124,20 @@ class XrayPattern:
         StackError
             If it would be beyond 90 degrees.
         """
-        along = self.reflection[2] / self.mean_perpendicular_nm + order / self.period_nm
         what = f"satellite {order:+d}" if order else "the zero order"
-        return self._angle(along, what)
+        return self._angle(self._along(order), what)
+
+    def tilt_deg(self, order: int) -> float:
+        """Return the angle between a satellite's reciprocal vector and the surface's normal."""
+        return self._tilt(self._along(order))
+
+    def _along(self, order: int) -> float:
+        """Return the reciprocal length of a satellite along growth [1/nm]."""
+        return self.reflection[2] / self.mean_perpendicular_nm + order / self.period_nm
+
+    def _tilt(self, along: float) -> float:
+        h, k, _ = self.reflection
+        return math.degrees(math.atan2(math.hypot(h, k) / self.substrate_nm, along))
 
     def _angle(self, along: float, what: str) -> float:
         """Return the Bragg angle of a reciprocal length along growth [1/nm], in degrees."""
@@ -156,6 +166,7 @@ class XrayPattern:
             "order": [order for order, _ in rows],
             "bragg_angle_deg": [angle for _, angle in rows],
             "two_theta_deg": [2.0 * angle for _, angle in rows],
+            "tilt_deg": [self.tilt_deg(order) for order, _ in rows],
             "from_substrate_arcsec": [3600.0 * (angle - zero) for _, angle in rows],
         }
 
@@ -163,8 +174,9 @@ class XrayPattern:
     def table(self) -> pd.DataFrame:
         """One row a satellite, index ``order``: angles, and distance from the substrate's.
 
-        ``from_substrate_arcsec`` is positive at the larger angle. Orders beyond 90 degrees are
-        left out.
+        ``tilt_deg`` is the angle of the reflecting planes to the surface, and
+        ``from_substrate_arcsec`` the difference of Bragg angles, positive at the larger one.
+        Orders beyond 90 degrees are left out.
         """
         return frame(self.columns, index="order")
 
@@ -183,6 +195,11 @@ class XrayPattern:
                 " sublattices scatters"
             )
         tilt, angle = self.substrate_tilt_deg, self.substrate_deg
+        if tilt > 0.0:
+            texts.append(
+                f"reflection {_named(self.reflection)}: its planes are tilted, by another angle in"
+                " each order: turning the wafer alone shows differences of Bragg angle and tilt"
+            )
         if tilt >= angle:
             texts.append(
                 f"reflection {_named(self.reflection)}: its planes are tilted by {tilt:.2f}"

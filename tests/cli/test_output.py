@@ -279,3 +279,14 @@ def test_xray_as_json_and_csv(run):
     status, out, err = run(*ask, "--format", "csv")
     assert [float(r["bragg_angle_deg"]) for r in rows(out)] == pattern.columns["bragg_angle_deg"]
     assert "period     18 nm (9 times): well + barrier" in err and "kinematic" in err
+
+
+@pytest.mark.parametrize("command", ["strain", "xray"])
+def test_strain_and_xray_as_a_page_of_html(command, run, tmp_path):
+    path = tmp_path / "page.html"
+    ask = [command, PAIRS, "--substrate", "GaAs", "--output", path]
+    more = ["--balance", "well.thickness"] if command == "strain" else []
+    assert run(*ask, *more) == (0, "", "")
+    page = path.read_text(encoding="utf-8")
+    assert page.startswith("<!DOCTYPE html>") and page.count("<table>") == 1
+    assert ("<b>balance</b> well.thickness from 8 nm to" in page) == (command == "strain")

@@ -114,7 +114,9 @@ def test_a_tilted_reflection_keeps_the_substrates_lattice_in_the_plane():
     found = pattern(GROUP, "115")
     assert found.zero_order_deg == pytest.approx(angle(A_GAAS, MEAN, indices=(1, 1, 5)), abs=2e-6)
     assert found.substrate_tilt_deg == pytest.approx(15.7932, abs=1e-4)  # atan(sqrt 2/5)
-    assert found.cautions == ()
+    tilt = math.degrees(math.atan2(math.sqrt(2.0) / A_GAAS, 5.0 / MEAN))
+    assert found.table.loc[0, "tilt_deg"] == pytest.approx(tilt, rel=1e-9)
+    assert found.cautions[0].startswith("reflection 115: its planes are tilted, by another angle")
     assert found.zero_order_deg == pattern(GROUP, "-1 1 5").zero_order_deg
 
 
@@ -200,12 +202,12 @@ def test_a_reflection_that_shows_no_layers(given):
 def test_a_weak_reflection_is_said_to_be():
     (text,) = pattern(GROUP, "002").cautions
     assert text == "reflection 002 is weak: only the difference of both sublattices scatters"
-    assert pattern(GROUP, "224").cautions == ()
+    assert not any("weak" in text for text in pattern(GROUP, "224").cautions)
     assert pattern(GROUP, "006").cautions[0].startswith("reflection 006 is weak")
 
 
 def test_a_reflection_from_below_the_surface_is_said_to_be():
-    (text,) = pattern(GROUP, "111").cautions
+    text = pattern(GROUP, "111").cautions[-1]
     assert text.startswith("reflection 111: its planes are tilted by 54.74 degrees, more than")
 
 

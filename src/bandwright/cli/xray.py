@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import argparse
 
-from .words import STACK_HELP, Answer, Parser, output_options, stack_of, stack_options
+from .words import FORMATS, STACK_HELP, Answer, Parser, output_options, stack_of, stack_options
 
 
 def options(parser: Parser) -> None:
@@ -22,12 +22,13 @@ def options(parser: Parser) -> None:
     group.add_argument(
         "--orders", metavar="N", type=int, default=3, help="satellites on each side, 3"
     )
-    output_options(parser)
+    output_options(parser, (*FORMATS, "markdown", "html"))
 
 
 def run(args: argparse.Namespace) -> Answer:
     """Return where X-ray diffraction will find a stack."""
     from ..report import data, strained
+    from ..report.html import html_page
     from ..report.text import sheet
     from ..xray import xray_pattern
 
@@ -35,6 +36,10 @@ def run(args: argparse.Namespace) -> Answer:
     pattern = xray_pattern(stack, args.reflection, args.wavelength, orders=args.orders)
     if args.format == "text":
         return Answer(strained.xray_text(pattern))
+    if args.format == "markdown":
+        return Answer(strained.xray_markdown(pattern))
+    if args.format == "html":
+        return Answer(html_page("X-ray positions", strained.xray_html(pattern)))
     facts = strained.xray_facts(pattern)[3:]
     beside = sheet([*facts, *strained.xray_notes(pattern)])
     if args.format == "csv":

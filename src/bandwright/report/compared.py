@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from .data import Columns
 from .facts import Fact, drive, grown, held_at
 from .grid import DIGITS, cell, unit_of
-from .html import html_facts, html_table
+from .html import html_facts, html_page, html_table
 
 if TYPE_CHECKING:
     from ..stack import Stack
@@ -59,12 +59,22 @@ def markdown_table(columns: Mapping[str, Sequence[Any]]) -> str:
     return "".join(f"| {' | '.join(map(_escaped, row))} |\n" for row in (heads, rules, *rows))
 
 
+def markdown_facts(labelled: Iterable[Fact]) -> str:
+    r"""Return labelled sentences as a list in Markdown.
+
+    Examples
+    --------
+    >>> print(markdown_facts([("model", "one-band")]), end="")
+    - **model** one-band
+    """
+    return "".join(f"- **{label}** {_escaped(text)}\n" for label, text in labelled)
+
+
 def compare_markdown(
     stacks: Sequence[Stack], columns: Columns, cautions: Sequence[Sequence[str]] = ()
 ) -> str:
     """Return a comparison in Markdown: the table, then what each design is."""
-    facts = facts_of(stacks, columns, cautions)
-    listed = "".join(f"- **{label}** {_escaped(text)}\n" for label, text in facts)
+    listed = markdown_facts(facts_of(stacks, columns, cautions))
     return f"{markdown_table(shown_columns(columns))}\n{listed}"
 
 
@@ -73,10 +83,7 @@ def compare_html(
 ) -> str:
     """Return a comparison as a page of HTML that needs no other file."""
     body = html_table(shown_columns(columns)) + html_facts(facts_of(stacks, columns, cautions))
-    return (
-        '<!DOCTYPE html>\n<html lang="en"><head><meta charset="utf-8"><title>Designs side by side'
-        f"</title></head><body>\n{body}\n</body></html>\n"
-    )
+    return html_page("Designs side by side", body)
 
 
 def _escaped(text: str) -> str:

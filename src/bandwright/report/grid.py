@@ -76,6 +76,7 @@ DIGITS = {
     "critical_thickness_nm": ".2f",
     "critical_in_group_nm": ".2f",
     "bragg_angle_deg": ".4f",
+    "tilt_deg": ".4f",
     "two_theta_deg": ".4f",
     "from_substrate_arcsec": "+.1f",
 }

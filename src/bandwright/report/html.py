@@ -56,6 +56,20 @@ def html_facts(labelled: Iterable[Fact]) -> str:
     )
 
 
+def html_page(title: str, body: str) -> str:
+    """Return a page of HTML that needs no other file.
+
+    Examples
+    --------
+    >>> html_page("Wells", "<p>two</p>").splitlines()[1]
+    '<html lang="en"><head><meta charset="utf-8"><title>Wells</title></head><body>'
+    """
+    return (
+        f'<!DOCTYPE html>\n<html lang="en"><head><meta charset="utf-8"><title>{escape(title)}'
+        f"</title></head><body>\n{body}\n</body></html>\n"
+    )
+
+
 def levels_html(levels: Levels) -> str:
     """Return levels as HTML: what was solved, the table, the cautions."""
     columns, digits = level_columns(levels)

@@ -1,10 +1,11 @@
-"""Strain and X-ray positions of a stack: the text, the HTML, and one JSON object."""
+"""Strain and X-ray positions of a stack: text, HTML, Markdown, and one JSON object."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
+from .compared import markdown_facts, markdown_table
 from .data import Columns, plain, rows_of, stack_object
 from .facts import Fact, grown
 from .grid import grid
@@ -19,7 +20,8 @@ if TYPE_CHECKING:
 PREFACTORS = (
     "critical thickness by Matthews and Blakeslee (1974), K = 8 pi for a free surface, 4 pi for a "
     "single layer between others, 2 pi for a superlattice: a layer of a repeated group against "
-    "the others of it, once the group has come off the substrate's lattice"
+    "the others of it, once the group has come off the substrate's lattice; metastable films go "
+    "beyond it"
 )
 KINEMATIC = (
     "kinematic positions, where Bragg's law puts them: no refraction, no dynamical shift, no "
@@ -100,10 +102,17 @@ def mismatch_text(found: Mismatches, balances: Sequence[Balance] = ()) -> str:
     return page(sheet(mismatch_facts(found)), grid(shown_columns(found)), notes)
 
 
-def mismatch_html(found: Mismatches) -> str:
+def mismatch_html(found: Mismatches, balances: Sequence[Balance] = ()) -> str:
     """Return the strain of a stack as HTML."""
+    notes = mismatch_notes(found, balances)
     table = html_table(shown_columns(found))
-    return html_facts(mismatch_facts(found)) + table + html_facts(mismatch_notes(found))
+    return html_facts(mismatch_facts(found)) + table + html_facts(notes)
+
+
+def mismatch_markdown(found: Mismatches, balances: Sequence[Balance] = ()) -> str:
+    """Return the strain of a stack as Markdown."""
+    notes = mismatch_notes(found, balances)
+    return _markdown(mismatch_facts(found), shown_columns(found), notes)
 
 
 def mismatch_object(found: Mismatches, balances: Sequence[Balance] = ()) -> dict[str, Any]:
@@ -157,6 +166,14 @@ def xray_facts(pattern: XrayPattern) -> list[Fact]:
     ]  # fmt: skip
 
 
+def shown_satellites(pattern: XrayPattern) -> Columns:
+    """Return the columns of the satellites, the tilt where there is one."""
+    columns = pattern.columns
+    if pattern.substrate_tilt_deg == 0.0:
+        del columns["tilt_deg"]
+    return columns
+
+
 def xray_notes(pattern: XrayPattern) -> list[Fact]:
     """Return what the positions leave out, and the cautions."""
     return [("note", KINEMATIC), *(("caution", text) for text in pattern.cautions)]
@@ -164,13 +181,19 @@ def xray_notes(pattern: XrayPattern) -> list[Fact]:
 
 def xray_text(pattern: XrayPattern) -> str:
     """Return the X-ray positions of a stack as text."""
-    return page(sheet(xray_facts(pattern)), grid(pattern.columns), sheet(xray_notes(pattern)))
+    table = grid(shown_satellites(pattern))
+    return page(sheet(xray_facts(pattern)), table, sheet(xray_notes(pattern)))
 
 
 def xray_html(pattern: XrayPattern) -> str:
     """Return the X-ray positions of a stack as HTML."""
-    table = html_table(pattern.columns)
+    table = html_table(shown_satellites(pattern))
     return html_facts(xray_facts(pattern)) + table + html_facts(xray_notes(pattern))
+
+
+def xray_markdown(pattern: XrayPattern) -> str:
+    """Return the X-ray positions of a stack as Markdown."""
+    return _markdown(xray_facts(pattern), shown_satellites(pattern), xray_notes(pattern))
 
 
 def xray_object(pattern: XrayPattern) -> dict[str, Any]:
@@ -191,3 +214,7 @@ def xray_object(pattern: XrayPattern) -> dict[str, Any]:
         "note": KINEMATIC,
         "cautions": list(pattern.cautions),
     }
+
+
+def _markdown(facts: Sequence[Fact], columns: Columns, notes: Sequence[Fact]) -> str:
+    return f"{markdown_facts(facts)}\n{markdown_table(columns)}\n{markdown_facts(notes)}"
