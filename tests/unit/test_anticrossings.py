@@ -150,6 +150,28 @@ def test_a_thickness_in_nm_in_monolayers_and_of_a_function():
     assert listed["splitting_meV"].iloc[0] == pytest.approx(nm["splitting_meV"].iloc[0], rel=1e-5)
 
 
+def test_a_bias_and_a_table_of_designs(found):
+    row = found.iloc[0]
+    volts = bw.anticrossings(PAIR, {"bias": "-0.3 V..-0.05 V step 0.01 V"})
+    assert volts["splitting_meV"].tolist() == pytest.approx([row["splitting_meV"]], rel=1e-6)
+    thickness = 15 + 5 + 4 + 8 + 15  # the bias falls across all of it
+    off = abs(-volts["bias_V"].iloc[0] / thickness * 1e4 - row["field_kV_per_cm"])
+    assert off < 2e-3 * row["half_width_kV_per_cm"]
+    table = pd.DataFrame({"field_kV_per_cm": [10.0, 20.0, 30.0, 40.0, 50.0]})
+    given = bw.anticrossings(PAIR, table)
+    assert given["splitting_meV"].tolist() == pytest.approx([row["splitting_meV"]], rel=1e-6)
+
+
+def test_more_than_two_that_meet():
+    # the five wells of a superlattice all come apart from a field of zero on
+    wells = bw.parse_line(f"25 nm {WALL}, 5 * (6 nm GaAs, 4 nm {WALL}), 20 nm {WALL}",
+                          substrate="GaAs")  # fmt: skip
+    table = bw.anticrossings(wells, {"field": "0 kV/cm..20 kV/cm step 1 kV/cm"}, below="0.16 eV")
+    ends = table[table["at_end"]]
+    assert (1, 2) in set(zip(ends["lower"], ends["upper"], strict=True))
+    assert (abs(ends["exchange"] - 1.0) > 0.2).all()
+
+
 def test_designs_that_fail_are_left_out_and_said():
     def design(field):
         if field > 50.0:

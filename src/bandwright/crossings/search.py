@@ -76,10 +76,13 @@ def anticrossings(
     Notes
     -----
     Near the middle two levels are sqrt(splitting^2 + slope^2 (x - x0)^2) apart. Levels are
-    followed by overlap (`bandwright.follow`) along the values given, which shows who meets whom;
-    minima of the spacing where the two also exchange their character are refined by a bounded
-    search with levels of 1e-9 eV. Levels that truly cross have a splitting of zero within its
-    error.
+    followed by overlap along the values given, each step judged by itself; tracks that cross, and
+    minima of the spacing at which two levels begin to exchange their character, are refined with
+    levels of 1e-9 eV: the square of the spacing is nearly a parabola, so that a few designs give
+    its vertex to a thousandth of the half-width (where it is none, a bounded search does). Levels
+    that truly cross have a splitting of zero within its error. Where three or more meet at one
+    value, as the copies of a superlattice without a field, the rows are pairs of them, and
+    ``exchange`` is far from 1.
 
     Examples
     --------
