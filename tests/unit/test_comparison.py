@@ -173,6 +173,15 @@ def test_sigma_and_yield_are_those_of_the_tolerance():
     pickle.loads(pickle.dumps(OfTolerance("sigma_um", tuple(spreads.items()))))
 
 
+def test_a_sweep_takes_sigma_as_a_metric():
+    sigma = OfTolerance("sigma_um", (("every thickness", "0.3 ML"),))
+    stack = bw.parse_line("30 nm Al0.3Ga0.7As, 7 nm GaAs {label well}, 30 nm Al0.3Ga0.7As",
+                          substrate="GaAs")  # fmt: skip
+    table = bw.sweep(stack, {"well.thickness": "7 nm..8 nm step 1 nm"}, metrics={"sigma_um": sigma})
+    wanted = bw.compare([stack, design(8, substrate="GaAs")], {"sigma_um": sigma})
+    assert table["sigma_um"].tolist() == pytest.approx(wanted["sigma_um"].tolist(), rel=1e-6)
+
+
 def test_a_spread_that_one_design_has_not_is_its_reason():
     table = bw.compare([design(8)], ["sigma_um"], spreads={"well.thickness": "1 nm"})
     assert "no layer has the label 'well'" in table.loc[1, "reason"]

@@ -118,6 +118,8 @@ def test_wrong_arguments_are_wrong_for_all():
         bw.solve_many([single(6.0)], tolerance="1 nm")
     with pytest.raises(SolveError, match="at_most"):
         bw.solve_many([single(6.0)], at_most=0)
+    with pytest.raises(StackError, match="stack 2: got 7; a Stack is due"):
+        bw.solve_many([single(6.0), 7])
 
 
 def test_a_generator_is_enough():
