@@ -190,6 +190,16 @@ def test_designs_that_fail_are_left_out_and_said():
         bw.anticrossings(never, {"field": "10..60 count 11"})
 
 
+def test_a_design_that_fails_where_the_levels_are_closest():
+    def design(field):
+        if 34.0 < field < 35.0:
+            raise ValueError("no such field")
+        return PAIR.replace(field=f"{field} kV/cm")
+
+    with pytest.raises(StackError, match=r"design\(field=34.*ValueError: no such field"):
+        bw.anticrossings(design, {"field": "10..60 count 11"})
+
+
 # -- parts ------------------------------------------------------------------------------------
 
 
