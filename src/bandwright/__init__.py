@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from .crossings import anticrossings as anticrossings
     from .errors import BandwrightError as BandwrightError
     from .errors import BandwrightWarning as BandwrightWarning
+    from .errors import GrowthError as GrowthError
     from .errors import MaterialError as MaterialError
     from .errors import PictureError as PictureError
     from .errors import QuantityError as QuantityError
@@ -35,6 +36,14 @@ if TYPE_CHECKING:
     from .following import overlaps as overlaps
     from .gradients import Gradient as Gradient
     from .gradients import LineGradient as LineGradient
+    from .growth import AlloyRate as AlloyRate
+    from .growth import Calibrations as Calibrations
+    from .growth import Cell as Cell
+    from .growth import GrowthSheet as GrowthSheet
+    from .growth import growth_sheet as growth_sheet
+    from .growth import read_calibrations as read_calibrations
+    from .growth import stack_from_sheet as stack_from_sheet
+    from .growth import write_calibrations as write_calibrations
     from .levels import Levels as Levels
     from .levels import solve as solve
     from .lines import Lines as Lines
@@ -69,6 +78,7 @@ _ROOMS = {
     "errors": (
         "BandwrightError",
         "BandwrightWarning",
+        "GrowthError",
         "MaterialError",
         "PictureError",
         "QuantityError",
@@ -103,6 +113,16 @@ _ROOMS = {
     "tolerances": ("Tolerance", "tolerance"),
     "aiming": ("Aimed", "aim"),
     "crossings": ("anticrossings",),
+    "growth": (
+        "AlloyRate",
+        "Calibrations",
+        "Cell",
+        "GrowthSheet",
+        "growth_sheet",
+        "read_calibrations",
+        "stack_from_sheet",
+        "write_calibrations",
+    ),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
 

@@ -56,6 +56,10 @@ class MaterialError(BandwrightError, ValueError):
     """A formula or material file that gives no usable number."""
 
 
+class GrowthError(BandwrightError, ValueError):
+    """Calibrations that can't be used, or a layer that they can't grow."""
+
+
 class UnknownName(BandwrightError, KeyError):
     """A name that nothing has; close matches are part of the text."""
 

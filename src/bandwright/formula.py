@@ -206,15 +206,17 @@ def text(composition: Composition) -> str:
         element + _amount(fraction)
         for site in composition.sublattices
         for element, fraction in site
-        if np.any(np.asarray(fraction) != 0.0)
+        if (fraction != 0.0 if isinstance(fraction, float) else np.any(fraction != 0.0))
     )
 
 
 def _amount(fraction: Value) -> str:
-    values = np.asarray(fraction)
-    if values.ndim and values.min() != values.max():
-        return f"({values.flat[0]:.4g} to {values.flat[-1]:.4g})"
-    value = float(values.flat[0])
+    if isinstance(fraction, float | int):
+        value = float(fraction)
+    elif fraction.min() != fraction.max():
+        return f"({fraction.flat[0]:.4g} to {fraction.flat[-1]:.4g})"
+    else:
+        value = float(fraction.flat[0])
     short = f"{value:.12g}"
     written = short if float(short) == value else repr(value)
     return "" if written == "1" else written
@@ -308,6 +310,9 @@ def _sites(formula: str, named: tuple[str, ...]) -> tuple[tuple[str, ...], tuple
 
 def _check_sum(formula: str, site: Sublattice, parts: tuple[_Part, ...]) -> None:
     """Refuse fractions that do not add up to 1, and say what would."""
+    plain = [f for _, f in site if isinstance(f, float)]
+    if len(plain) == len(site) and abs(sum(plain) - 1.0) <= _ROUNDING:
+        return
     with np.errstate(invalid="ignore"):  # infinite fractions are refused below
         total = sum((np.asarray(f, dtype=float) for _, f in site), np.asarray(0.0))
     wrong = np.abs(total - 1.0)
@@ -357,6 +362,8 @@ def _checked(
     formula: str, element: str, fraction: Value, given: dict[str, Value]
 ) -> tuple[str, Value]:
     """Refuse a fraction outside 0 to 1; rounding of a sum's last digits is set to the bound."""
+    if isinstance(fraction, float) and -1e-12 <= fraction <= 1.0 + _ROUNDING:
+        return element, min(max(fraction, 0.0), 1.0)
     values = np.asarray(fraction, dtype=float)
     inside = (values >= -1e-12) & (values <= 1.0 + _ROUNDING)
     if not np.all(inside):

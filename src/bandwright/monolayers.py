@@ -41,13 +41,18 @@ def rounded(levels: Levels) -> Stack:
 
 def in_monolayers(levels: Levels) -> Levels:
     """Return the levels of the `rounded` stack, as many as the design has at most."""
+    return solved_like(levels, rounded(levels))
+
+
+def solved_like(levels: Levels, grown: Stack) -> Levels:
+    """Return the levels of a stack that is nearly the design, as many as that has at most."""
     below = None
     if len(levels) and levels.boxed.any():
         below = f"{float(levels.energies[-1]) + _ROOM!r} eV"
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", BandwrightWarning)  # said about the design already
         return solve(
-            rounded(levels), below=below, at_most=max(len(levels), 1),
+            grown, below=below, at_most=max(len(levels), 1),
             tolerance=f"{levels.tolerance!r} eV", group=f"{levels.group!r} eV",
             bands=levels.profile.bands,
         )  # fmt: skip

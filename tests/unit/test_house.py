@@ -45,6 +45,7 @@ HOUSE = [
     "tolerances",
     "wishes",
     "comparison",
+    "growth",
     "report",
     "pictures",
     "cli",
@@ -55,6 +56,7 @@ HOUSE = [
 # look up.
 HANDED_ON = {
     ("aiming", "report"),
+    ("growth", "report"),
     ("levels", "cautions"),
     ("levels", "gradients"),
     ("levels", "lines"),

@@ -23,6 +23,7 @@ COMMANDS = {
     "aim": ("STACK --free NAME=SPAN", "Find the design whose lines have the wavelengths asked."),
     "anticrossings": ("STACK --over NAME=RANGE", "Find where levels come closest along a range."),
     "tolerance": ("STACK --spread NAME=AMOUNT", "Find what a growth's spreads do to wavelengths."),
+    "grow": ("STACK --calibrations FILE", "Write the growth sheet of a stack, layer by layer."),
     "strain": ("STACK", "Find mismatch, stress and critical thickness of every layer."),
     "xray": ("STACK", "Find where X-ray diffraction will see a stack: period, satellites."),
     "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),

@@ -40,7 +40,14 @@ DENSITY = Kind(
     (("1/nm^2", "1/length^2"), ("1/nm^3", "1/length^3")),
 )
 INVERSE_ENERGY = Kind("an inverse energy", "0.56 / eV", ("1/energy",), (("1/eV", "1/energy"),))
-KINDS = (LENGTH, THICKNESS, ENERGY, FIELD, VOLTAGE, TEMPERATURE, DENSITY, INVERSE_ENERGY)
+RATE = Kind(
+    "a growth rate", "0.7 ML/s", ("monolayers/time", "length/time"), (("nm/s", "length/time"),)
+)
+DURATION = Kind("a time", "5 s", ("time",), (("s", "time"),))
+KINDS = (
+    *(LENGTH, THICKNESS, ENERGY, FIELD, VOLTAGE, TEMPERATURE, DENSITY, INVERSE_ENERGY),
+    *(RATE, DURATION),
+)
 
 _LONG_NAMES: Mapping[str, tuple[str, ...]] = {
     "nm": ("nanometer", "nanometers", "nanometre", "nanometres"),
@@ -50,6 +57,9 @@ _LONG_NAMES: Mapping[str, tuple[str, ...]] = {
     "ueV": ("μeV",),
     "uV": ("μV",),
     "K": ("kelvin", "Kelvin"),
+    "s": ("sec", "second", "seconds"),
+    "min": ("minute", "minutes"),
+    "h": ("hr", "hour", "hours"),
 }
 _FACTORS: Mapping[str, tuple[str, str]] = {
     "m": ("length", "1e9"),
@@ -75,6 +85,10 @@ _FACTORS: Mapping[str, tuple[str, str]] = {
     "mK": ("temperature", "1e-3"),
     "°C": ("celsius", "1"),
     "degC": ("celsius", "1"),
+    "ms": ("time", "1e-3"),
+    "s": ("time", "1"),
+    "min": ("time", "60"),
+    "h": ("time", "3600"),
 }
 _UNITS: dict[str, tuple[str, Fraction]] = {
     spelling: (dimension, Fraction(factor))
@@ -194,6 +208,7 @@ def _noun(dimension: str) -> str:
         "frequency": "a frequency",
         "celsius": "a temperature",
         "1/length^3": "a density",
+        "length/time": "a growth rate",
         "": "a plain number",
     }
     return other.get(dimension, f"a quantity of kind {dimension}")

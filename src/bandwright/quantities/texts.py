@@ -23,6 +23,13 @@ class Density(NamedTuple):
     kind: str
 
 
+class Rate(NamedTuple):
+    """A growth rate as written: its value and ``"nm/s"`` or ``"ML/s"``."""
+
+    value: float
+    unit: str
+
+
 def length_text(value: Length | float) -> str:
     """Return the shortest text that reads back as exactly this length [nm, or ML].
 
@@ -104,6 +111,17 @@ def inverse_energy_text(value: float) -> str:
     '0.56 / eV'
     """
     return f"{number_text(value)} / eV"
+
+
+def rate_text(value: Rate) -> str:
+    """Return the shortest text that reads back as exactly this rate.
+
+    Examples
+    --------
+    >>> rate_text(Rate(0.7, "ML/s"))
+    '0.7 ML/s'
+    """
+    return f"{number_text(value.value)} {value.unit}"
 
 
 def number_text(value: float, power: int = 0) -> str:

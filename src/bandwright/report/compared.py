@@ -39,7 +39,9 @@ def facts_of(
     return told
 
 
-def markdown_table(columns: Mapping[str, Sequence[Any]]) -> str:
+def markdown_table(
+    columns: Mapping[str, Sequence[Any]], digits: Mapping[str, str] = DIGITS
+) -> str:
     r"""Return columns as a table in Markdown, numbers flush right.
 
     Examples
@@ -54,7 +56,7 @@ def markdown_table(columns: Mapping[str, Sequence[Any]]) -> str:
         words, unit = unit_of(name)
         heads.append(f"{words} ({unit})" if unit else words)
         rules.append("---" if any(isinstance(value, str) for value in values) else "---:")
-    rows = [[cell(name, value, DIGITS) for name, value in zip(columns, row, strict=True)]
+    rows = [[cell(name, value, digits) for name, value in zip(columns, row, strict=True)]
             for row in zip(*columns.values(), strict=True)]  # fmt: skip
     return "".join(f"| {' | '.join(map(_escaped, row))} |\n" for row in (heads, rules, *rows))
 

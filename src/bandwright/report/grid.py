@@ -26,6 +26,8 @@ UNITS = {
     "_per_cm3": "cm-3",
     "_um": "um",
     "_THz": "THz",
+    "_ML_per_s": "ML/s",
+    "_s": "s",
     "_ps": "ps",
     "_fs": "fs",
     "_K": "K",
