@@ -201,6 +201,13 @@ def test_a_superlattice_relaxes_as_a_whole_unless_balanced():
     assert said(balanced, "critical") is None
 
 
+def test_a_superlattice_with_a_grade_relaxes_as_a_whole():
+    # by hand, weighted with t A/a^2: (1.433 x 355.9 - 0.179 x 398.8)/(355.9 + 398.8) = 0.581 %
+    line = "30 nm GaAs, 12 x (8 nm In0.2Ga0.8As, 8 nm GaAsxP1-x {x 1 to 0.95}), 30 nm GaAs"
+    text = said(solve(line, {"substrate": "GaAs"}, at_most=2), "critical")
+    assert "192 nm with a misfit of +0.58%" in text and "though no layer alone is" in text
+
+
 # -- levels -----------------------------------------------------------------------------------
 
 

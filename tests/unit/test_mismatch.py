@@ -109,6 +109,20 @@ def test_levels_and_strain_say_the_same_of_a_layer_that_is_too_thick():
     assert text in levels.cautions
 
 
+def test_levels_and_strain_say_the_same_of_a_whole_that_is_too_thick_or_balanced():
+    stack = bw.parse_line(
+        "30 nm GaAs, 20 x (8 nm In0.2Ga0.8As, 10 nm GaAs0.9P0.1 {label barrier}), 30 nm GaAs",
+        substrate="GaAs",
+    )
+    found = mismatches(stack)
+    with pytest.warns(bw.BandwrightWarning):
+        levels = bw.solve(stack, at_most=1)
+        balanced = bw.solve(found.balanced("barrier.thickness").stack, at_most=1)
+    (text,) = [c for c in found.cautions if "critical" in c]
+    assert "though no layer alone is" in text and text in levels.cautions
+    assert not any("critical" in c for c in balanced.cautions)
+
+
 # -- grades -----------------------------------------------------------------------------------
 
 

@@ -7,10 +7,14 @@ from collections.abc import Iterable, Sequence
 from itertools import groupby
 from typing import NamedTuple
 
+import numpy as np
+
+from ..formula import parse
 from ..levels import Levels
 from ..materials import Library
 from ..profile import LayerFacts
-from ..strain import critical_thickness
+from ..stack import Layer
+from ..strain import biaxial_stiffness, critical_thickness
 from .words import listed
 
 #: lattices that differ by less than this, relative, count as matched
@@ -62,13 +66,27 @@ def _too_thick(levels: Levels, substrate: str) -> list[str]:
     """Return runs of layers strained alike, or else all, beyond their critical thickness."""
     profile = levels.profile
     grown = [profile.facts[index] for index in profile.written]
-    lattice = Library.with_files(levels.stack.materials).lattice(substrate)
+    library = Library.with_files(levels.stack.materials)
+    lattice = library.lattice(substrate)
     texts = runs_too_thick(grown, lattice)
     first, last = strained_part(grown)
     if not texts and last > first and not any(fact.own for fact in grown):
-        film = as_one(grown[first : last + 1], lattice, last < len(grown) - 1)
+        stiff = [
+            _stiffness(written.layer, fact.thickness, library)
+            for written, fact in zip(levels.stack.written(), profile.facts, strict=True)
+        ]
+        weights = [stiff[index] for index in profile.written[first : last + 1]]
+        film = as_one(grown[first : last + 1], lattice, last < len(grown) - 1, weights)
         texts = whole_too_thick(grown[first].name, grown[last].name, film)
     return texts
+
+
+def _stiffness(layer: Layer, thickness: float, library: Library) -> float:
+    """Return the stress in the plane per strain [GPa]; of a grade at half its thickness [nm]."""
+    half = np.array([0.5 * thickness])
+    values = {letter: float(shape.at(half, thickness)[0]) for letter, shape in layer.fractions}
+    c11, c12 = library.stiffness(parse(str(layer.material), **values))
+    return float(biaxial_stiffness(c11, c12))
 
 
 def runs_too_thick(grown: Sequence[LayerFacts], lattice: float) -> list[str]:
@@ -128,10 +146,19 @@ class AsOne(NamedTuple):
     case: str
 
 
-def as_one(film: Sequence[LayerFacts], lattice: float, buried: bool) -> AsOne:
-    """Return neighbouring layers as one film on a substrate of a lattice constant [nm]."""
+def as_one(
+    film: Sequence[LayerFacts], lattice: float, buried: bool, stiffness: Sequence[float] = ()
+) -> AsOne:
+    """Return neighbouring layers as one film on a substrate of a lattice constant [nm].
+
+    Its misfit is the mean by thickness, and by stiffness over lattice constant squared where
+    given: then layers whose stresses balance have none.
+    """
     thickness = sum(fact.thickness for fact in film)
-    misfit = sum(-f.mismatch / (1.0 + f.mismatch) * f.thickness for f in film) / thickness
+    stiff = stiffness or [fact.lattice**2 for fact in film]
+    parts = [f.thickness * a / f.lattice**2 for f, a in zip(film, stiff, strict=True)]
+    misfits = [-f.mismatch / (1.0 + f.mismatch) for f in film]
+    misfit = sum(m * part for m, part in zip(misfits, parts, strict=True)) / sum(parts)
     poisson = sum(_poisson(fact) * fact.thickness for fact in film) / thickness
     case = "single layer" if buried else "free surface"
     return AsOne(thickness, misfit, critical_thickness(misfit, lattice, poisson, case), case)
