@@ -129,7 +129,7 @@ def test_text_where_a_stack_is_due():
     stack = bw.parse_line("9 nm AlAs, 5 nm GaAs, 9 nm AlAs")
     with pytest.raises(StackError, match=r"stacks: got Stack\(.*; give a list of stacks"):
         bw.solve_many(stack)
-    with pytest.raises(StackError, match=r"stack 1: got 'x.toml'; .*read_stack\(path\) reads"):
+    with pytest.raises(StackError, match=r"stack 2: got 'x.toml'; .*read_stack\(path\) reads"):
         bw.solve_many([stack, "x.toml"])
 
 
