@@ -501,6 +501,17 @@ def test_a_table_of_depths_stays_in_nm():
     assert aimed.values.monolayers[0] == round(count)
 
 
+def test_a_composition_that_is_a_function_is_stretched():
+    valley = bw.Layer("10 nm", "AlxGa1-xAs", label="valley",
+                      x=lambda z: 0.3 * np.cos(np.pi * z / 10.0) ** 2)  # fmt: skip
+    wall = bw.Layer("20 nm", "Al0.3Ga0.7As", label="wall")
+    stack = bw.Stack([wall, valley, wall], substrate="GaAs")
+    aimed = bw.aim(stack, {"valley.thickness": "6nm..24nm"}, {"2 to 1": "11 um"})
+    assert aimed.reached and aimed.solves < 15
+    found = bw.solve(aimed.stack).lines().find(2, 1)
+    assert found.wavelength_um == pytest.approx(11.0, abs=1e-5)
+
+
 def test_spans():
     assert split_span(("4 nm", "9 nm"), "well") == ("4 nm", "9 nm")
     with pytest.raises(QuantityError, match="well: got 7; write both ends"):

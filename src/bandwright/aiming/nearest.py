@@ -6,6 +6,8 @@ by `scipy.optimize.nnls`; the design is solved once a step, its slopes are exact
 
 from __future__ import annotations
 
+from typing import NamedTuple
+
 import numpy as np
 import numpy.typing as npt
 
@@ -15,10 +17,20 @@ Floats = npt.NDArray[np.float64]
 
 #: a target is met when its energy is this close, relative
 MET = 1e-9
-#: a step that promises less than this of what is left is none
-_PROMISE = 1e-7
-#: first and smallest reach of a step, in scaled parameters
-_REACH, _SHORTEST = 0.5, 1e-5
+#: first reach of a step, in scaled parameters
+_REACH = 0.5
+
+
+class Patience(NamedTuple):
+    """When a search ends: its smallest reach, and what a step must promise of what is left."""
+
+    reach: float
+    promise: float
+
+
+FINE = Patience(1e-5, 1e-7)
+#: of a search that only looks whether a start is worth it, while targets are farther than this
+COARSE, _FAR = Patience(1e-2, 2e-2), 2e-3
 #: where reaches have become so short, what refused a longer step is what ends the search
 _AT_EDGE = 1e-2
 #: weighs a step that no target needs, against deviations
@@ -29,8 +41,9 @@ _MOST = 40
 
 
 def nearest(
-    problem: Problem, x: Floats, near: Point | None = None, close: float = MET
-) -> Point | None:
+    problem: Problem, x: Floats, near: Point | None = None, close: float = MET,
+    patience: Patience = FINE,
+) -> Point | None:  # fmt: skip
     """Return the design nearest to the targets that is found from a start.
 
     Deviations that stay are worth a second order: once a step keeps little of its promise, the
@@ -48,7 +61,8 @@ def nearest(
         rows = _rows(bend) if bends else np.zeros((0, len(x)))
         step = _step(here, reach, rows)
         promised = _merit(here) - _modelled(here, step) - 0.5 * float(np.sum((rows @ step) ** 2))
-        if promised <= _PROMISE * _merit(here) or reach < _SHORTEST:
+        limit = patience if _merit(here) > _FAR else FINE
+        if promised <= limit.promise * _merit(here) or reach < limit.reach:
             break
         there = problem.at(np.clip(here.x + step, 0.0, 1.0), here)
         gain = -np.inf if there is None else _merit(here) - _merit(there)

@@ -13,7 +13,7 @@ from ..levels.solving import check_stack
 from ..quantities import as_energy, show
 from ..stack import Stack
 from .asking import read_wishes
-from .nearest import met, nearest
+from .nearest import COARSE, met, nearest
 from .problem import Point, Problem, at_most
 from .raising import raised
 from .result import Aimed
@@ -25,6 +25,8 @@ Floats = npt.NDArray[np.float64]
 _FINE = 1e-9
 #: starts followed if nothing says, and starts that may lack a level beside them
 _STARTS, _LACKING = 4, 8
+#: places that starts are taken from
+_SPREAD = 100
 
 
 def aim(
@@ -148,7 +150,7 @@ def _best(problem: Problem, starts: int | None) -> tuple[Point, int]:
     best: Point | None = None
     followed, why = 0, ""
     for place in _places(problem.start, most + _LACKING):
-        point = nearest(problem, place, origin)
+        point = nearest(problem, place, origin, patience=COARSE)
         why = why or problem.why
         if point is None:
             continue
@@ -161,6 +163,8 @@ def _best(problem: Problem, starts: int | None) -> tuple[Point, int]:
     if best is None:
         raise StackError(f"targets: {why}, nor has any of {most + _LACKING - 1} other designs"
                          " within the bounds")  # fmt: skip
+    if not met(best):
+        best = nearest(problem, best.x, best) or best
     return best, followed
 
 
@@ -172,16 +176,19 @@ def _rank(point: Point) -> tuple[float, float]:
 
 
 def _places(start: Floats, count: int) -> Iterator[Floats]:
-    """Yield the start, then places spread evenly over the unit box.
+    """Yield the start, then places spread over the unit box, each far from those before.
 
-    They are multiples of powers of 1/g, where g^(n+1) = g + 1, a generalised golden ratio (common
-    practice for evenly spread points).
+    They are taken from multiples of powers of 1/g, where g^(n+1) = g + 1, a generalised golden
+    ratio (common practice for evenly spread points).
     """
-    yield start
-    free = len(start)
     golden = 2.0
     for _ in range(40):
-        golden = (1.0 + golden) ** (1.0 / (free + 1))
-    steps = golden ** -np.arange(1.0, free + 1)
-    for number in range(1, count):
-        yield np.asarray((0.5 + number * steps) % 1.0)
+        golden = (1.0 + golden) ** (1.0 / (len(start) + 1))
+    steps = golden ** -np.arange(1.0, len(start) + 1)
+    spread = (0.5 + np.arange(1, _SPREAD)[:, None] * steps) % 1.0
+    away = np.full(len(spread), np.inf)
+    place = start
+    for _ in range(count):
+        yield place
+        away = np.minimum(away, np.abs(spread - place).max(axis=1))
+        place = spread[np.argmax(away)]

@@ -134,6 +134,8 @@ def numbers_at(profile: Profile, section: Indices, share: Floats) -> tuple[Float
     mass, inverse_gap = numbers.mass[section], numbers.inverse_gap[section]
     for index in np.flatnonzero(numbers.curved):
         here = slice(*np.searchsorted(section, [index, index + 1]))
+        if here.start == here.stop:  # materials are not asked about no point at all
+            continue
         one = profile.sections[index]
         edge[here] = one.edge.at(depth[here])
         mass[here] = one.mass.at(depth[here])
