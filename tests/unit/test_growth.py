@@ -128,6 +128,19 @@ def test_a_mix_of_anions_is_not_implied():
     assert layers(sheet)[0].implied.endswith("As0.6P0.4")
 
 
+@pytest.mark.parametrize("factor", [0.97, 1.05])
+@pytest.mark.parametrize("element", ["Al", "Ga"])
+def test_a_flux_off_by_a_factor_grows_what_the_parameter_says(element, factor):
+    # the shutters of the sheet with another flux: atoms counted here, `flux Al` counts them there
+    text = "30 ML Al0.3Ga0.7As, 22 ML GaAs, 30 ML Al0.3Ga0.7As"
+    sheet = bw.growth_sheet(line(text), REACTOR)
+    off = bw.parameters.replace(line(text), f"flux {element}", factor)
+    there = layers(bw.growth_sheet(off, REACTOR.scaled({element: factor}), whole=False))
+    for before, after in zip(layers(sheet), there, strict=True):
+        assert after.time_s == pytest.approx(before.time_s, rel=1e-12)
+        assert after.difference is None or abs(after.difference) < 1e-12
+
+
 # -- which cells are open ---------------------------------------------------------------------
 
 
@@ -230,6 +243,15 @@ def test_cautions():
     assert "the composition varies, and cells at one rate each give one composition" in graded
 
 
+def test_a_grade_between_equal_ends_is_one_composition():
+    flat, *others = (
+        layers(bw.growth_sheet(line(f"8 nm AlxGa1-xAs {{{x}}}"), REACTOR))[0]
+        for x in ("x 0.3", "x 0.3 to 0.3", "x 0.3 at 0 nm to 0.3 at 8 nm")
+    )
+    assert flat.time_s == pytest.approx(28.0, rel=1e-14)
+    assert all((step.time_s, step.cells) == (flat.time_s, flat.cells) for step in others)
+
+
 def test_no_substrate_counts_atoms_on_the_layers_own_lattice():
     reactor = bw.Calibrations([bw.Cell("In1", "In", "0.6 ML/s", "InAs")])
     (film,) = layers(bw.growth_sheet(line("9 nm InAs", None), reactor))
@@ -243,6 +265,7 @@ def test_no_substrate_counts_atoms_on_the_layers_own_lattice():
 STACKS = {
     "nested": line(NESTED, temperature="77 K", field="12 kV/cm", name="invented"),
     "in ML": line("35.4 ML Al0.3Ga0.7As, 22 ML GaAs, 0.2 ML AlAs"),
+    "wall": line("9 nm GaAs, 8 nm AlAs", ends=("wall", "open"), bias="0.1 V"),
     "own numbers": line("9 nm {edge 200 meV to 100 meV, mass 0.09}, 6 nm GaAs", zero="GaAs"),
     "quadratic": line("9 nm GaAs, 8 nm AlxGa1-xAs {x 0 to 0.3 quadratic}, 9 nm Al0.3Ga0.7As"),
     "points": line("9 nm GaAs, 8 nm AlxGa1-xAs {x 0 at 0 nm to 0.1 at 3 nm to 0.3 at 8 nm}"),
@@ -665,6 +688,17 @@ def test_text_and_markdown_and_html_hold_the_same():
     rows = [row for row in markdown.splitlines() if row.startswith("|")]
     assert len(rows) == len(sheet.steps) + 2
     assert len({row.count("|") for row in rows}) == 1
+
+
+def test_the_head_names_the_rates_that_are_used():
+    rates = bw.Calibrations(
+        [bw.Cell("Ga1", "Ga", "0.7 ML/s", "GaAs", note="invented", date="2026-02-16"), AL],
+        [bw.AlloyRate("AlAs", "0.5 nm/s", note="invented too"), bw.AlloyRate("InAs", "1 nm/s")],
+    )
+    text = str(bw.growth_sheet(line("5 nm GaAs, 3 nm AlAs"), rates))
+    assert "cell       Ga1: Ga 0.7 ML/s on GaAs (2026-02-16, invented)" in text
+    assert "alloy      AlAs: 0.5 nm/s (invented too)" in text
+    assert "Al1" not in text and "InAs" not in text
 
 
 def test_markdown_keeps_a_label_from_ending_its_cell():

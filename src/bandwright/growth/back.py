@@ -10,8 +10,7 @@ from ..errors import GrowthError
 from ..frames import is_table
 from ..frames import rows as rows_of_table
 from ..stack import Stack
-from ..stackfile.keys import settings
-from .rows import read_rows, stack_of_rows
+from .rows import read_rows, said_of, stack_of_rows
 from .sheet import GrowthSheet
 
 if TYPE_CHECKING:
@@ -60,7 +59,7 @@ def stack_from_sheet(
     True
     """
     if isinstance(sheet, GrowthSheet):
-        said = {"order": sheet.order, **settings(sheet.stack), **stack_arguments}
+        said = {**said_of(sheet.stack, sheet.order), **stack_arguments}
         return stack_of_rows(sheet.rows, whole=sheet.whole if whole is None else whole, **said)
     if is_table(sheet):
         rows = rows_of_table(sheet)

@@ -12,7 +12,7 @@ from scipy.integrate import trapezoid
 from ..errors import BandwrightError
 from ..formula import Composition, Sublattice, Value, parse
 from ..materials import BandPoint, Library
-from ..shapes import Flat, Function, Points
+from ..shapes import Function, Points
 from ..stack import Layer, Stack, Written
 
 Floats = npt.NDArray[np.float64]
@@ -55,7 +55,7 @@ def films_of(stack: Stack) -> dict[int, Film]:
         if layer.material is None:
             continue
         try:
-            if all(isinstance(shape, Flat) for _, shape in layer.fractions):
+            if all(shape.constant for _, shape in layer.fractions):
                 composition = _uniform(layer)
                 kind = tuple(tuple(e for e, _ in site) for site in composition.sublattices)
                 flat.setdefault(kind, []).append((written, composition))
@@ -70,7 +70,7 @@ def films_of(stack: Stack) -> dict[int, Film]:
 
 def _uniform(layer: Layer) -> Composition:
     assert layer.material is not None
-    values: dict[str, Value] = {k: s.value for k, s in layer.fractions if isinstance(s, Flat)}
+    values: dict[str, Value] = {letter: shape.samples[0] for letter, shape in layer.fractions}
     return parse(layer.material, **values)
 
 

@@ -12,11 +12,19 @@ from ..errors import BandwrightError, GrowthError, close_matches
 from ..parameters.layers import stretched
 from ..shapes import Function, Points
 from ..stack import Layer, Repeat, Stack
-from ..stackfile.keys import LAYER_KEYS, SHAPED, layer_from
+from ..stackfile.keys import LAYER_KEYS, SHAPED, layer_from, settings
 from ..stackfile.shapetext import shape_value
 from .steps import END, INTERRUPTION, LAYER, REPEAT
 
 _STEPS = (LAYER, REPEAT, END, INTERRUPTION)
+
+
+def said_of(stack: Stack, order: str) -> dict[str, Any]:
+    """Return what a stack says beyond its layers, as `Stack` takes it beside layers in an order."""
+    said = settings(stack)
+    if order == "surface first" and "ends" in said:
+        said["ends"] = said["ends"][::-1]
+    return {"order": order, **said}
 
 
 def stack_of_rows(rows: Sequence[Mapping[str, Any]], *, whole: bool, **arguments: Any) -> Stack:

@@ -15,12 +15,12 @@ from ..levels import solve
 from ..materials import Library
 from ..stack import Stack
 from ..stack.words import word
-from ..stackfile.keys import LAYER_KEYS, SHAPED, settings
+from ..stackfile.keys import LAYER_KEYS, SHAPED
 from .calibrations import Calibrations
 from .files import read_calibrations
 from .films import Film, films_of
 from .rates import Reactor
-from .rows import stack_of_rows
+from .rows import said_of, stack_of_rows
 from .shift import Shift, shift_of
 from .steps import INTERRUPTION, LAYER, SAID, Step, Walk, grown_nm, read_pauses, steps_of, total
 
@@ -121,8 +121,7 @@ class GrowthSheet:
     @cached_property
     def grown(self) -> Stack:
         """The stack that is grown by this sheet: in whole monolayers, or as designed."""
-        return stack_of_rows(self.rows, whole=self.whole, order=self.order,
-                             **settings(self.stack))  # fmt: skip
+        return stack_of_rows(self.rows, whole=self.whole, **said_of(self.stack, self.order))
 
     @property
     def rows(self) -> list[dict[str, Any]]:
@@ -248,8 +247,8 @@ def growth_sheet(
             raise GrowthError(f"{next(iter(solve_arguments))}: nothing is solved without a line;"
                               " name one, such as line = (2, 1)")  # fmt: skip
         return sheet
-    shift = shift_of(solve(stack, **solve_arguments), stack_of_rows(
-        sheet.rows, whole=True, order=order, **settings(stack)), steps, line)  # fmt: skip
+    grown = stack_of_rows(sheet.rows, whole=True, **said_of(stack, order))
+    shift = shift_of(solve(stack, **solve_arguments), grown, steps, line)
     return GrowthSheet(stack, calibrations, order, whole, steps, shift, cautions)
 
 

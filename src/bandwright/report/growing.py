@@ -52,7 +52,8 @@ def sheet_facts(found: GrowthSheet) -> list[Fact]:
         ("grown", f"{grown}, {found.total_nm:.2f} nm in all"),
     ]
     if found.calibrations is not None:
-        said += _calibration_facts(found.calibrations)
+        opened = {step.cells for step in found.steps if step.cells}
+        said += _calibration_facts(found.calibrations, opened)
     if found.total_s is not None:
         said.append(("takes", _time_said(found, found.total_s)))
     if found.shift is not None:
@@ -75,15 +76,16 @@ def _time_said(found: GrowthSheet, total_s: float) -> str:
     return text + (", layers without a time left out" if timeless else "")
 
 
-def _calibration_facts(given: Calibrations) -> list[Fact]:
+def _calibration_facts(given: Calibrations, opened: set[str]) -> list[Fact]:
+    """Return where the rates come from that are used."""
     facts: list[Fact] = []
     head = ", ".join(text for text in (given.name, given.date, given.note) if text)
     if head:
         facts.append(("calibrated", head))
-    for one in given.cells:
+    for one in (cell for cell in given.cells if any(cell.name in used for used in opened)):
         facts.append(("cell", f"{one.name}: {one.element} {rate_text(one.rate)} on {one.on}"
                       + _origin(one.date, one.note)))  # fmt: skip
-    for alloy in given.alloys:
+    for alloy in (alloy for alloy in given.alloys if alloy.formula in opened):
         facts.append(("alloy", f"{alloy.formula}: {rate_text(alloy.rate)}"
                       + _origin(alloy.date, alloy.note)))  # fmt: skip
     return facts
