@@ -225,6 +225,8 @@ def test_interrupted_at_a_terminal(tmp_path):
     work = subprocess.Popen(
         [sys.executable, "-m", "bandwright.cli", *words, "--results", str(path)],
         stderr=end, stdout=subprocess.PIPE,
+        # a shell's background job is deaf to it, and its children inherit that
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
     )  # fmt: skip
     os.close(end)
     said = b""
