@@ -39,6 +39,8 @@ def start(results, log, workers):
     run = subprocess.Popen(
         [sys.executable, "-m", "sweeps.wells", str(results), str(log), str(workers)],
         cwd=TESTS, stderr=subprocess.PIPE, text=True,
+        # a shell's background job is deaf to Ctrl-C, and its children inherit that
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
     )  # fmt: skip
     patience = time.monotonic() + 120.0
     while not (results.exists() and len(numbers(results)) >= 3 * wells.CHUNK):
