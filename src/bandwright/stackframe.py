@@ -21,6 +21,7 @@ from .quantities import (
     as_energy,
     as_field,
     as_inverse_energy,
+    as_length,
     as_thickness,
     number_text,
     show,
@@ -49,6 +50,7 @@ _FORMS: Mapping[str, tuple[tuple[tuple[str, int], ...], ...]] = {
     "edge": ((("meV", 3), ("eV", 0)),),
     "gap": ((("eV", 0),),),
     "nonparabolicity": ((("per_eV", 0),),),
+    "interface_width": ((("nm", 0),),),
     "field": ((("kV_per_cm", 4), ("V_per_nm", 0)),),
     "donors": ((("per_cm2", 14), ("per_nm2", 0)), (("per_cm3", 21), ("per_nm3", 0))),
     "acceptors": ((("per_cm2", 14), ("per_nm2", 0)), (("per_cm3", 21), ("per_nm3", 0))),
@@ -58,6 +60,7 @@ _READ = {
     "gap": as_energy,
     "nonparabolicity": as_inverse_energy,
     "field": as_field,
+    "interface_width": as_length,
 }
 _TEXTS = (*PLAIN, *SHAPED, *(f"{key}_{end}" for key in SHAPED for end in _ENDS), *_POINTS)
 _KNOWN = (*_TEXTS, *(name for name in _COLUMNS if name not in _TEXTS), "group", "times")

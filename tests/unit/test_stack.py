@@ -47,6 +47,7 @@ def test_a_layer_stores_core_units():
         "field": None,
         "donors": Density(0.002, "sheet"),
         "acceptors": None,
+        "interface_width": None,
         "label": "well",
     }
     assert (OWN.edge, OWN.mass, OWN.gap) == (Flat(0.235), Flat(0.089), Flat(1.79))

@@ -1,6 +1,7 @@
 """Error budget of a line: what a monolayer, a per cent, ten kelvin and a field do to it.
 
-The shift of a row is a derivative, exact from the states, times its change: nothing is solved.
+The shift of a row is a derivative, exact from the states, times its change: nothing is solved,
+but for what interfaces that are not abrupt cause.
 Whether the whole change is still linear, and still the same two levels, is checked on request by
 one solution there; without, slopes say which levels of those found would meet on the way.
 """
@@ -18,8 +19,8 @@ from ..errors import BandwrightError
 from ..frames import frame
 from ..levels import Levels
 from ..lines import CONTINUUM, Line, Lines
-from .changes import MODEL, Change, changes
-from .checking import LINEAR, LINEAR_EV, Sample, moved, remark_on
+from .changes import ABRUPT, MODEL, Change, changes
+from .checking import LINEAR, LINEAR_EV, Sample, abrupt_shift, moved, remark_on
 from .slopes import CHECK, derivatives, meeting, mixing
 from .words import length_shift, wavelength_shift
 
@@ -41,7 +42,9 @@ def error_budget(
     composition, 1 % more of each group-III flux (in every layer that holds the element, thickness
     and composition together), 10 K more, 1 kV/cm more along growth (10 mV more of a bias); and 1 %
     on what the model rests on: all masses, the share of each step of the gap that falls to the
-    conduction band, all own edges as they count from zero.
+    conduction band, all own edges as they count from zero. Where interfaces are not abrupt, one
+    more row says what making all of them abrupt would do, what they cause with the other sign:
+    solved once, since that may be no small change.
 
     Parameters
     ----------
@@ -94,6 +97,8 @@ def error_budget(
         if not checked:
             known = np.flatnonzero(np.isfinite(slopes.ends).all(axis=1))
             mixed[known] = mixing(levels, chosen, [every[place] for place in known])
+        if levels.stack.realistic:
+            rows.append((ABRUPT, *abrupt_shift(levels, chosen)))
         for place, (change, (up, down)) in enumerate(zip(every, slopes.ends, strict=True)):
             shift = float(up - down) * change.amount
             if not math.isfinite(shift):

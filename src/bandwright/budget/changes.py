@@ -41,6 +41,10 @@ class Change(NamedTuple):
     text: str
 
 
+#: the change by which every interface becomes abrupt; no slope stands for it
+ABRUPT = Change(Parameter("interfaces", None, "interfaces", ""), 1.0, "interfaces", "made abrupt")
+
+
 def changes(levels: Levels) -> list[Change]:
     """Return the changes a budget lists, in the order of the stack."""
     stack = levels.stack

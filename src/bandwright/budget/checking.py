@@ -73,6 +73,15 @@ def _ends(found: Levels, levels: Levels, line: Line) -> Floats:
     return np.array(ends)
 
 
+def abrupt_shift(levels: Levels, line: Line) -> tuple[float, str]:
+    """Return how a line shifts [eV] if every interface becomes abrupt, solved; and a remark."""
+    try:
+        upper, lower = _ends(_solved(levels, levels.stack.abrupt(), line), levels, line)
+    except BandwrightError as error:
+        return math.nan, f"the abrupt stack has no such line: {error}"
+    return upper - lower - line.energy_meV * 1e-3, ""
+
+
 def remark_on(levels: Levels, line: Line, change: Change, shift: float, before: Sample) -> str:
     """Return what must be said of a whole change beside its linear shift, '' if nothing.
 

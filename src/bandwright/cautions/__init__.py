@@ -10,7 +10,7 @@ import warnings
 
 from ..errors import BandwrightWarning
 from ..levels import Levels
-from .layers import charges, directions, materials, own_numbers, thicknesses
+from .layers import charges, directions, interfaces, materials, own_numbers, thicknesses
 from .states import boxes, clusters, counts, nothing, phases, tops, two_band
 from .strained import strains
 
@@ -28,6 +28,7 @@ def at_once(levels: Levels) -> tuple[str, ...]:
         *counts(levels),
         *nothing(levels),
         *thicknesses(levels),
+        *interfaces(levels),
         *materials(levels),
         *strains(levels),
         *charges(levels),

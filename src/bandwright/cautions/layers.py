@@ -47,6 +47,28 @@ def thicknesses(levels: Levels) -> list[str]:
     return texts
 
 
+def interfaces(levels: Levels) -> list[str]:
+    """Return layers thinner than the standard deviation of an interface of theirs."""
+    stack = levels.stack
+    if not stack.realistic:
+        return []
+    facts, general = levels.profile.facts, stack.interface_width or 0.0
+    grown = [(layer.interface_width, number) for layer, number in stack.grown()]
+    faces = [(general if width is None else width, number) for width, number in grown]
+    thin: dict[str, float] = {}
+    for (width, number), (beyond, _) in zip(faces, [*faces[1:], (0.0, 0)], strict=True):
+        fact, widest = facts[number - 1], max(width, beyond)
+        if widest > fact.thickness:
+            thin[fact.name] = max(widest, thin.get(fact.name, 0.0))
+    if not thin:
+        return []
+    worst = number_text(round(max(thin.values()), 6))
+    return [
+        f"{listed(list(thin))}: thinner than an interface_width of {worst} nm, so that its own"
+        " composition is nowhere reached: is the width right?"
+    ]
+
+
 def own_numbers(levels: Levels) -> list[str]:
     """Return own masses and edges that look like a slip."""
     profile = levels.profile

@@ -1,4 +1,4 @@
-"""dE of every level by every parameter, from the states; nothing is solved, no profile is built.
+"""dE of every level by every parameter, from the states; nothing is solved.
 
 The states weigh any change of the profile (`bandwright.solver.sensitivity`). What a parameter
 changes is linear to first order: numbers of layers, thicknesses that shift what lies behind them,
@@ -22,6 +22,7 @@ from ..solver.sensitivity import numbers_at
 from ..stack import Stack
 from .columns import Columns, changed
 from .layout import Fold, Layout, at_points
+from .rebuilt import rebuilt
 from .zero import zero_places, zero_slopes
 
 Floats = npt.NDArray[np.float64]
@@ -120,11 +121,16 @@ def energy_slopes(levels: Levels, parameters: Sequence[Parameter]) -> Slopes:
     profile = levels.profile
     layout = Layout(levels.stack, profile)
     last = len(profile.sections) - 1
+    real = levels.stack.realistic
     outer = at_points(np.array([0, last]), np.array([0.0, 1.0]), last + 1)
+    at_points_only = layout.bent or real
     weights = [
-        *(s.sensitivity_at_points if layout.bent else s.sensitivity for s in levels.states.sets),
+        *(s.sensitivity_at_points if at_points_only else s.sensitivity for s in levels.states.sets),
         outer,
     ]
+    if real:
+        found, kinked = rebuilt(levels.stack, profile, weights, parameters)
+        return Slopes(found[:-2], _open_edge_slopes(profile, found[-2:]), kinked)
     folds = [Fold(layout, one, profile.field) for one in weights]
     columns = Columns(layout, parameters, [*folds, zero_places(layout)])
     zero = zero_slopes(columns, parameters, len(folds))
@@ -151,11 +157,18 @@ def couplings(levels: Levels, parameters: Sequence[Parameter], level: int) -> Fl
     """
     found, start = np.zeros((len(levels), len(parameters))), 0
     layout = Layout(levels.stack, levels.profile)
+    real = levels.stack.realistic
     for states in levels.states.sets:
         stop = start + len(states.energies)
         if start <= level < stop:
-            fold = Fold(layout, states.coupling(level - start), levels.profile.field)
-            found[start:stop] = changed(Columns(layout, parameters, [fold]), 0)
+            weights = states.coupling(level - start)
+            if real:
+                found[start:stop] = rebuilt(
+                    levels.stack, levels.profile, [weights], parameters
+                ).rows
+            else:
+                fold = Fold(layout, weights, levels.profile.field)
+                found[start:stop] = changed(Columns(layout, parameters, [fold]), 0)
         start = stop
     return found
 

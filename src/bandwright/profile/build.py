@@ -14,7 +14,7 @@ from ..materials import Library
 from ..stack import Stack, Written
 from .curves import least, smaller
 from .layers import Built, build_layer
-from .sections import Number, Profile, Section
+from .sections import Number, Profile, Section, Unlike
 
 
 @dataclass(frozen=True)
@@ -86,6 +86,11 @@ def build_profile(
             if known is not None:
                 known[key] = found
         built[one.number] = found
+    real = bool(stack.interface_width or stack.segregation) or any(
+        one.layer.interface_width for one in every
+    )
+    if real and designs is not None:
+        raise Unlike("where interfaces are wide, designs are built one by one")
     facts = tuple(one.facts for one in built.values())
     if any(one.copies > 1 for one in every):
         written = tuple(number - 1 for _, number in stack.grown())
@@ -94,6 +99,10 @@ def build_profile(
         written = tuple(range(len(every)))
         layers = list(built.values())
     shift, words = _zero(stack, layers, library)
+    if real:
+        from .spreading import spread  # stacks of abrupt interfaces need none of it
+
+        layers = spread(stack, layers, library, shift, two_band)
     field = _field(stack, sum(one.facts.thickness for one in layers))
     return Profile(
         _sections(layers, shift, field), stack.ends, field,

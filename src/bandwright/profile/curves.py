@@ -50,11 +50,15 @@ def fit_depths(thickness: Number) -> Floats:
     return np.asarray(np.multiply.outer(0.5 * (1.0 + _NODES), thickness))
 
 
-def fitted(values: Floats, thickness: Number, function: Callable[[Floats], Floats]) -> Curve:
+def fitted(
+    values: Floats, thickness: Number, function: Callable[[Floats], Floats],
+    negligible: float = _NEGLIGIBLE,
+) -> Curve:  # fmt: skip
     """Return a smooth function of the depth as a polynomial, a Chebyshev series, or itself.
 
     ``values`` are the function's at `fit_depths`. Degree two and less become polynomials; a
-    function that a series of degree 24 does not hold to rounding stays as it is.
+    function that a series of degree 24 does not hold to rounding stays as it is; ``negligible`` is
+    what counts as rounding, by the largest value.
 
     Raises
     ------
@@ -63,7 +67,7 @@ def fitted(values: Floats, thickness: Number, function: Callable[[Floats], Float
     """
     series = _TO_SERIES @ values
     size = np.max(np.abs(values), axis=0)
-    large = np.abs(series) > _NEGLIGIBLE * np.where(size > 0.0, size, 1.0)
+    large = np.abs(series) > negligible * np.where(size > 0.0, size, 1.0)
     degrees = np.where(large, _DEGREES.reshape(-1, *(1,) * (large.ndim - 1)), 0).max(axis=0)
     degree = int(degrees.max())
     if values.ndim > 1:

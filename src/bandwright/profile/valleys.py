@@ -11,6 +11,7 @@ from ..formula import Value, parse
 from ..materials import BandPoint, Library
 from ..shapes import Face
 from ..stack import Layer, Stack
+from .build import build_profile
 from .sections import Floats, Profile
 
 #: depths at which a section of a varying composition is looked at
@@ -46,7 +47,7 @@ def valleys(stack: Stack, profile: Profile) -> Valleys:
     ----------
     stack : Stack
     profile : Profile
-        Made from this stack.
+        Made from this stack. Interfaces that are not abrupt are shown as if they were.
 
     Examples
     --------
@@ -57,6 +58,9 @@ def valleys(stack: Stack, profile: Profile) -> Valleys:
     >>> print((found.x_edge - found.edge)[:1].round(2))
     [-0.84]
     """
+    if stack.realistic:  # how X and L go on in an interface nobody asks
+        stack = stack.abrupt()
+        profile = build_profile(stack, profile.bands)
     library = Library.with_files(stack.materials) if stack.materials else Library.shipped()
     layers = {one.number: one.layer for one in stack.written()}
     offsets: dict[tuple[int, float], tuple[Floats, Floats, Floats]] = {}

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from ..errors import BandwrightError
-from ..quantities import field_text, temperature_text, voltage_text
+from ..quantities import field_text, number_text, temperature_text, voltage_text
 from ..stackline import line_text
 
 if TYPE_CHECKING:
@@ -99,6 +99,29 @@ def completeness(levels: Levels) -> str:
     return f"{count} {noun} between {low} and {high}, {proof}"
 
 
+def interfaces(stack: Stack) -> str:
+    """Return in words how a stack's interfaces differ from abrupt ones.
+
+    Examples
+    --------
+    >>> from bandwright.stack import Layer, Stack
+    >>> interfaces(Stack([Layer("6 nm", "InAs")], interface_width="3 Å", segregation={"In": 0.8}))
+    'error functions of standard deviation 0.3 nm; In segregates, 0.8 a monolayer goes on'
+    """
+    said = []
+    if stack.interface_width:
+        said.append(
+            f"error functions of standard deviation {number_text(stack.interface_width)} nm"
+        )
+    if any(written.layer.interface_width is not None for written in stack.written()):
+        said.append("some with a width of their own")
+    said += [
+        f"{element} segregates, {number_text(share)} a monolayer goes on"
+        for element, share in stack.segregation
+    ]
+    return "; ".join(said)
+
+
 def facts(levels: Levels) -> list[Fact]:
     """Return (label, text) pairs in the order they are read."""
     stack, profile = levels.stack, levels.profile
@@ -107,6 +130,7 @@ def facts(levels: Levels) -> list[Fact]:
         ("stack", stack.name or "without a name"),
         ("grown", grown(stack)),
         ("held at", held_at(stack.temperature, stack.substrate)),
+        *([("interfaces", interfaces(stack))] if stack.realistic else []),
         ("model", profile.bands),
         ("energies", f"from {profile.zero}"),
         ("ends", ends(*profile.ends)),

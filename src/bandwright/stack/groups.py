@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import operator
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import NamedTuple
 
@@ -122,6 +122,18 @@ def count(layers: tuple[Layer | Repeat, ...]) -> int:
     """Return the number of grown layers."""
     return sum(
         layer.times * count(layer.layers) if isinstance(layer, Repeat) else 1 for layer in layers
+    )
+
+
+def mapped(
+    layers: tuple[Layer | Repeat, ...], change: Callable[[Layer], Layer]
+) -> tuple[Layer | Repeat, ...]:
+    """Return the layers and groups with each layer changed."""
+    return tuple(
+        Repeat(entry.times, mapped(entry.layers, change))
+        if isinstance(entry, Repeat)
+        else change(entry)
+        for entry in layers
     )
 
 

@@ -9,7 +9,7 @@ from typing import Any
 from .. import quantities as q
 from ..errors import BandwrightError, StackError
 from ..shapes import Flat, Function, Linear, Points, Quadratic, Shape, as_shape, named
-from .words import known_names, label_text, one_line, word
+from .words import as_width, known_names, label_text, one_line, word
 
 _LETTERS = ("x", "y")
 _OWN = ("edge", "mass", "gap", "nonparabolicity")
@@ -23,6 +23,7 @@ _INPUTS = (
     "field",
     "donors",
     "acceptors",
+    "interface_width",
     "label",
 )
 
@@ -54,6 +55,9 @@ class Layer:
         The layer's internal field along growth, added to the stack's.
     donors, acceptors : density, optional
         ``"2e11 / cm^2"`` spread over the layer, or ``"3e17 / cm^3"``.
+    interface_width : length, optional
+        Standard deviation of the interface on which the layer is grown, its first-grown face in
+        whatever order layers are listed; instead of the stack's.
     label : str, optional
         A name of your own; layers with the same label are one parameter.
 
@@ -82,6 +86,7 @@ class Layer:
     field: float | None
     donors: q.Density | None
     acceptors: q.Density | None
+    interface_width: float | None
     label: str | None
 
     def __init__(
@@ -99,6 +104,7 @@ class Layer:
         field: object = None,
         donors: object = None,
         acceptors: object = None,
+        interface_width: object = None,
         label: str | None = None,
     ) -> None:
         inputs = dict(locals())
@@ -163,7 +169,8 @@ class Layer:
     def reversed(self) -> Layer:
         """Return the layer turned over: every shape seen from the other face.
 
-        The internal field keeps its sign: it is given along growth.
+        The internal field keeps its sign, it is given along growth; and ``interface_width`` stays
+        that of the first-grown face.
 
         Raises
         ------
@@ -192,6 +199,9 @@ class Layer:
         for name in ("donors", "acceptors"):
             density = getattr(self, name)
             parts += [] if density is None else [f"{name}={q.density_text(density)!r}"]
+        if self.interface_width is not None:
+            width = q.length_text(q.Length(self.interface_width, "nm"))
+            parts.append(f"interface_width={width!r}")
         parts += [] if self.label is None else [f"label={self.label!r}"]
         return f"Layer({', '.join(parts)})"
 
@@ -272,6 +282,7 @@ def _layer_fields(inputs: Mapping[str, Any], old: Layer | None = None) -> dict[s
         "field": q.as_field,
         "donors": q.as_density,
         "acceptors": q.as_density,
+        "interface_width": as_width,
         "label": label_text,
     }
     for name, read in plain.items():

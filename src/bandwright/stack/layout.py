@@ -42,7 +42,8 @@ def layout(stack: Stack) -> Layout:
     kinds = _layers(stack.layers, numbers)
     field, bias = stack.signed_field, stack.signed_bias
     kind = (kinds, stack.temperature, stack.substrate, stack.ends, stack.zero, stack.bands,
-            stack.materials, not field, not bias)  # fmt: skip
+            stack.materials, stack.interface_width, stack.segregation, not field,
+            not bias)  # fmt: skip
     numbers += [number for number in (field, bias) if number]
     return Layout(kind, tuple(numbers))
 
@@ -81,7 +82,7 @@ def _layers(layers: tuple[Layer | Repeat, ...], numbers: list[float]) -> tuple[H
 def _layer(layer: Layer) -> Layout:
     numbers = [layer.thickness.value]
     material, fractions = _formula(layer)
-    kinds: list[Hashable] = [layer.thickness.unit, layer.label, material]
+    kinds: list[Hashable] = [layer.thickness.unit, layer.label, material, layer.interface_width]
     for name, shape in fractions:
         kinds.append((name, _shape(shape, numbers), *(v in (0.0, 1.0) for v in shape.samples)))
     for name in _OWN:

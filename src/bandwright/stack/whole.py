@@ -8,10 +8,21 @@ from dataclasses import dataclass, fields
 from typing import Any, Self
 
 from .. import quantities as q
-from ..errors import StackError
-from .groups import MOST_LAYERS, Repeat, Written, count, exchanged, expand, read_layers, walk
+from ..errors import BandwrightError, StackError, close_matches
+from ..formula import elements
+from .groups import (
+    MOST_LAYERS,
+    Repeat,
+    Written,
+    count,
+    exchanged,
+    expand,
+    mapped,
+    read_layers,
+    walk,
+)
 from .layer import Layer
-from .words import known_names, one_line, word
+from .words import as_width, known_names, one_line, word
 
 _ENDS = ("open", "wall", "periodic")
 _BANDS = ("one-band", "two-band")
@@ -45,6 +56,13 @@ class Stack:
     bands : {"one-band", "two-band"}, optional
     materials : path or sequence of paths
         Own material files; stored as absolute paths, so that a stack means the same anywhere.
+    interface_width : length, optional
+        Standard deviation of every interface that has none of its own: the composition goes from
+        one layer's to the next's by an error function. Abrupt if absent.
+    segregation : mapping of str to float, optional
+        Elements that float on the growing surface, each with the share of it there that goes on
+        to the next monolayer: ``{"In": 0.8}`` (Muraki, Fukatsu, Shiraki, Ito, Appl. Phys. Lett.
+        61, 557, 1992).
     order : {"first grown first", "surface first"}
         The order of what is given: ``layers``, groups, and of every pair, the one of ``ends``
         too. Stored in growth order.
@@ -74,6 +92,8 @@ class Stack:
     zero: str | None
     bands: str | None
     materials: tuple[str, ...]
+    interface_width: float | None
+    segregation: tuple[tuple[str, float], ...]
 
     def __init__(
         self,
@@ -89,6 +109,8 @@ class Stack:
         zero: str | None = None,
         bands: str | None = None,
         materials: str | os.PathLike[str] | Iterable[str | os.PathLike[str]] = (),
+        interface_width: object = None,
+        segregation: object = (),
         order: str = "first grown first",
     ) -> None:
         inputs = dict(locals())
@@ -169,6 +191,31 @@ class Stack:
                 return self._changed({"layers": exchanged(self.layers, written.path, layer)})
         raise StackError(f"layer {number}: the stack has layers 1 to {len(self.written())}")
 
+    @property
+    def realistic(self) -> bool:
+        """Whether an interface is as it grows: spread, or carried on by segregation."""
+        return bool(
+            self.interface_width
+            or self.segregation
+            or any(written.layer.interface_width for written in self.written())
+        )
+
+    def abrupt(self) -> Stack:
+        """Return the stack with every interface abrupt.
+
+        Examples
+        --------
+        >>> Stack([Layer("6.2 nm", "GaAs")], interface_width="0.3 nm").abrupt()
+        Stack([Layer('6.2 nm', 'GaAs')])
+        """
+
+        def bare(layer: Layer) -> Layer:
+            plain = layer.interface_width is None
+            return layer if plain else layer.replace(interface_width=None)
+
+        layers = mapped(self.layers, bare)
+        return self._changed({"layers": layers, "interface_width": None, "segregation": ()})
+
     def _changed(self, values: Mapping[str, Any]) -> Self:
         new = object.__new__(type(self))
         new._fill({f.name: getattr(self, f.name) for f in fields(self)} | dict(values))
@@ -179,13 +226,18 @@ class Stack:
             "temperature": q.temperature_text,
             "field": q.field_text,
             "bias": q.voltage_text,
+            "interface_width": lambda width: q.length_text(q.Length(width, "nm")),
         }
-        defaults = {"temperature": 300.0, "ends": ("open", "open"), "materials": ()}
+        defaults = {
+            "temperature": 300.0, "ends": ("open", "open"), "materials": (), "segregation": (),
+        }  # fmt: skip
         parts = [repr(list(self.layers))]
         for field in fields(self)[1:]:
             value = getattr(self, field.name)
             if value != defaults.get(field.name):
                 written = texts[field.name](value) if field.name in texts else value
+                if field.name == "segregation":
+                    written = dict(value)
                 parts.append(f"{field.name}={written!r}")
         return f"Stack({', '.join(parts)})"
 
@@ -209,6 +261,8 @@ def _stack_fields(inputs: Mapping[str, Any]) -> dict[str, Any]:
         values["materials"] = _paths(values["materials"])
     if "temperature" in values:
         values["temperature"] = q.as_temperature(values["temperature"], "temperature")
+    if "segregation" in values:
+        values["segregation"] = _shares(values["segregation"])
     optional: dict[str, Callable[[Any, str], Any]] = {
         "name": one_line,
         "substrate": one_line,
@@ -217,6 +271,7 @@ def _stack_fields(inputs: Mapping[str, Any]) -> dict[str, Any]:
         "bias": q.as_voltage,
         "electrons_run": lambda value, name: word(value, _RUNS, name),
         "bands": lambda value, name: word(value, _BANDS, name),
+        "interface_width": as_width,
     }
     for name, read in optional.items():
         if values.get(name) is not None:
@@ -245,6 +300,12 @@ def _check_stack(stack: Stack) -> None:
             " its groups"
         )
     written = stack.written()
+    for element, _ in stack.segregation:
+        holds = {e for w in written if w.layer.material for e in _elements(w.layer.material)}
+        if element not in holds:
+            raise StackError(
+                f"segregation: no layer has {element!r}{close_matches(element, holds)}"
+            )
     own = [w for w in written if w.layer.own_numbers]
     if own and len(own) < len(written) and stack.zero is None:
         other = next(w for w in written if not w.layer.own_numbers)
@@ -258,6 +319,13 @@ def _check_stack(stack: Stack) -> None:
             raise StackError(
                 f"bands: 'two-band' needs a gap or a nonparabolicity in {', '.join(bare)}"
             )
+
+
+def _elements(formula: str) -> tuple[str, ...]:
+    try:
+        return elements(formula)
+    except BandwrightError:  # what is wrong with it is said when its layer is built
+        return ()
 
 
 def _zero(written: Iterable[Written]) -> str:
@@ -280,6 +348,28 @@ def _read_ends(value: object) -> tuple[str, str]:
             f"ends: got ['{first}', '{last}']; 'periodic' joins both sides: write it for both"
         )
     return (first, last)
+
+
+def _shares(value: object) -> tuple[tuple[str, float], ...]:
+    """Return the elements that segregate, each with the share that stays on the surface."""
+    try:
+        given = dict(() if value is None else value)  # type: ignore[call-overload]
+    except (TypeError, ValueError):
+        raise StackError(
+            f"segregation: got {q.show(value)}; write elements with their shares, such as"
+            " {In = 0.8}"
+        ) from None
+    shares = []
+    for element, share in sorted(given.items(), key=str):
+        number = q.as_fraction(share, f"segregation of {element}")
+        if not 0.0 <= number < 1.0:
+            raise StackError(
+                f"segregation of {element}: got {q.show(share)}; the share that stays on the"
+                " surface lies from 0 to below 1"
+            )
+        if number:
+            shares.append((str(element), number))
+    return tuple(shares)
 
 
 def _paths(value: object) -> tuple[str, ...]:

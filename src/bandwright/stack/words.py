@@ -6,7 +6,7 @@ import re
 from collections.abc import Iterable, Mapping
 
 from ..errors import StackError, UnknownName, close_matches
-from ..quantities import show
+from ..quantities import as_length, number_text, show
 
 _NUMBERED = re.compile(r"layer\s+\d+", re.IGNORECASE)
 
@@ -16,6 +16,16 @@ def one_line(value: object, name: str) -> str:
     if not isinstance(value, str) or not value.strip() or not value.isprintable():
         raise StackError(f"{name}: got {show(value)}; write one line of text")
     return str(value).strip()
+
+
+def as_width(value: object, name: str) -> float:
+    """Return the standard deviation of an interface [nm]."""
+    width = as_length(value, name)
+    if width < 0.0:
+        raise StackError(
+            f"{name}: got '{number_text(width)} nm'; a standard deviation is 0 nm or more"
+        )
+    return width
 
 
 def label_text(value: object, name: str) -> str:

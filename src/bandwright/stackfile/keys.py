@@ -23,7 +23,16 @@ SHAPED: Mapping[str, Callable[[float], str | float]] = {
     "gap": q.energy_text,
     "nonparabolicity": q.inverse_energy_text,
 }
-PLAIN = ("label", "material", "thickness", "grading", "field", "donors", "acceptors")
+PLAIN = (
+    "label",
+    "material",
+    "thickness",
+    "grading",
+    "field",
+    "donors",
+    "acceptors",
+    "interface_width",
+)
 LAYER_KEYS = (*PLAIN, *SHAPED)
 STACK_KEYS = (
     "name",
@@ -36,6 +45,8 @@ STACK_KEYS = (
     "zero",
     "bands",
     "materials",
+    "interface_width",
+    "segregation",
 )
 GRADINGS = ("linear", "quadratic")
 
@@ -43,6 +54,7 @@ GRADINGS = ("linear", "quadratic")
 UNITS: Mapping[str, Mapping[str, str]] = {
     "depth": {"nm": "nm", "angstrom": "Å", "um": "um"},
     "thickness": {"nm": "nm", "ML": "ML", "angstrom": "Å", "um": "um"},
+    "interface_width": {"nm": "nm", "angstrom": "Å"},
     "x": {"": ""},
     "y": {"": ""},
     "mass": {"": ""},
@@ -136,7 +148,13 @@ def entries_of(layer: Layer, number: int) -> dict[str, Any]:
     for key, density in (("donors", layer.donors), ("acceptors", layer.acceptors)):
         if density is not None:
             entries[key] = q.density_text(density)
+    if layer.interface_width is not None:
+        entries["interface_width"] = _nm(layer.interface_width)
     return entries
+
+
+def _nm(length: float) -> str:
+    return q.length_text(q.Length(length, "nm"))
 
 
 def _shape_value(key: str, shape: Shape, where: str) -> Any:
@@ -180,8 +198,12 @@ def settings(stack: Stack) -> dict[str, Any]:
         "bias": q.voltage_text,
         "ends": list,
         "materials": list,
+        "interface_width": _nm,
+        "segregation": dict,
     }
-    absent = {"temperature": 300.0, "ends": ("open", "open"), "materials": ()}
+    absent = {
+        "temperature": 300.0, "ends": ("open", "open"), "materials": (), "segregation": (),
+    }  # fmt: skip
     found: dict[str, Any] = {}
     for key in STACK_KEYS:
         value = getattr(stack, key)
