@@ -26,7 +26,7 @@ from .quantities import (
     number_text,
     show,
 )
-from .stack import Layer, Repeat, Stack
+from .stack import DOPING, Layer, Repeat, Stack
 from .stackfile.keys import PLAIN, SHAPED, UNITS, column, entries_of, layer_from
 from .stackfile.shapetext import shape_text, shape_value
 
@@ -54,6 +54,8 @@ _FORMS: Mapping[str, tuple[tuple[tuple[str, int], ...], ...]] = {
     "field": ((("kV_per_cm", 4), ("V_per_nm", 0)),),
     "donors": ((("per_cm2", 14), ("per_nm2", 0)), (("per_cm3", 21), ("per_nm3", 0))),
     "acceptors": ((("per_cm2", 14), ("per_nm2", 0)), (("per_cm3", 21), ("per_nm3", 0))),
+    "delta_donors": ((("per_cm2", 14), ("per_nm2", 0)),),
+    "delta_acceptors": ((("per_cm2", 14), ("per_nm2", 0)),),
 }
 _READ = {
     "edge": as_energy,
@@ -328,7 +330,7 @@ def _core(key: str, text: str) -> tuple[int, float]:
     if key == "thickness":
         length = as_thickness(text, key)
         return ("nm", "ML").index(length.unit), length.value
-    if key in ("donors", "acceptors"):
+    if key in DOPING:
         density = as_density(text, key)
         return ("sheet", "volume").index(density.kind), density.value
     return 0, _READ[key](text, key)

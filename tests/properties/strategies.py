@@ -49,6 +49,7 @@ def _points(draw, value, thickness):
 
 
 densities = st.builds(Density, positive, st.sampled_from(["sheet", "volume"]))
+planes = st.builds(Density, positive, st.just("sheet"))
 
 
 @st.composite
@@ -75,6 +76,11 @@ def layers(draw):
     for kind in ("donors", "acceptors"):
         if draw(st.integers(0, 3)) == 0:
             inputs[kind] = draw(densities)
+    for kind in ("delta_donors", "delta_acceptors"):
+        if draw(st.integers(0, 3)) == 0:
+            inputs[kind] = draw(planes)
+    if draw(st.integers(0, 3)) == 0:
+        inputs["interface_width"] = f"{draw(positive)!r} nm"
     if draw(st.booleans()):
         inputs["label"] = draw(labels)
     return Layer(thickness, **inputs)
@@ -112,6 +118,8 @@ def stacks(draw):
     )
     if draw(maybe):
         settings["bands"] = "one-band"
+    if draw(maybe):
+        settings["interface_width"] = f"{draw(positive)!r} nm"
     if draw(maybe):
         parts = st.sampled_from(["house.toml", "files/my house.toml", "../up.toml", "/far/ä.toml"])
         settings["materials"] = [os.path.abspath(p) for p in draw(st.lists(parts, max_size=2))]

@@ -47,6 +47,8 @@ def test_a_layer_stores_core_units():
         "field": None,
         "donors": Density(0.002, "sheet"),
         "acceptors": None,
+        "delta_donors": None,
+        "delta_acceptors": None,
         "interface_width": None,
         "label": "well",
     }

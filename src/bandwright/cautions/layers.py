@@ -6,6 +6,7 @@ import numpy as np
 
 from ..levels import Levels
 from ..quantities import number_text
+from ..stack import DOPING
 from .words import listed
 
 #: thinner [nm] or thicker [nm] layers look like a slip of the unit
@@ -117,7 +118,7 @@ def charges(levels: Levels) -> list[str]:
     doped = [
         one.name
         for one in written
-        if any(d is not None and d.value > 0.0 for d in (one.layer.donors, one.layer.acceptors))
+        if any(d is not None and d.value > 0.0 for d in (getattr(one.layer, k) for k in DOPING))
     ]
     if not doped:
         return []

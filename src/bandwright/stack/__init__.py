@@ -5,7 +5,16 @@ in nm or ML as written, energies in eV, fields in V/nm, temperature in K.
 """
 
 from .groups import MOST_LAYERS, Repeat, Written
-from .layer import Layer, layer_name, numbered_layer
+from .layer import DOPING, Layer, layer_name, numbered_layer
 from .whole import Stack
 
-__all__ = ["MOST_LAYERS", "Layer", "Repeat", "Stack", "Written", "layer_name", "numbered_layer"]
+__all__ = [
+    "DOPING",
+    "MOST_LAYERS",
+    "Layer",
+    "Repeat",
+    "Stack",
+    "Written",
+    "layer_name",
+    "numbered_layer",
+]

@@ -9,11 +9,13 @@ from typing import Any
 from .. import quantities as q
 from ..errors import BandwrightError, StackError
 from ..shapes import Flat, Function, Linear, Points, Quadratic, Shape, as_shape, named
-from .words import as_width, known_names, label_text, one_line, word
+from .words import as_plane, as_width, known_names, label_text, one_line, word
 
 _LETTERS = ("x", "y")
 _OWN = ("edge", "mass", "gap", "nonparabolicity")
 _GRADINGS = ("linear", "quadratic")
+#: keys of doping: spread over the layer, and planes on its first-grown face
+DOPING = ("donors", "acceptors", "delta_donors", "delta_acceptors")
 _INPUTS = (
     "thickness",
     "material",
@@ -23,6 +25,8 @@ _INPUTS = (
     "field",
     "donors",
     "acceptors",
+    "delta_donors",
+    "delta_acceptors",
     "interface_width",
     "label",
 )
@@ -55,6 +59,9 @@ class Layer:
         The layer's internal field along growth, added to the stack's.
     donors, acceptors : density, optional
         ``"2e11 / cm^2"`` spread over the layer, or ``"3e17 / cm^3"``.
+    delta_donors, delta_acceptors : sheet density, optional
+        A delta doping plane, without thickness, on the layer's first-grown face in whatever order
+        layers are listed: ``"2e11 / cm^2"``.
     interface_width : length, optional
         Standard deviation of the interface on which the layer is grown, its first-grown face in
         whatever order layers are listed; instead of the stack's.
@@ -86,6 +93,8 @@ class Layer:
     field: float | None
     donors: q.Density | None
     acceptors: q.Density | None
+    delta_donors: q.Density | None
+    delta_acceptors: q.Density | None
     interface_width: float | None
     label: str | None
 
@@ -104,6 +113,8 @@ class Layer:
         field: object = None,
         donors: object = None,
         acceptors: object = None,
+        delta_donors: object = None,
+        delta_acceptors: object = None,
         interface_width: object = None,
         label: str | None = None,
     ) -> None:
@@ -169,8 +180,8 @@ class Layer:
     def reversed(self) -> Layer:
         """Return the layer turned over: every shape seen from the other face.
 
-        The internal field keeps its sign, it is given along growth; and ``interface_width`` stays
-        that of the first-grown face.
+        The internal field keeps its sign, it is given along growth; and delta doping and
+        ``interface_width`` stay those of the first-grown face.
 
         Raises
         ------
@@ -196,7 +207,7 @@ class Layer:
             parts.append(f"{name}={_shape_repr(shape, texts.get(name, q.number_text))}")
         parts += ["grading='quadratic'"] if _graded(self) else []
         parts += [] if self.field is None else [f"field={q.field_text(self.field)!r}"]
-        for name in ("donors", "acceptors"):
+        for name in DOPING:
             density = getattr(self, name)
             parts += [] if density is None else [f"{name}={q.density_text(density)!r}"]
         if self.interface_width is not None:
@@ -282,6 +293,8 @@ def _layer_fields(inputs: Mapping[str, Any], old: Layer | None = None) -> dict[s
         "field": q.as_field,
         "donors": q.as_density,
         "acceptors": q.as_density,
+        "delta_donors": as_plane,
+        "delta_acceptors": as_plane,
         "interface_width": as_width,
         "label": label_text,
     }

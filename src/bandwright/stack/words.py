@@ -6,7 +6,7 @@ import re
 from collections.abc import Iterable, Mapping
 
 from ..errors import StackError, UnknownName, close_matches
-from ..quantities import as_length, number_text, show
+from ..quantities import Density, as_density, as_length, number_text, show
 
 _NUMBERED = re.compile(r"layer\s+\d+", re.IGNORECASE)
 
@@ -26,6 +26,17 @@ def as_width(value: object, name: str) -> float:
             f"{name}: got '{number_text(width)} nm'; a standard deviation is 0 nm or more"
         )
     return width
+
+
+def as_plane(value: object, name: str) -> Density:
+    """Return the sheet density of a doping plane."""
+    density = as_density(value, name)
+    if density.kind != "sheet":
+        raise StackError(
+            f"{name}: got {show(value)}; a plane has no thickness: write a density in the plane,"
+            " such as '2e11 / cm^2'"
+        )
+    return density
 
 
 def label_text(value: object, name: str) -> str:

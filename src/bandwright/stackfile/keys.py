@@ -12,7 +12,7 @@ from typing import Any
 from .. import quantities as q
 from ..errors import StackFileError, close_matches
 from ..shapes import Flat, Function, Points, Quadratic, Shape
-from ..stack import Layer, Stack, numbered_layer
+from ..stack import DOPING, Layer, Stack, numbered_layer
 
 #: what may vary along a layer: key -> what writes one float of it
 SHAPED: Mapping[str, Callable[[float], str | float]] = {
@@ -31,6 +31,8 @@ PLAIN = (
     "field",
     "donors",
     "acceptors",
+    "delta_donors",
+    "delta_acceptors",
     "interface_width",
 )
 LAYER_KEYS = (*PLAIN, *SHAPED)
@@ -74,6 +76,8 @@ UNITS: Mapping[str, Mapping[str, str]] = {
         "per_nm2": "/ nm^2",
         "per_nm3": "/ nm^3",
     },
+    "delta_donors": {"per_cm2": "/ cm^2", "per_nm2": "/ nm^2"},
+    "delta_acceptors": {"per_cm2": "/ cm^2", "per_nm2": "/ nm^2"},
 }
 
 
@@ -145,7 +149,8 @@ def entries_of(layer: Layer, number: int) -> dict[str, Any]:
         entries["grading"] = "quadratic"
     if layer.field is not None:
         entries["field"] = q.field_text(layer.field)
-    for key, density in (("donors", layer.donors), ("acceptors", layer.acceptors)):
+    for key in DOPING:
+        density = getattr(layer, key)
         if density is not None:
             entries[key] = q.density_text(density)
     if layer.interface_width is not None:
