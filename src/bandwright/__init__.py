@@ -20,6 +20,8 @@ if TYPE_CHECKING:
     from .aiming import aim as aim
     from .comparison import compare as compare
     from .crossings import anticrossings as anticrossings
+    from .digital import Digital as Digital
+    from .digital import digital_alloy as digital_alloy
     from .errors import BandwrightError as BandwrightError
     from .errors import BandwrightWarning as BandwrightWarning
     from .errors import GrowthError as GrowthError
@@ -113,6 +115,7 @@ _ROOMS = {
     "tolerances": ("Tolerance", "tolerance"),
     "aiming": ("Aimed", "aim"),
     "crossings": ("anticrossings",),
+    "digital": ("Digital", "digital_alloy"),
     "growth": (
         "AlloyRate",
         "Calibrations",

@@ -57,6 +57,11 @@ CASES = {
     "grow-repeats": ["grow", "9 nm Al0.3Ga0.7As, 3 x (5 nm GaAs {donors 3e17 / cm^3}, 2 x "
                      "(2 nm AlAs, 8 nm AlxGa1-xAs {x 0 to 0.3})), 9 nm GaAs", "--substrate",
                      "GaAs", "--interruption", "10 s", "--format", "markdown"],
+    "digital": ["digital", "demo/parabolic-well.toml", "--between", "GaAs", "Al0.3Ga0.7As",
+                "--period", "8"],
+    "digital-markdown": ["digital", "9 nm Al0.3Ga0.7As, 2 x (5 nm GaAs, 3 nm Al0.3Ga0.7As {label"
+                         " thin}), 5 nm GaAs, 9 nm Al0.3Ga0.7As", "--layer", "thin", "--period",
+                         "5", "--substrate", "GaAs", "--format", "markdown"],
     "materials": ["materials"],
     "materials-formulas": ["materials", "In0.53Ga0.47As", "InP", "--substrate", "InP",
                            "--temperature", "77 K"],

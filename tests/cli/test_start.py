@@ -9,7 +9,7 @@ import pytest
 from bandwright import cli
 
 COMMANDS = ("levels", "lines", "strain", "xray",
-            "compare", "sweep", "aim", "anticrossings", "tolerance", "picture", "grow",
+            "compare", "sweep", "aim", "anticrossings", "tolerance", "picture", "grow", "digital",
             "materials")  # fmt: skip
 
 PROBE = """

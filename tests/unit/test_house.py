@@ -46,6 +46,7 @@ HOUSE = [
     "wishes",
     "comparison",
     "growth",
+    "digital",
     "report",
     "pictures",
     "cli",
@@ -56,6 +57,7 @@ HOUSE = [
 # look up.
 HANDED_ON = {
     ("aiming", "report"),
+    ("digital", "report"),
     ("growth", "report"),
     ("levels", "cautions"),
     ("levels", "gradients"),
