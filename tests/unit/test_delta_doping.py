@@ -3,7 +3,8 @@
 import pytest
 
 import bandwright as bw
-from bandwright.errors import QuantityError, StackError
+from bandwright.errors import GrowthError, QuantityError, StackError
+from bandwright.growth.rows import stack_of_rows
 from bandwright.profile.build import build_profile
 from bandwright.quantities import Density
 from bandwright.report.facts import facts
@@ -30,6 +31,42 @@ def test_every_written_form_keeps_a_plane():
     assert stack_from_frame(frame) == stack
     assert eval(repr(stack), {"Stack": bw.Stack, "Layer": bw.Layer}) == stack
     assert stack.layers[1].replace(delta_donors=None) == stack.layers[0]
+
+
+@pytest.mark.parametrize("order", ["first grown first", "surface first"])
+def test_the_growth_sheet_has_planes_as_lines_of_their_own(order):
+    group = "2 x (6 nm GaAs {delta_donors 1e11 / cm^2}, 4 nm AlAs)"
+    stack = parse_line(f"{LINE}, {group}", substrate="GaAs")
+    sheet = bw.growth_sheet(stack, order=order)
+    steps = [step.step for step in sheet.steps]
+    assert steps.count("delta doping") == 3
+    place = steps.index("delta doping") + (1 if order == "first grown first" else -1)
+    assert steps[place] == "layer" and "delta_donors" not in sheet.steps[place].entries
+    assert "delta doping" in str(sheet) and "2e11 / cm^2" in str(sheet)
+    assert bw.stack_from_sheet(sheet, whole=False) == stack
+    table = sheet.table
+    back = bw.stack_from_sheet(table, whole=False, substrate="GaAs", order=order)
+    assert back == stack
+    assert sheet.total_nm == pytest.approx(
+        bw.growth_sheet(stack.with_layer(2, stack.layers[0]), order=order).total_nm
+    )
+
+
+PLANE = {"step": "delta doping", "delta_donors": "2e11 / cm^2"}
+GROWN = {"step": "layer", "material": "GaAs", "written": "6 nm"}
+
+
+@pytest.mark.parametrize(
+    ("order", "rows", "row"),
+    [
+        ("first grown first", [GROWN, PLANE], 2),
+        ("first grown first", [PLANE, {"step": "interruption"}, GROWN], 1),
+        ("surface first", [PLANE, GROWN], 1),
+    ],
+)
+def test_a_plane_without_its_layer_is_refused(order, rows, row):
+    with pytest.raises(GrowthError, match=f"row {row}: a delta doping without the layer grown"):
+        stack_of_rows(rows, whole=False, order=order)
 
 
 def test_a_plane_stays_on_the_first_grown_face():

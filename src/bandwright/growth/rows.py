@@ -11,12 +11,13 @@ from .. import quantities as q
 from ..errors import BandwrightError, GrowthError, close_matches
 from ..parameters.layers import stretched
 from ..shapes import Function, Points
-from ..stack import Layer, Repeat, Stack
+from ..stack import PLANES, Layer, Repeat, Stack
 from ..stackfile.keys import LAYER_KEYS, SHAPED, layer_from, settings
 from ..stackfile.shapetext import shape_value
-from .steps import END, INTERRUPTION, LAYER, REPEAT
+from .steps import END, INTERRUPTION, LAYER, PLANE, REPEAT
 
-_STEPS = (LAYER, REPEAT, END, INTERRUPTION)
+_STEPS = (LAYER, REPEAT, END, INTERRUPTION, PLANE)
+_LOOSE = "a delta doping without the layer grown on it, which must be the next that is grown"
 
 
 def said_of(stack: Stack, order: str) -> dict[str, Any]:
@@ -38,9 +39,13 @@ def stack_of_rows(rows: Sequence[Mapping[str, Any]], *, whole: bool, **arguments
         If its layers can't be grown.
     """
     groups: list[tuple[int, list[Layer | Repeat]]] = [(1, [])]
+    planes: dict[str, Any] = {}  # on the face of the layer in the next row
+    turned = arguments.get("order") == "surface first"
     for number, row in enumerate(rows, start=1):
         where = f"row {number}"
         step = row.get("step")
+        if planes and step != LAYER:
+            raise GrowthError(_LOOSE, f"row {number - 1}")
         if step == REPEAT:
             groups.append((_times(row, where), []))
         elif step == END:
@@ -49,12 +54,29 @@ def stack_of_rows(rows: Sequence[Mapping[str, Any]], *, whole: bool, **arguments
             times, inside = groups.pop()
             groups[-1][1].append(Repeat(times, inside))
         elif step == LAYER:
-            groups[-1][1].append(_layer(row, number, whole))
+            groups[-1][1].append(_layer({**row, **planes}, number, whole))
+            planes = {}
+        elif step == PLANE:
+            found = {key: row[key] for key in PLANES if key in row}
+            if turned:
+                _dope(groups[-1][1], found, where)
+            else:
+                planes = found
         elif step != INTERRUPTION:
             raise GrowthError(f"step: got {q.show(step)}{close_matches(str(step), _STEPS)}", where)
+    if planes:
+        raise GrowthError(_LOOSE, f"row {len(rows)}")
     if len(groups) > 1:
         raise GrowthError("a repeat without an end; write the row 'end of repeat'", "growth sheet")
     return Stack(groups[0][1], **arguments)
+
+
+def _dope(layers: list[Layer | Repeat], planes: Mapping[str, Any], where: str) -> None:
+    """Give the last of some layers the planes on its first-grown face."""
+    last = layers[-1] if layers else None
+    if not isinstance(last, Layer):
+        raise GrowthError(_LOOSE, where)
+    layers[-1] = last.replace(**planes)
 
 
 def _layer(row: Mapping[str, Any], number: int, whole: bool) -> Layer:

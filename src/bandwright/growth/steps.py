@@ -8,7 +8,7 @@ from typing import Any, NamedTuple
 
 from .. import quantities as q
 from ..errors import BandwrightError, GrowthError, UnknownName, close_matches
-from ..stack import Layer, Repeat, Stack, layer_name
+from ..stack import PLANES, Layer, Repeat, Stack, layer_name
 from ..stackfile.keys import entries_of
 from ..stackfile.shapetext import shape_text
 from .films import Film
@@ -18,6 +18,7 @@ LAYER = "layer"
 REPEAT = "repeat"
 END = "end of repeat"
 INTERRUPTION = "interruption"
+PLANE = "delta doping"
 
 #: how far a fraction may be off before a caution says so
 SAID = 1e-3
@@ -29,7 +30,8 @@ class Step(NamedTuple):
     Parameters
     ----------
     step : str
-        ``"layer"``, ``"repeat"``, ``"end of repeat"`` or ``"interruption"``.
+        ``"layer"``, ``"repeat"``, ``"end of repeat"``, ``"interruption"``, or ``"delta doping"``
+        of the face on which the next layer is grown.
     depth : int
         How many groups it is inside of.
     times : int or None
@@ -145,7 +147,13 @@ def _add(
             number = _add(entry.layers, depth + 1, number, walk, found)
             found.append(Step(END, depth, entry.times))
             continue
-        found.append(_layer(entry, depth, number, walk))
+        step = _layer(entry, depth, number, walk)
+        planes = {key: step.entries[key] for key in PLANES if key in step.entries}
+        if planes:
+            found.append(Step(PLANE, depth, entries=planes))
+            bare = {key: value for key, value in step.entries.items() if key not in planes}
+            step = step._replace(entries=bare)
+        found.append(step)
         if number in walk.pauses:
             found.append(Step(INTERRUPTION, depth, time_s=walk.pauses[number]))
         number += 1

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 from ..growth.files import calibrations_text
 from ..growth.sheet import stack_formula
 from ..quantities import rate_text
+from ..stack import DOPING
 from .compared import markdown_facts, markdown_table
 from .data import Columns, csv_text, rows_of, stack_object
 from .facts import Fact
@@ -104,7 +105,7 @@ def sheet_columns(found: GrowthSheet, indent: str = _INDENT) -> Columns:
     }
     for name in ("thickness_nm", "whole_ML", "rounding_nm"):
         every[name] = [getattr(step, name) for step in found.steps]
-    for name in ("donors", "acceptors"):
+    for name in DOPING:
         every[name] = [step.entries.get(name) for step in found.steps]
     for name in ("total_nm", "cells", "implied", "difference", "time_s"):
         every[name] = [getattr(step, name) for step in found.steps]
@@ -117,7 +118,7 @@ def _layer(step: Step, indent: str) -> str:
     if step.times is not None:
         return before + (f"{step.times} x" if step.step == "repeat" else f"end of {step.times} x")
     if step.number is None:
-        return before + "pause"
+        return before + ("pause" if step.step == "interruption" else step.step)
     return before + f"{step.number} {step.entries.get('label', '')}".rstrip()
 
 

@@ -5,12 +5,13 @@ in nm or ML as written, energies in eV, fields in V/nm, temperature in K.
 """
 
 from .groups import MOST_LAYERS, Repeat, Written
-from .layer import DOPING, Layer, layer_name, numbered_layer
+from .layer import DOPING, PLANES, Layer, layer_name, numbered_layer
 from .whole import Stack
 
 __all__ = [
     "DOPING",
     "MOST_LAYERS",
+    "PLANES",
     "Layer",
     "Repeat",
     "Stack",

@@ -15,7 +15,8 @@ _LETTERS = ("x", "y")
 _OWN = ("edge", "mass", "gap", "nonparabolicity")
 _GRADINGS = ("linear", "quadratic")
 #: keys of doping: spread over the layer, and planes on its first-grown face
-DOPING = ("donors", "acceptors", "delta_donors", "delta_acceptors")
+PLANES = ("delta_donors", "delta_acceptors")
+DOPING = ("donors", "acceptors", *PLANES)
 _INPUTS = (
     "thickness",
     "material",
