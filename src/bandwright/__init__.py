@@ -33,6 +33,11 @@ if TYPE_CHECKING:
     from .errors import StackError as StackError
     from .errors import StackFileError as StackFileError
     from .errors import UnknownName as UnknownName
+    from .fitting import Fit as Fit
+    from .fitting import Measured as Measured
+    from .fitting import MeasuredLine as MeasuredLine
+    from .fitting import fit as fit
+    from .fitting import read_measured as read_measured
     from .following import follow as follow
     from .following import follow_line as follow_line
     from .following import overlaps as overlaps
@@ -126,6 +131,7 @@ _ROOMS = {
         "stack_from_sheet",
         "write_calibrations",
     ),
+    "fitting": ("Fit", "Measured", "MeasuredLine", "fit", "read_measured"),
 }
 _ROOM_OF = {name: room for room, names in _ROOMS.items() for name in names}
 

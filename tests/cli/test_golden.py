@@ -62,6 +62,10 @@ CASES = {
     "digital-markdown": ["digital", "9 nm Al0.3Ga0.7As, 2 x (5 nm GaAs, 3 nm Al0.3Ga0.7As {label"
                          " thin}), 5 nm GaAs, 9 nm Al0.3Ga0.7As", "--layer", "thin", "--period",
                          "5", "--substrate", "GaAs", "--format", "markdown"],
+    "fit": ["fit", "demo/emitter-stage.toml", "--measured", "demo/measured-stage.toml"],
+    "fit-markdown": ["fit", "demo/emitter-stage.toml", "--measured", "demo/measured-stage.toml",
+                     "--factor", "all thicknesses", "--factor", "flux In", "--calibrations",
+                     "demo/calibrations.toml", "--format", "markdown"],
     "materials": ["materials"],
     "materials-formulas": ["materials", "In0.53Ga0.47As", "InP", "--substrate", "InP",
                            "--temperature", "77 K"],

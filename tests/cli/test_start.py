@@ -10,7 +10,7 @@ from bandwright import cli
 
 COMMANDS = ("levels", "lines", "strain", "xray",
             "compare", "sweep", "aim", "anticrossings", "tolerance", "picture", "grow", "digital",
-            "materials")  # fmt: skip
+            "fit", "materials")  # fmt: skip
 
 PROBE = """
 import json, sys

@@ -46,6 +46,7 @@ HOUSE = [
     "wishes",
     "comparison",
     "growth",
+    "fitting",
     "digital",
     "report",
     "pictures",
@@ -58,6 +59,7 @@ HOUSE = [
 HANDED_ON = {
     ("aiming", "report"),
     ("digital", "report"),
+    ("fitting", "report"),
     ("growth", "report"),
     ("levels", "cautions"),
     ("levels", "gradients"),

@@ -25,6 +25,7 @@ COMMANDS = {
     "tolerance": ("STACK --spread NAME=AMOUNT", "Find what a growth's spreads do to wavelengths."),
     "grow": ("STACK --calibrations FILE", "Write the growth sheet of a stack, layer by layer."),
     "digital": ("STACK --layer NAME", "Turn graded layers or alloys into pulses; say what shifts."),
+    "fit": ("STACK --measured FILE", "Find what a reactor did from what a wafer was measured."),
     "strain": ("STACK", "Find mismatch, stress and critical thickness of every layer."),
     "xray": ("STACK", "Find where X-ray diffraction will see a stack: period, satellites."),
     "picture": ("STACK --output FILE", "Draw a stack with its levels, a budget or a sweep."),

@@ -75,7 +75,11 @@ def cation_of(material: str, letter: str) -> str | None:
 
 
 def _called(layer: Layer) -> bool:
-    return any(isinstance(shape, Function) for _, shape in layer.fractions)
+    """Return whether a callable of the user's is along it; our series can be moved again."""
+    return any(
+        isinstance(shape, Function) and not isinstance(shape.function, _Series)
+        for _, shape in layer.fractions
+    )
 
 
 def with_flux(layer: Layer, element: str, factor: float, stack: Stack) -> Layer:
