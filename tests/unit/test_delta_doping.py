@@ -97,3 +97,13 @@ def test_a_plane_has_no_thickness_and_no_effect_and_is_said():
 def test_what_is_no_plane_is_refused(key, given, text):
     with pytest.raises((StackError, QuantityError), match=rf"layer \(GaAs\): {key}: {text}"):
         bw.Layer("6 nm", "GaAs", **{key: given})
+
+
+def test_of_a_digital_layer_the_first_pulse_alone_has_the_plane():
+    stack = parse_line(
+        "9 nm Al0.3Ga0.7As, 4 nm AlxGa1-xAs {x 0 to 0.3, delta_donors 2e11 / cm^2}, 6 nm GaAs",
+        substrate="GaAs",
+    )
+    layers = [layer for layer, _ in bw.digital_alloy(stack, period=4).stack.grown()]
+    doped = [place for place, layer in enumerate(layers) if layer.delta_donors is not None]
+    assert doped == [1] and len(layers) > 4

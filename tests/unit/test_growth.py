@@ -628,7 +628,7 @@ ROW = {"step": "layer", "material": "GaAs", "written": "6 nm", "whole_ML": 21}
         ([{"step": "end of repeat", "times": 3}], "row 1: the end of a repeat that has not begun"),
         ([{"step": "repeat", "times": 3}, ROW], "growth sheet: a repeat without an end; write"),
         ([{"step": "layr"}], "row 1: step: got 'layr'; did you mean 'layer'?"),
-        ([{"material": "GaAs"}], "row 1: step: got None; known are delta doping, end of repeat, inte"),
+        ([{"material": "GaAs"}], "row 1: step: got None; known are delta doping, end of repeat"),
         ([ROW, {**ROW, "written": None}], "row 2: written: missing; it says the thickness as desi"),
         ([{**ROW, "written": "6"}], "row 1: thickness: got '6'; write '6 nm'"),
         ([{**ROW, "whole_ML": "many"}], "row 1: whole_ML: got 'many'; write a number"),

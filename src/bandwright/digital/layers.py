@@ -9,7 +9,7 @@ from .. import quantities as q
 from ..errors import BandwrightError, StackError, UnknownName, close_matches
 from ..levels import Levels
 from ..materials import Library
-from ..stack import Layer, Repeat, Stack, Written
+from ..stack import PLANES, Layer, Repeat, Stack, Written
 from .cells import Pulse, pulses_of
 from .ends import Amounts, Ends, amounts, binaries, mixed
 
@@ -173,6 +173,6 @@ def _pulses(layer: Layer, one: Pulsed) -> list[Layer]:
             if density is not None and density.kind == "sheet":
                 changes[name] = density._replace(value=density.value * part)
         if place:
-            changes["interface_width"] = None  # that of the layer's first-grown face alone
+            changes |= dict.fromkeys((*PLANES, "interface_width"))  # of the layer's first face
         made.append(layer.replace(**changes))
     return made
