@@ -9,6 +9,7 @@ Each is also solved in a family of two, which must change nothing.
 
 import dataclasses
 import warnings
+from unittest import mock
 
 import numpy as np
 import pytest
@@ -57,9 +58,8 @@ def in_company(profile, high, tolerance, found, where, few):
             dataclasses.replace(s, thickness=1.002 * s.thickness) for s in profile.sections
         ),
     )
-    with warnings.catch_warnings():
+    with warnings.catch_warnings(), mock.patch.object(alike, "_FEW", few):
         warnings.simplefilter("error")
-        alike._FEW = few
         both = together([profile, thicker])
         batches = list(solve_family(both, np.array([high, high]), profile.ends, None, tolerance))
         beside = solve_profile(thicker, high=high, tolerance=tolerance)
