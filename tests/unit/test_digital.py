@@ -162,9 +162,10 @@ def test_names_numbers_and_what_is_chosen_without_any():
     assert [one.number for one in bw.digital_alloy(flat).layers] == [1, 3]
 
 
-def test_field_and_doping_go_on_and_the_interface_stays_with_the_first_face():
+def test_field_and_doping_go_on_and_what_is_of_the_first_face_stays_there():
     layer = bw.Layer("6 nm", "Al0.25Ga0.75As", label="b", field="3 kV/cm", donors="2e11 / cm^2",
-                     acceptors="1e17 / cm^3", interface_width="0.1 nm")  # fmt: skip
+                     acceptors="1e17 / cm^3", interface_width="0.1 nm",
+                     delta_donors="3e11 / cm^2")  # fmt: skip
     stack = bw.Stack([bw.Layer("9 nm", "GaAs"), layer, bw.Layer("9 nm", "GaAs")],
                      substrate="GaAs", ends="wall")  # fmt: skip
     with warnings.catch_warnings():
@@ -174,6 +175,7 @@ def test_field_and_doping_go_on_and_the_interface_stays_with_the_first_face():
     assert {one.acceptors for one in made} == {layer.acceptors}
     assert {one.field for one in made} == {layer.field}
     assert [one.interface_width for one in made] == [0.1] + [None] * (len(made) - 1)
+    assert [one.delta_donors for one in made] == [layer.delta_donors] + [None] * (len(made) - 1)
     assert {one.label for one in made} == {None}
 
 
@@ -349,6 +351,25 @@ def test_cautions_say_that_pulses_are_thin_and_aluminium_arsenide_is_indirect():
     thin, indirect = digital.cautions
     assert "AlAs (from 1 ML)" in thin and "an effective mass is not made for" in thin
     assert indirect.startswith("AlAs: the lowest conduction edge is not at the zone centre")
+
+
+def test_an_open_end_that_goes_on_as_a_pulse_is_said():
+    line = "8 nm Al0.3Ga0.7As {label b}, 6 nm GaAs, 9 nm Al0.3Ga0.7As"
+
+    def said(names, **more):
+        digital = bw.digital_alloy(bw.parse_line(line, substrate="GaAs", **more), names)
+        return [text for text in digital.cautions if text.startswith("outermost")]
+
+    (text,) = said("b")
+    assert "outermost: b (now GaAs); an open end goes on as its last pulse" in text
+    assert "b (now GaAs), layer 3 (Al0.3Ga0.7As) (now AlAs)" in said(None)[0]
+    assert said("b", ends=("wall", "open")) == said("b", field="9 kV/cm") == []
+
+
+def test_pulses_thinner_than_an_interface_are_said():
+    digital = bw.digital_alloy(graded(interface_width="0.5 nm"), "grade")
+    assert any("thinner than an interface_width of 0.5 nm" in text for text in digital.cautions)
+    assert digital.shifts.levels["overlap"].min() > 0.9
 
 
 def test_strained_pulses_that_may_relax_are_said():

@@ -8,6 +8,7 @@ from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 from .. import quantities as q
+from ..cautions.layers import interfaces
 from ..cautions.states import counts, nothing
 from ..cautions.strained import runs_too_thick
 from ..cautions.words import listed
@@ -111,7 +112,7 @@ class Digital:
     @cached_property
     def cautions(self) -> tuple[str, ...]:
         """What a reader should know: pulses too thin for the model, levels lost."""
-        texts = [*self._thin(), *self._indirect(), *self._lost()]
+        texts = [*self._thin(), *self._indirect(), *self._outermost(), *self._lost()]
         design = self.shifts.designed.stack
         if zero_is_lost(design, self.layers):
             texts.append(
@@ -124,7 +125,8 @@ class Digital:
                 "no substrate is named, so a monolayer of each end is as high and holds as many"
                 " atoms as its own lattice has; contents are monolayers"
             )
-        return (*texts, *counts(self.shifts.grown), *nothing(self.shifts.grown), *self._relaxing())
+        grown = self.shifts.grown
+        return (*texts, *counts(grown), *nothing(grown), *interfaces(grown), *self._relaxing())
 
     def _relaxing(self) -> list[str]:
         """Return runs of pulses that are beyond their critical thickness."""
@@ -157,6 +159,25 @@ class Digital:
             f"{listed(list(names))}: the lowest conduction edge is not at the zone centre; only"
             " the zone centre's is followed, and how its states mix with the others in thin"
             " pulses is left out"
+        ]
+
+    def _outermost(self) -> list[str]:
+        """Return open ends that go on as a pulse, not as the layer that became pulses."""
+        if self.shifts.grown.profile.field != 0.0:  # walls stand in for open ends
+            return []
+        written = self.stack.grown()
+        numbers = [number for _, number in self.shifts.designed.stack.grown()]
+        named = {one.number: one.name for one in self.layers}
+        outer = [
+            f"{named[numbers[face]]} (now {written[face][0].material})"
+            for face, end in zip((0, -1), self.stack.ends, strict=True)
+            if end == "open" and numbers[face] in named
+        ]
+        if not outer:
+            return []
+        return [
+            f"outermost: {listed(outer)}; an open end goes on as its last pulse, not as the layer,"
+            " and levels may no longer be bound; add a layer outside, or write ends = 'wall'"
         ]
 
     def _lost(self) -> list[str]:
