@@ -24,6 +24,7 @@ from bandwright.fitting import measured_of
 from bandwright.fitting.apart import correlation, told
 from bandwright.metrics import line_between
 from bandwright.parameters import replace
+from bandwright.report.fitted import fit_object, layer_columns
 
 pytestmark = pytest.mark.filterwarnings("ignore::bandwright.BandwrightWarning")
 
@@ -84,6 +85,13 @@ def test_factors_come_back_in_few_solves():
     assert found.solves < 30  # of three factors to five data at two temperatures
     assert found.freedom == 2 and found.apart == ()
     assert found.chi_square < 1e-6 and found.probability == pytest.approx(1.0, abs=1e-6)
+
+
+def test_real_interfaces_are_fitted_too():
+    real = STAGE.replace(interface_width="0.4 nm")
+    found = bw.fit(real, data_of(exact(TRUE, real)))
+    assert found.values == pytest.approx([TRUE[name] for name in found.names], abs=1e-6)
+    assert found.solves < 30
 
 
 def test_solves_are_counted(monkeypatch):
@@ -219,6 +227,12 @@ def test_a_smooth_grade_is_fitted_by_both_its_fluxes():
     found = bw.fit(stack, bw.Measured(lines))
     expected = [TRUE[name] for name in found.names]
     assert found.values == pytest.approx(expected, abs=2e-5)
+    columns = layer_columns(found)
+    assert columns["designed"][1] == "AlxGa1-xAs {x 0.24 to 0}"
+    al = 0.24 / TRUE["flux Al"], 0.76 / TRUE["flux Ga"]  # atoms that a flat layer gets
+    assert columns["to_set"][1] == f"AlxGa1-xAs {{x {al[0] / sum(al):.5g} to 0}}"
+    assert columns["to_set"][0] == f"Al{al[0] / sum(al):.5g}Ga{al[1] / sum(al):.5g}As"
+    assert columns["thickness_to_set"][2] == f"{4 / TRUE['flux Ga']:.6g} nm"
 
 
 def test_the_strongest_line_is_looked_up_once():
@@ -341,6 +355,11 @@ def test_a_corrected_stack_that_can_not_be_grown():
     found = bw.fit(stack, data, ["well.composition"])
     with pytest.raises(StackError, match=r"^the corrected stack can't be grown: well\.compos"):
         _ = found.corrected
+    (text,) = [t for t in found.cautions if t.startswith("the corrected stack can't be grown")]
+    for form in (str(found), found._repr_html_(), found.markdown()):
+        assert "in place of the design:" not in form and "well.composition" in form
+    assert text in " ".join(str(found).split())
+    assert fit_object(found)["corrected"] is None
 
 
 @pytest.mark.parametrize(

@@ -11,7 +11,7 @@ import numpy as np
 import numpy.typing as npt
 from scipy.special import chdtrc
 
-from ..errors import GrowthError
+from ..errors import GrowthError, StackError
 from ..frames import frame
 from ..growth import (
     AlloyRate,
@@ -223,7 +223,10 @@ class Fit:
 
     @property
     def cautions(self) -> tuple[str, ...]:
-        """What a reader should know: what is not told apart, a poor fit, and the levels' own."""
+        """What a reader should know: what is not told apart or can't be set, a poor fit, and so on.
+
+        The cautions of the levels are among them.
+        """
         texts = list(self.apart)
         if self.probability is not None and self.probability < UNLIKELY:
             worst = int(np.argmax(np.abs(self.point.pulls)))
@@ -232,6 +235,10 @@ class Fit:
                 f" {self.model.names[worst]}, by {abs(self.point.pulls[worst]):.1f} standard"
                 " deviations; the sigmas take the errors as given and are too small here"
             )
+        try:
+            _ = self.corrected
+        except StackError as error:
+            texts.append(str(error))
         for levels in self.levels.values():
             texts += levels.cautions
         return tuple(dict.fromkeys(texts))

@@ -5,6 +5,8 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
 from ..errors import BandwrightError
 from .compared import markdown_facts, markdown_table
 from .data import Columns, plain, rows_of, stack_object
@@ -17,7 +19,7 @@ from .text import page, sheet
 if TYPE_CHECKING:
     from ..fitting import Fit
     from ..growth import GrowthSheet
-    from ..stack import Stack
+    from ..stack import Layer
 
 FACTOR_DIGITS = {"off_percent": "+.3f", "sigma": ".2g"}
 DATA_DIGITS = {"pull": "+.2f"}
@@ -26,6 +28,7 @@ TO_SET = (
     "sheet of the design holds; or leave the cells, and grow by a sheet with the rates that this "
     "wafer tells"
 )
+HEAD = "what to set in place of the design:"
 #: what the heading of the growth sheet says
 NEXT = "growth sheet of the next run, by the rates that this wafer tells, cells left as they are"
 
@@ -58,13 +61,20 @@ def data_columns(found: Fit) -> Columns:
 
 
 def layer_columns(found: Fit) -> Columns:
-    """Return what each layer was designed to be and what to set, thickness in its own unit."""
+    """Return what each layer was designed to be and what to set, thickness in its own unit.
+
+    Empty where what to set can't be grown; a caution says so.
+    """
+    try:
+        corrected = found.corrected
+    except BandwrightError:
+        return {}
     rows = []
-    for before, after in zip(found.stack.written(), found.corrected.written(), strict=True):
+    for before, after in zip(found.stack.written(), corrected.written(), strict=True):
         old, new = before.layer, after.layer
         rows.append((
-            old.label or f"layer {before.number}", old.material or "own numbers",
-            f"{old.thickness.value:.6g} {old.thickness.unit}", _rounded(new.material),
+            old.label or f"layer {before.number}", _material(old),
+            f"{old.thickness.value:.6g} {old.thickness.unit}", _material(new),
             f"{new.thickness.value:.6g} {new.thickness.unit}",
         ))  # fmt: skip
     names = ("layer", "designed", "designed_thickness", "to_set", "thickness_to_set")
@@ -78,10 +88,11 @@ def fit_notes(found: Fit) -> list[Fact]:
 
 def fit_text(found: Fit, growth: GrowthSheet | None = None) -> str:
     """Return a fit as text, the growth sheet of the next run behind it."""
+    layers = layer_columns(found)
     text = page(
         sheet(fit_facts(found)), grid(factor_columns(found), FACTOR_DIGITS),
         grid(data_columns(found), DATA_DIGITS),
-        ["what to set in place of the design:", *grid(layer_columns(found))],
+        [HEAD, *grid(layers)] if layers else [],
         sheet(fit_notes(found)),
     )  # fmt: skip
     return text if growth is None else f"{text}\n{NEXT}:\n\n{sheet_text(growth)}"
@@ -89,22 +100,21 @@ def fit_text(found: Fit, growth: GrowthSheet | None = None) -> str:
 
 def fit_html(found: Fit, growth: GrowthSheet | None = None) -> str:
     """Return a fit as HTML."""
-    tables = (
-        html_table(factor_columns(found), FACTOR_DIGITS)
-        + html_table(data_columns(found), DATA_DIGITS)
-        + "<div>what to set in place of the design:</div>"
-        + html_table(layer_columns(found))
-    )
+    tables = html_table(factor_columns(found), FACTOR_DIGITS)
+    tables += html_table(data_columns(found), DATA_DIGITS)
+    layers = layer_columns(found)
+    tables += f"<div>{HEAD}</div>{html_table(layers)}" if layers else ""
     text = html_facts(fit_facts(found)) + tables + html_facts(fit_notes(found))
     return text if growth is None else f"{text}<h2>{NEXT}</h2>{sheet_html(growth)}"
 
 
 def fit_markdown(found: Fit, growth: GrowthSheet | None = None) -> str:
     """Return a fit as Markdown."""
+    layers = layer_columns(found)
     text = "\n".join((
         markdown_facts(fit_facts(found)), markdown_table(factor_columns(found), FACTOR_DIGITS),
         markdown_table(data_columns(found), DATA_DIGITS),
-        "What to set in place of the design:\n", markdown_table(layer_columns(found)),
+        *([f"{HEAD[0].upper()}{HEAD[1:]}\n", markdown_table(layers)] if layers else []),
         markdown_facts(fit_notes(found)),
     ))  # fmt: skip
     heading = NEXT[0].upper() + NEXT[1:]
@@ -124,28 +134,34 @@ def fit_object(found: Fit, growth: GrowthSheet | None = None) -> dict[str, Any]:
         "covariance": covariance,
         "told_apart": not found.apart,
         "data": rows_of(found.data_columns),
-        "grown": _object(found.grown),
-        "corrected": _object(found.corrected),
+        "grown": _object(found, "grown"),
+        "corrected": _object(found, "corrected"),
         "sheet": None if growth is None else sheet_object(growth),
         "cautions": list(found.cautions),
         "safety": SAFETY,
     }
 
 
-def _object(stack: Stack) -> dict[str, Any] | None:
-    """Return a stack; None where a grade became a curve that no file can hold."""
+def _object(found: Fit, name: str) -> dict[str, Any] | None:
+    """Return a stack; None where it can't be grown, or a grade became a curve no file can hold."""
     try:
-        return stack_object(stack)
+        return stack_object(getattr(found, name))
     except BandwrightError:
         return None
 
 
-def _rounded(material: str | None) -> str:
-    """Return a formula with fractions as many digits as growth can use."""
-    if material is None:
+def _material(layer: Layer) -> str:
+    """Return what a layer is made of, fractions with as many digits as growth can use."""
+    if layer.material is None:
         return "own numbers"
-    parts = re.split(r"(\d*\.\d+)", material)
-    return "".join(f"{float(p):.5g}" if i % 2 else p for i, p in enumerate(parts))
+    parts = re.split(r"(\d*\.\d+)", layer.material)
+    text = "".join(f"{float(p):.5g}" if i % 2 else p for i, p in enumerate(parts))
+    thickness = layer.thickness.value
+    letters = []
+    for letter, shape in layer.fractions:
+        ends = [f"{v:.5g}" for v in shape.at(np.array([0.0, thickness]), thickness, "first")]
+        letters.append(f"{letter} {' to '.join(dict.fromkeys(ends))}")
+    return f"{text} {{{', '.join(letters)}}}" if letters else text
 
 
 def _without_empty_unit(columns: Columns) -> Columns:
