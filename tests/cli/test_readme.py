@@ -64,7 +64,7 @@ def test_examples_and_their_output(root, folder, run, request):
             printed = None
         elif kind == "console":
             real = real.replace(block[0], f"```console\n{console(text, run)}```")
-    assert kinds.count("python") == 1 and kinds.count("console") >= 3
+    assert kinds.count("python") == 2 and kinds.count("console") >= 3
     assert printed is None, "an example without its output"
     if request.config.getoption("--rewrite-golden"):
         path.write_text(real, encoding="utf-8")
