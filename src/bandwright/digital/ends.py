@@ -13,7 +13,7 @@ from ..errors import BandwrightError, StackError
 from ..formula import SITES, Composition, Value, elements, parse
 from ..materials import Library
 from ..profile.layers import lower_face
-from ..shapes import Points
+from ..shapes import Face, Flat, Points
 from ..stack import Layer, Stack
 
 Floats = npt.NDArray[np.float64]
@@ -133,10 +133,12 @@ def amounts(
         If the composition is somewhere not between the ends.
     """
     faces = np.array([0.0, thickness])
-    _, height, edge = _numbers(layer, faces, thickness, "first", stack, library)
-    face = lower_face(float(edge[0]), float(edge[1]))
-    count = max(4, int(np.ceil(_PANELS * thickness / float(height.min()))))
-    faces = np.linspace(0.0, thickness, count + 1)
+    face: Face = "first"
+    if not all(isinstance(shape, Flat) for _, shape in layer.fractions):
+        _, height, edge = _numbers(layer, faces, thickness, face, stack, library)
+        face = lower_face(float(edge[0]), float(edge[1]))
+        count = max(4, int(np.ceil(_PANELS * thickness / float(height.min()))))
+        faces = np.linspace(0.0, thickness, count + 1)
     kinks = [
         depth
         for _, shape in layer.fractions
@@ -160,7 +162,7 @@ def _summed(parts: Floats) -> Floats:
 
 
 def _numbers(
-    layer: Layer, depth: Floats, thickness: float, face: Any, stack: Stack, library: Library
+    layer: Layer, depth: Floats, thickness: float, face: Face, stack: Stack, library: Library
 ) -> tuple[Composition, Floats, Floats]:
     """Return composition, height of a monolayer [nm] and edge [eV] at each depth [nm]."""
     values: dict[str, Value] = {k: s.at(depth, thickness, face) for k, s in layer.fractions}
