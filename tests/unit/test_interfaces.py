@@ -211,6 +211,43 @@ def test_no_width_is_the_abrupt_stack():
     assert shifts[2] < 1e-5 and shifts[0] > 5.0 * shifts[1] > 25.0 * shifts[2]
 
 
+def test_levels_are_those_of_the_same_composition_written_by_hand():
+    def fraction(depth):
+        x = np.full_like(depth, 0.3)
+        for place, step in zip((20.0, 26.0, 29.0, 33.0), (-0.3, 0.3, -0.3, 0.3), strict=True):
+            x = x + step * 0.5 * (1.0 + erf((depth - place) / (0.5 * math.sqrt(2.0))))
+        return x
+
+    by_hand = bw.Stack([bw.Layer("53 nm", "AlxGa1-xAs", x=fraction)], substrate="GaAs", zero="GaAs")
+    asked = {"tolerance": "1e-9 eV", "below": "0.2 eV"}
+    expected = bw.solve(by_hand, **asked).energies
+    found = bw.solve(two_wells(interface_width="0.5 nm"), **asked).energies
+    assert len(found) == 2
+    assert found == pytest.approx(expected, abs=4e-9)
+
+
+def test_levels_of_a_segregated_well_are_those_of_muraki_s_composition():
+    stack = parse_line(INDIUM, substrate="GaAs", zero="GaAs", segregation={"In": 0.7})
+    monolayer = build_profile(stack.abrupt()).facts[1].monolayer
+
+    def inside(depth):
+        return 0.2 * (1.0 - 0.7 ** (depth / monolayer))
+
+    def above(depth):
+        return 0.2 * (1.0 - 0.7**20) * 0.7 ** (depth / monolayer)
+
+    layers = [
+        bw.Layer("15 nm", "GaAs"),
+        bw.Layer(f"{20 * monolayer!r} nm", "InxGa1-xAs", x=inside),
+        bw.Layer("60 nm", "InxGa1-xAs", x=above),
+    ]
+    by_hand = bw.Stack(layers, substrate="GaAs", zero="GaAs")
+    asked = {"tolerance": "1e-9 eV", "at_most": 1}
+    expected = bw.solve(by_hand, **asked).energies
+    assert len(expected) == 1
+    assert bw.solve(stack, **asked).energies == pytest.approx(expected, abs=4e-9)
+
+
 @pytest.mark.parametrize("share", [0.05, 0.005])
 def test_little_segregation_is_the_abrupt_stack(share):
     abrupt = parse_line(INDIUM, substrate="GaAs", zero="GaAs")

@@ -38,8 +38,12 @@ Indices = npt.NDArray[np.int64]
 
 #: cuts above a face, in decay lengths
 TAIL = (3.0, 6.0, 10.0, 15.0, 22.0, 30.0)
+#: beyond so many standard deviations, or decay lengths, nothing is left to rounding
+_FELT, _TAIL_FELT = 9.0, 40.0
 _SITES_LEFT = 1e-9
 _STEPS = 100
+#: how well a source is found [nm]
+_CLOSE = 1e-12
 
 
 class Asked(Protocol):
@@ -117,7 +121,7 @@ class Carried:
         index, depth = self._stretch(z)
         a, b, c = self.arriving[element][index].T
         found = a + depth * (b + depth * c)
-        for place, width, step in self._spread(element):
+        for place, width, step in self._spread(element, z):
             far = (z - place) / width
             found = found + step * np.where(z >= place, -ndtr(-far), ndtr(far))
         return np.asarray(found)
@@ -134,8 +138,8 @@ class Carried:
             rate = 1.0 - sum((self.arrived(e, guess) for e in floating), np.zeros_like(z))
             with np.errstate(divide="ignore", invalid="ignore"):
                 new = guess - miss / rate
-            new = np.where((new > low) & (new < high), new, 0.5 * (low + high))
-            if np.all(np.abs(new - guess) <= 1e-14 * self.top):
+            new = np.where((new >= low) & (new <= high), new, 0.5 * (low + high))
+            if np.all(np.abs(new - guess) <= _CLOSE):
                 break
             guess = new
         return np.asarray(guess)
@@ -155,13 +159,17 @@ class Carried:
         index = np.clip(np.searchsorted(self.starts, z, side="right") - 1, 0, None)
         return index, z - self.starts[index]
 
-    def _spread(self, element: Element) -> list[tuple[float, float, float]]:
+    def _spread(
+        self, element: Element, z: Floats, tail: float = 0.0
+    ) -> list[tuple[float, float, float]]:
+        """Return place, width and step of the interfaces that places may feel."""
         steps = self.steps.get(element, np.zeros(len(self.places)))
-        return [
-            (float(place), float(width), float(step))
-            for place, width, step in zip(self.places, self.widths, steps, strict=True)
-            if step
-        ]
+        if not z.size:
+            return []
+        reach = _FELT * self.widths
+        low, high = self.places - reach, self.places + np.maximum(reach, tail)
+        felt = np.flatnonzero((steps != 0.0) & (low < z.max()) & (high > z.min()))
+        return [(float(self.places[i]), float(self.widths[i]), float(steps[i])) for i in felt]
 
     @cached_property
     def _particular(self) -> dict[Element, Floats]:
@@ -195,7 +203,7 @@ class Carried:
         a, b, c = self._particular[element][index].T
         rest = self._states[element][index] - a
         found = a + depth * (b + depth * c) + rest * np.exp(-depth / length)
-        for place, width, step in self._spread(element):
+        for place, width, step in self._spread(element, z, _TAIL_FELT * length):
             t, v = z - place, width / length
             carried = np.exp(0.5 * v * v - t / length + log_ndtr(t / width - v))
             above = np.exp(-np.maximum(t, 0.0) / length) - ndtr(-t / width)
@@ -221,7 +229,7 @@ class Carried:
             below = np.concatenate(([0.0], np.cumsum(whole)))[index]
             part = depth * (a[index] + depth * (b[index] / 2.0 + depth * c[index] / 3.0))
             total = total - below - part
-            for place, width, step in self._spread(element):
+            for place, width, step in self._spread(element, z):
                 far = np.abs(z - place) / width
                 bell = np.exp(-0.5 * far * far) / math.sqrt(2.0 * math.pi)
                 total = total - step * width * (bell - far * ndtr(-far))

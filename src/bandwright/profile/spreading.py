@@ -28,8 +28,9 @@ _NEAR = 0.1
 _LEAST = 1e-3
 #: largest step where a layer meets its own plain part [eV]
 _STEP = 1e-6
-#: of the largest value, what counts as rounding in a section's series
-_NEGLIGIBLE = 1e-13
+#: of the largest value, what counts as rounding in a section's series: of interfaces alone, and
+#: with segregation, where rounding of places adds up
+_NEGLIGIBLE, _CARRIED = 1e-13, 1e-11
 
 
 @dataclass(frozen=True)
@@ -264,8 +265,9 @@ def _piece(
 ) -> Piece:
     depth = fit_depths(span)
     values = real.numbers(index, start + depth, rises)
+    least = _NEGLIGIBLE if real.carried is None else _CARRIED
     edge, mass, gap = (
-        fitted(row, span, _Along(real, index, start, rises, which), _NEGLIGIBLE)
+        fitted(row, span, _Along(real, index, start, rises, which), least)
         for which, row in enumerate(values)
     )
     inverse_gap: Curve = gap if two_band else ZERO
