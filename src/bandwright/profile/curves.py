@@ -101,6 +101,12 @@ def least(curve: Curve, thickness: Number) -> Any:
     if isinstance(curve, Polynomial) and curve.degree <= 1:
         first, *slope = curve.coefficients
         return smaller(first, first + slope[0] * thickness) if slope else first
+    if isinstance(curve, Polynomial) and curve.degree == 2:
+        slope, bend = curve.coefficients[1:3]
+        if np.all(bend != 0.0):  # the vertex, or the face nearest to it
+            nearest = np.clip(-0.5 * slope / bend, 0.0, thickness)
+            faces = smaller(curve.value(0.0), curve.value(thickness))
+            return smaller(faces, curve.value(nearest))
     low: Any = np.zeros_like(thickness)
     high, points = thickness, 257
     for _ in range(6):
