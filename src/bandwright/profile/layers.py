@@ -12,7 +12,7 @@ import numpy as np
 from ..errors import StackError
 from ..formula import Value, parse
 from ..materials import BandPoint, Library
-from ..shapes import Face, Flat, Function, Linear, Points, Shape
+from ..shapes import Face, Flat, Function, Linear, Points, Quadratic, Shape
 from ..stack import Layer, Stack
 from .curves import fit_depths, fitted, least, straight
 from .sections import ZERO, Curve, Floats, LayerFacts, Number, Polynomial, Sampled, Unlike
@@ -94,16 +94,20 @@ def _graded(
     thickness, unit = layer.thickness
     if unit == "ML":
         thickness = thickness * points.monolayer(thickness)
-    ends = points.at(np.multiply.outer([0.0, 1.0], thickness), thickness, "first").edge
-    face = lower_face(*np.broadcast_to(ends, (2, *np.shape(thickness))))
+    many = np.ndim(thickness) > 0
+    places = np.multiply.outer(np.linspace(0.0, 1.0, 2 if many else 17), thickness)
+    along = points.at(places, thickness, "first")
+    edge = np.broadcast_to(along.edge, places.shape)
+    face = lower_face(edge[0], edge[-1])
     smooth = not any(isinstance(shape, Function) for shape in shapes)
     pieces = tuple(
         points.piece(start, stop, thickness, face, two_band, smooth)
         for start, stop in _spans(shapes, thickness)
     )
-    if np.ndim(thickness):  # of many designs nobody asks
+    if many:  # whose facts nobody asks
         return pieces, LayerFacts(name, thickness, False, layer.material or "")
-    along = points.at(np.linspace(0.0, thickness, 17), thickness, face)
+    if face == "last" and any(isinstance(shape, Quadratic) for shape in shapes):
+        along = points.at(places, thickness, face)
     exx, lattice = np.broadcast_arrays(along.exx, along.lattice)
     worst = np.argmax(np.abs(exx))
     return pieces, LayerFacts(
