@@ -420,6 +420,18 @@ def test_reports_say_how_interfaces_are():
     assert "interfaces" not in dict(facts(bw.solve(two_wells())))
 
 
+def test_zero_is_that_of_the_abrupt_stack():
+    narrow = "9 nm AlAs, 1 nm GaAs {label well}, 9 nm AlAs"
+    for zero, words in ((None, "the lowest band edge of the stack"), ("well", "the first-grown")):
+        sharp = build_profile(parse_line(narrow, zero=zero))
+        wide = build_profile(parse_line(narrow, zero=zero, interface_width="0.3 nm"))
+        assert wide.zero.startswith(words) and wide.zero.endswith(", were its interfaces abrupt")
+        assert wide.sections[0].edge.value(0.0) == sharp.sections[0].edge.value(0.0)
+        assert wide.numbers.lowest.min() > 0.01  # nowhere GaAs any more
+    named = build_profile(parse_line(narrow, zero="GaAs", interface_width="0.3 nm"))
+    assert named.zero == "the conduction edge of GaAs"
+
+
 def test_a_group_becomes_abrupt_too():
     stack = parse_line("2 x (5 nm GaAs {interface_width 0.2 nm}, 5 nm AlAs)")
     assert stack.realistic and not stack.abrupt().realistic

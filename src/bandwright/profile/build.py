@@ -102,6 +102,8 @@ def build_profile(
     if real:
         from .spreading import spread  # stacks of abrupt interfaces need none of it
 
+        if stack.zero is None or any(one.label == stack.zero for one in layers):
+            words += ", were its interfaces abrupt"
         layers = spread(stack, layers, library, shift, two_band)
     field = _field(stack, sum(one.facts.thickness for one in layers))
     return Profile(
