@@ -12,7 +12,7 @@ from ..constants import HC
 from ..errors import QuantityError, StackError, UnknownName, close_matches
 from ..lines import CONTINUUM, Line
 from ..metrics import Pair, read_pair
-from ..parameters import Parameter, find, list_parameters, read, replace
+from ..parameters import Parameter, find, read, replace
 from ..quantities import as_energy, as_length, as_value, show
 from ..quantities.spans import split_span
 from ..stack import Stack
@@ -202,10 +202,7 @@ def _one_free(stack: Stack, name: str, span: object) -> Free:
     if least == most:
         raise StackError(f"got {show(span)}, which leaves nothing free; leave it out", name)
     for end in (least, most):
-        moved = replace(stack, name, end)  # what can't be grown is said before anything is solved
-        if name not in [p.name for p in list_parameters(moved)] and relative(parameter):
-            raise StackError("it bends a grade, and can't be moved further from there; free the"
-                             " fractions of its layer", name)  # fmt: skip
+        replace(stack, name, end)  # what can't be grown is said before anything is solved
     return Free(parameter, start, least, most)
 
 
