@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+from scipy.integrate import trapezoid
 
 import bandwright as bw
 from bandwright.errors import SolveError, StackError
@@ -61,7 +62,7 @@ def test_a_plain_integral_in_the_same_design():
     two = bw.solve(deep(7.0, bands="one-band", field="15 kV/cm"))
     z = np.linspace(0.0, one.profile.thickness, 20_001)
     u, v = (levels.states.sample(z)[0] for levels in (one, two))
-    plain = np.abs(np.trapezoid(u[:, None] * v, z, axis=2))
+    plain = np.abs(trapezoid(u[:, None] * v, z, axis=2))
     assert np.abs(bw.overlaps(one, two) - plain).max() < 1e-6
 
 

@@ -60,7 +60,8 @@ def digital_tables(found: Digital) -> list[Columns]:
 
 
 def _strongest(lines: Columns) -> Columns:
-    strengths = [-abs(strength or 0.0) for strength in lines["oscillator_strength"]]
+    # forbidden lines are zero but for rounding, which may not decide what is shown
+    strengths = [-round(abs(strength or 0.0), 6) for strength in lines["oscillator_strength"]]
     kept = sorted(sorted(range(len(strengths)), key=strengths.__getitem__)[:_LINES])
     return {name: [values[n] for n in kept] for name, values in lines.items()}
 

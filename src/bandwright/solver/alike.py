@@ -96,7 +96,7 @@ def find_alike(family: Solvable, asked: Asked, accuracy: float) -> Found:
         if not len(leader.energies) or not leader.single.all():
             break
         led = _foretold(family, leader, middle, others, asked.of(others))
-        found.append(refine(family, led.brackets, min(accuracy, 1e-11)))
+        found.append(refine(family, led.brackets, accuracy))
         left = others[~np.isin(others, led.which)]
         if 2 * len(left) > len(others):
             break

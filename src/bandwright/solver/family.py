@@ -21,7 +21,7 @@ from .kinds import joined
 from .matrix import Counts, Elements, Matrix, assemble, count_and_pivot
 from .need import needed
 from .slices import Slices, cut
-from .solve import MOST_CELLS, MOST_KEPT_SLICES, ROUGH, Solution, lowest_edge, tops
+from .solve import MOST_CELLS, MOST_KEPT_SLICES, ROUGH, SHARP, Solution, lowest_edge, tops
 from .system import OpenEnd, chunks, open_ends
 
 Floats = npt.NDArray[np.float64]
@@ -197,7 +197,7 @@ def _solve_pattern(
         slices.thickness.T, slices.edge.T, slices.mass.T, slices.inverse_gap.T, high
     )
     asked = Asked(low, high, np.zeros(designs, dtype=np.int64), most, guess)
-    found = find_alike(family, asked, min(1e-3 * tolerance, 1e-9))
+    found = find_alike(family, asked, min(1e-3 * tolerance, SHARP))
     fine = None if slices.profile.numbers.all_flat else family.halved()
     batch = _proven(which, family, fine, asked, found, tolerance, slices.counts)
     yield batch

@@ -31,6 +31,8 @@ NEAREST = 1e-7
 _MIXED = 1e-5
 #: an energy with so many levels more than asked below it is near enough to cut for
 _NEAR = 3
+#: how well zeros of K are met at most [eV], so that other ways to the same level agree to 1e-10 eV
+SHARP = 2e-11
 #: tolerance [eV] of the slices on which the energy to cut for is looked up
 ROUGH = 1e-4
 
@@ -172,7 +174,7 @@ def solve_profile(
     refuse_huge(profile, counts, top, at_most)
     flat = profile.numbers.flat
     exact = profile.numbers.all_flat
-    accuracy = min(1e-3 * tolerance, 1e-9)
+    accuracy = min(1e-3 * tolerance, SHARP)
     size, before = int(counts.sum()), np.inf
     for _ in range(_ATTEMPTS):
         if counts.sum() > MOST_SLICES:
