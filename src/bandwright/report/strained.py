@@ -149,7 +149,7 @@ def mismatch_object(found: Mismatches, balances: Sequence[Balance] = ()) -> dict
 
 def xray_facts(pattern: XrayPattern) -> list[Fact]:
     """Return the period, the zero order, the spacing and the mismatches."""
-    h, k, l = pattern.reflection  # noqa: E741
+    h, k, l = pattern.reflection  # noqa: E741 - Miller indices have these names
     length = f"{pattern.wavelength_nm:.7g} nm"
     named = length if pattern.line == length else f"{pattern.line}, {length}"
     period = f"{pattern.period_nm:.6g} nm"

@@ -353,7 +353,7 @@ def _read_ends(value: object) -> tuple[str, str]:
 def _shares(value: object) -> tuple[tuple[str, float], ...]:
     """Return the elements that segregate, each with the share that stays on the surface."""
     try:
-        given = dict(() if value is None else value)  # type: ignore[call-overload]
+        given = dict(() if value is None else value)  # type: ignore[call-overload]  # no mapping raises
     except (TypeError, ValueError):
         raise StackError(
             f"segregation: got {q.show(value)}; write elements with their shares, such as"
